@@ -1,0 +1,8 @@
+//! Rhythmite: a language for climate forcing time series.
+//!
+//! The layers, each of which uses only those before it, are `base`, `science`, `value`, `files`, `display`,
+//! `language`, `catalogue`, `session` and `notebook`; `DEVELOPERS.md` says what each is for.
+
+pub mod base;
+pub mod language;
+pub mod value;
