@@ -4,5 +4,8 @@
 //! `language`, `catalogue`, `session` and `notebook`; `DEVELOPERS.md` says what each is for.
 
 pub mod base;
+pub mod catalogue;
+pub mod files;
 pub mod language;
+pub mod science;
 pub mod value;

@@ -10,12 +10,14 @@ mod measure;
 mod model;
 mod series;
 mod shape;
+mod spread;
 mod table;
 mod unit;
 mod unit_table;
 
 pub use attribution::{Attribution, Coefficient, FitStatistics};
-pub use axis::{Axis, AxisKind, Clock, Span as TimeSpan, STEPS_LIMIT};
+pub(crate) use axis::duration_words;
+pub use axis::{Axis, AxisKind, Clock, STEPS_LIMIT, Span as TimeSpan};
 pub use block::Block;
 pub use dimension::Dimension;
 pub use era::{Era, Instant, decimal_year, instant_of_date};
@@ -23,6 +25,7 @@ pub use measure::{Forcing, ForcingKind, Measure, Reading};
 pub use model::Model;
 pub use series::{Bundle, Component, Content, Series, Standing};
 pub use shape::Shape;
+pub use spread::Spread;
 pub use table::{Cell, Column, Table};
 pub use unit::{Unit, UnitFault};
 pub use unit_table::{UNITS, UnitEntry};
@@ -103,7 +106,7 @@ impl Value {
     pub fn shape(&self) -> Shape {
         match self {
             Value::Quantity(quantity) => Shape::Quantity(quantity.measure.clone()),
-            Value::Instant(_) => Shape::Instant,
+            Value::Instant(instant) => Shape::Instant(instant.era),
             Value::Span(_) => Shape::Span,
             Value::Range(range) => Shape::Range(range.unit.clone()),
             Value::Clock(_) => Shape::Clock,

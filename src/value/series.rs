@@ -15,6 +15,8 @@ pub struct Series {
     pub measure: Measure,
     /// Whose axis it is on.
     pub standing: Standing,
+    /// The longest gap in time that is bridged when it is brought onto another axis, in years.
+    pub longest_gap_years: f64,
 }
 
 /// Whose axis a series is on, which decides what happens when it meets another.
@@ -54,6 +56,12 @@ pub enum Content {
 }
 
 impl Series {
+    /// A series on `axis`; gaps of up to three of its median steps are bridged, as is the rule for data.
+    pub fn new(axis: Arc<Axis>, values: Block, measure: Measure, standing: Standing) -> Self {
+        let longest_gap_years = 3.0 * axis.median_step();
+        Self { axis, values, measure, standing, longest_gap_years }
+    }
+
     /// How many numbers it holds.
     pub fn numbers(&self) -> usize {
         self.values.len() + 2 * self.axis.len()
@@ -62,7 +70,7 @@ impl Series {
     /// The same times and standing with other values and measure.
     #[must_use]
     pub fn with(&self, values: Block, measure: Measure) -> Self {
-        Self { axis: self.axis.clone(), values, measure, standing: self.standing }
+        Self { axis: self.axis.clone(), values, measure, ..*self }
     }
 }
 

@@ -1,5 +1,6 @@
 use std::sync::Arc;
 
+use super::era::Era;
 use super::measure::Measure;
 use super::unit::Unit;
 
@@ -8,8 +9,8 @@ use super::unit::Unit;
 pub enum Shape {
     /// A number with a unit; a duration where the unit is one of time.
     Quantity(Measure),
-    /// A point in time.
-    Instant,
+    /// A point in time, with the era it is shown in.
+    Instant(Era),
     /// A stretch of time.
     Span,
     /// A range of quantities.
@@ -38,7 +39,7 @@ impl Shape {
         match self {
             Shape::Quantity(measure) if measure.unit.is_time() => "duration",
             Shape::Quantity(_) => "quantity",
-            Shape::Instant => "instant",
+            Shape::Instant(_) => "instant",
             Shape::Span => "span",
             Shape::Range(_) => "range",
             Shape::Clock => "clock",
@@ -62,7 +63,7 @@ impl Shape {
             }
             Shape::Quantity(measure) | Shape::Series(measure) => format!("{article} {kind} in {}", measure.unit),
             Shape::Range(unit) => format!("a range in {unit}"),
-            Shape::Instant
+            Shape::Instant(_)
             | Shape::Span
             | Shape::Clock
             | Shape::Bundle(_)
@@ -83,7 +84,7 @@ impl Shape {
                 let first = parts.next()?;
                 Some(parts.fold(first, |sum, next| sum.sum(&next, false).map_or(sum, |(measure, _)| measure)))
             }
-            Shape::Instant
+            Shape::Instant(_)
             | Shape::Span
             | Shape::Range(_)
             | Shape::Clock

@@ -222,8 +222,9 @@ fn split_exponent(word: &str) -> (&str, Option<i8>) {
 }
 
 fn nearest(word: &str) -> Option<String> {
-    let plural = word.strip_suffix('s').unwrap_or(word);
-    let spoken = match plural.to_lowercase().as_str() {
+    let lower = word.to_lowercase();
+    let singular = if lower == "celsius" { &lower } else { lower.strip_suffix('s').unwrap_or(&lower) };
+    let spoken = match singular {
         "year" | "a" => "yr",
         "celsius" | "c" | "degree" => "degC",
         "kelvin" => "K",

@@ -1,0 +1,386 @@
+//! Putting series together and taking them apart.
+
+use std::sync::Arc;
+
+use super::call::{Call, Stop, wrong_kind};
+use super::entry::{Body, Entry, Fails, ReadsClock, Room, Shows};
+use super::onto::{align, counted};
+use super::time::{each_measure, series_or_bundle};
+use crate::base::Fault;
+use crate::language::{Parameter, Signature};
+use crate::science::reduce;
+use crate::value::{
+    Axis, Block, Bundle, Component, Content, Measure, Reading, Series, Shape, Standing, TimeSpan, Value,
+};
+
+const SERIES: &[&str] = &["series", "bundle"];
+
+static COMPOSE: Entry = Entry {
+    name: "compose",
+    room: Room::Algebra,
+    summary: "Drivers put together as named components whose sum is the forcing.",
+    signature: Signature {
+        parameters: &[Parameter::required(
+            "components",
+            SERIES,
+            "series and bundles; each is called by its name, or by a label before it: `compose(early: x, late: y)`",
+        )
+        .repeated(true)],
+    },
+    result: "a bundle; its components keep their own axes until they are summed, shown or responded to",
+    equation: Some(r"F(t) = \sum_i F_i(t)"),
+    gaps: "A gap in one component is a gap in the sum.",
+    shows: &[Shows {
+        program: "clock = 1850..1851 CE by 1 yr\nsun = constant(0.1 W/m2)\nhaze = constant(-0.5 W/m2)\ncompose(sun, haze)",
+        gives: "2 components (sun, haze); total: 2 steps, 1850 CE to 1851 CE: -0.4 W/m2 to -0.4 W/m2",
+    }],
+    fails: &[
+        Fails {
+            program: "clock = 1850..1851 CE by 1 yr\nx = constant(1 W/m2)\ncompose(x, x)",
+            code: "equal-labels",
+            says: "two components",
+        },
+        Fails {
+            program: "clock = 1850..1851 CE by 1 yr\nx = constant(1 W/m2)\ny = constant(1 ppm)\ncompose(x, y)",
+            code: "unit-mismatch",
+            says: "measure different things",
+        },
+    ],
+    citations: &[],
+    search: &["sum", "combine", "add", "together", "total"],
+    revision: 1,
+    reads_clock: ReadsClock::WithSeries,
+    reads_file: None,
+    random: false,
+    labels: true,
+    shape: |call| {
+        let mut parts: Vec<(Arc<str>, Measure)> = Vec::new();
+        let mut sum: Option<Measure> = None;
+        for (item, (label, slot)) in call.repeated("components").into_iter().enumerate() {
+            let label = label.unwrap_or_else(|| call.context.label(slot));
+            let Some(measure) = call.context.shape(slot)?.measure() else { continue };
+            if parts.iter().any(|(other, _)| *other == label) {
+                return Err(Fault::new("equal-labels", format!("two components are called `{label}`"))
+                    .blame_item(item)
+                    .help(format!("name them apart: compose(early: {label}, late: {label})"))
+                    .into());
+            }
+            sum = Some(match sum {
+                None => measure.clone(),
+                Some(sum) => sum.sum(&measure, false).map_err(|fault| fault.blame_item(item))?.0,
+            });
+            parts.push((label, measure));
+        }
+        Ok(Shape::Bundle(parts))
+    },
+    body: Body::PerMember(|call| {
+        let mut components = Vec::new();
+        for (label, slot) in call.repeated("components") {
+            let label = label.unwrap_or_else(|| call.context.label(slot));
+            let content = match call.context.value(slot)?.as_ref() {
+                Value::Series(series) => Content::Series(series.clone()),
+                Value::Bundle(bundle) => Content::Bundle(bundle.clone()),
+                other => return Err(wrong_kind("components", other).into()),
+            };
+            components.push(Component { label, content });
+        }
+        let bundle = Bundle { components };
+        let mixed = mixed_kinds(&bundle);
+        if let Some(note) = mixed {
+            call.context.note(note);
+        }
+        // Without a clock the components must share an axis; better to hear of it here than where they are summed.
+        if call.context.clock().is_none() {
+            let leaves = bundle.leaves();
+            let named: Vec<_> = leaves.iter().map(|(label, series)| (*series, label.clone())).collect();
+            align(call.context, &named)?;
+        }
+        Ok(Value::Bundle(bundle))
+    }),
+};
+
+/// What to say where a forcing of undeclared kind goes with a declared one.
+fn mixed_kinds(bundle: &Bundle) -> Option<String> {
+    use crate::value::ForcingKind::Undeclared;
+    let kinds: Vec<_> = bundle
+        .leaves()
+        .iter()
+        .filter_map(|(label, series)| series.measure.forcing.as_ref().map(|forcing| (label.clone(), forcing.kind)))
+        .collect();
+    let declared = kinds.iter().find(|(_, kind)| *kind != Undeclared)?.1;
+    let undeclared: Vec<&str> = kinds.iter().filter(|(_, kind)| *kind == Undeclared).map(|(label, _)| &**label).collect();
+    (!undeclared.is_empty()).then(|| {
+        format!("the kind of forcing of {} is not declared; composed with {declared} forcing", undeclared.join(", "))
+    })
+}
+
+static WITHOUT: Entry = Entry {
+    name: "without",
+    room: Room::Algebra,
+    summary: "A bundle with components left out.",
+    signature: Signature {
+        parameters: &[
+            Parameter::required("bundle", &["bundle"], "a bundle"),
+            Parameter::required("components", &["list"], "the labels of the components to leave out: `[sun, haze]`").as_groups(),
+        ],
+    },
+    result: "a bundle of the other components",
+    equation: None,
+    gaps: "Gaps stay as they are.",
+    shows: &[Shows {
+        program: "clock = 1850..1851 CE by 1 yr\nsun = constant(0.1 W/m2)\nhaze = constant(-0.5 W/m2)\ncompose(sun, haze) |> without([haze])",
+        gives: "1 component (sun); total: 2 steps, 1850 CE to 1851 CE: 0.1 W/m2 to 0.1 W/m2",
+    }],
+    fails: &[Fails {
+        program: "clock = 1850..1851 CE by 1 yr\nsun = constant(0.1 W/m2)\nhaze = constant(1 W/m2)\ncompose(sun, haze) |> without([gases])",
+        code: "unknown-component",
+        says: "gases",
+    }],
+    citations: &[],
+    search: &["drop", "exclude", "remove", "leave out"],
+    revision: 1,
+    reads_clock: ReadsClock::Never,
+    reads_file: None,
+    random: false,
+    labels: false,
+    shape: |call| {
+        let Shape::Bundle(parts) = call.shape("bundle")? else {
+            return Err(Fault::new("wrong-argument", "only a bundle has components to leave out").blame("bundle").into());
+        };
+        let labels: Vec<Arc<str>> = parts.iter().map(|(label, _)| label.clone()).collect();
+        let out = labels_left_out(call, &labels)?;
+        Ok(Shape::Bundle(parts.into_iter().filter(|(label, _)| !out.contains(label)).collect()))
+    },
+    body: Body::PerMember(|call| {
+        let value = call.value("bundle")?;
+        let Value::Bundle(bundle) = value.as_ref() else { return Err(wrong_kind("bundle", &value).into()) };
+        let labels: Vec<Arc<str>> = bundle.components.iter().map(|part| part.label.clone()).collect();
+        let out = labels_left_out(call, &labels)?;
+        let components = bundle.components.iter().filter(|part| !out.contains(&part.label)).cloned().collect();
+        Ok(Value::Bundle(Bundle { components }))
+    }),
+};
+
+fn labels_left_out(call: &Call<'_>, labels: &[Arc<str>]) -> Result<Vec<Arc<str>>, Stop> {
+    let out: Vec<Arc<str>> = call.groups("components").unwrap_or(&[]).iter().flatten().cloned().collect();
+    for label in &out {
+        if !labels.contains(label) {
+            return Err(unknown_component(label, labels).blame("components").into());
+        }
+    }
+    if labels.iter().all(|label| out.contains(label)) {
+        return Err(Fault::new("missing-argument", "no component would be left").blame("components").into());
+    }
+    Ok(out)
+}
+
+/// The fault for a label that no component has.
+pub(super) fn unknown_component(label: &str, labels: &[Arc<str>]) -> Fault {
+    let list: Vec<&str> = labels.iter().map(|label| &**label).collect();
+    let fault = Fault::new("unknown-component", format!("no component is called `{label}`"))
+        .detail(format!("the components are {}", list.join(", ")));
+    match super::nearest(label, list.iter().copied()) {
+        Some(near) => fault.help(format!("did you mean `{near}`?")),
+        None => fault,
+    }
+}
+
+static SCALE: Entry = Entry {
+    name: "scale",
+    room: Room::Algebra,
+    summary: "A series, or every component of a bundle, times a factor.",
+    signature: Signature {
+        parameters: &[
+            Parameter::required("series", SERIES, "a series or bundle"),
+            Parameter::required("factor", &["quantity"], "the factor; `1 ± 0.35` makes one shared scale uncertainty"),
+        ],
+    },
+    result: "in the product of the units; a plain factor keeps unit and kind of forcing",
+    equation: Some(r"y(t) = a\,x(t)"),
+    gaps: "A gap stays a gap.",
+    shows: &[Shows {
+        program: "x = series([1, 2] W/m2, along: 1850..1851 CE by 1 yr)\nx |> scale(0.5)",
+        gives: "2 steps, 1850 CE to 1851 CE: 0.5 W/m2 to 1 W/m2",
+    }],
+    fails: &[Fails {
+        program: "x = series([1, 2] W/m2, along: 1850..1851 CE by 1 yr)\nx |> scale(\"half\")",
+        code: "wrong-argument",
+        says: "a quantity",
+    }],
+    citations: &[],
+    search: &["multiply", "factor", "rescale", "efficacy"],
+    revision: 1,
+    reads_clock: ReadsClock::Never,
+    reads_file: None,
+    random: false,
+    labels: false,
+    shape: |call| {
+        let factor = call.measure("factor")?;
+        each_measure(call.shape("series")?, |measure| Ok(measure.product(&factor, 1)))
+    },
+    body: Body::PerMember(|call| {
+        let factor = call.value("factor")?;
+        let Value::Quantity(factor) = factor.as_ref() else { return Err(wrong_kind("factor", &factor).into()) };
+        series_or_bundle(&*call.value("series")?, "", &mut |series, _| {
+            let values = series.values.zip(&factor.values, |value, factor| value * factor);
+            Ok(series.with(values, series.measure.product(&factor.measure, 1)))
+        })
+    }),
+};
+
+static ANOMALY: Entry = Entry {
+    name: "anomaly",
+    room: Room::Algebra,
+    summary: "The series minus its own mean over a baseline.",
+    signature: Signature {
+        parameters: &[
+            Parameter::required("series", SERIES, "a series or bundle"),
+            Parameter::required("relative_to", &["span"], "the baseline"),
+        ],
+    },
+    result: "in the same unit, as a difference",
+    equation: Some(r"y(t) = x(t) - \overline{x}_{\mathrm{baseline}}"),
+    gaps: "A gap stays a gap; two thirds of the baseline must have values.",
+    shows: &[Shows {
+        program: "x = series([14, 15, 16] degC, along: 1850..1852 CE by 1 yr)\nx |> anomaly(relative_to: 1850..1851 CE)",
+        gives: "3 steps, 1850 CE to 1852 CE: -0.5 degC to 1.5 degC",
+    }],
+    fails: &[Fails {
+        program: "x = series([14, 15, 16] degC, along: 1850..1852 CE by 1 yr)\nx |> anomaly(relative_to: 1840..1851 CE)",
+        code: "baseline",
+        says: "two thirds",
+    }],
+    citations: &[],
+    search: &["baseline", "reference period", "departure"],
+    revision: 1,
+    reads_clock: ReadsClock::Never,
+    reads_file: None,
+    random: false,
+    labels: false,
+    shape: |call| {
+        each_measure(call.shape("series")?, |measure| Ok(Measure { reading: Reading::Difference, ..measure.clone() }))
+    },
+    body: Body::PerMember(|call| {
+        let Some(span) = call.span("relative_to")? else {
+            return Err(Fault::new("missing-argument", "no baseline").into());
+        };
+        let name = call.label("series");
+        series_or_bundle(&*call.value("series")?, &name, &mut |series, name| {
+            let means = window_means(series, name, &span)?;
+            let values = series.values.zip(&means, |value, mean| value - mean);
+            Ok(series.with(values, Measure { reading: Reading::Difference, ..series.measure.clone() }))
+        })
+    }),
+};
+
+/// The mean of every member over a window, of which two thirds must have values.
+pub(super) fn window_means(series: &Series, name: &str, span: &TimeSpan) -> Result<Block, Stop> {
+    let range = series.axis.inside(span);
+    // What the window would hold if the axis filled it: steps by their length, instants by their spacing.
+    let step = series.axis.median_step().max(1e-9);
+    let whole = match series.axis.kind {
+        crate::value::AxisKind::Steps => (span.end - span.start) / step,
+        crate::value::AxisKind::Instants => ((span.end - span.start) / step).max(1.0),
+    };
+    let here = series.values.columns_in(range);
+    let present = here.member(0).iter().filter(|value| !value.is_nan()).count();
+    if (present as f64) < whole * (2.0 / 3.0) - 1e-6 || present == 0 {
+        return Err(Fault::new(
+            "baseline",
+            format!("`{name}` has {} in {span}, and two thirds of it are needed", counted(present, "values")),
+        )
+        .detail(format!("{name}: {}", series.axis.describe()))
+        .into());
+    }
+    Ok(here.map_rows(1, |row, mean| {
+        let values: Vec<f64> = row.iter().copied().filter(|value| !value.is_nan()).collect();
+        if let Some(mean) = mean.first_mut() {
+            *mean = reduce::mean(&values);
+        }
+    }))
+}
+
+static SPLICE: Entry = Entry {
+    name: "splice",
+    room: Room::Algebra,
+    summary: "One series before an instant and another from it on, as one record.",
+    signature: Signature {
+        parameters: &[
+            Parameter::required("early", &["series"], "the series used before `at`"),
+            Parameter::required("late", &["series"], "the series used from `at` on; converted to the unit of the early one"),
+            Parameter::required("at", &["instant"], "where one takes over from the other"),
+            Parameter::optional("longest_gap", &["duration"], "the longest gap to bridge when it is brought onto a clock; the wider of the two series' own by default")
+                .in_unit("yr"),
+        ],
+    },
+    result: "a series of instants (steps stand at their middles), in the unit of the early one; nothing is adjusted in the overlap",
+    equation: None,
+    gaps: "A gap stays a gap; the stretch between the two is one, unless `longest_gap` bridges it.",
+    shows: &[Shows {
+        program: "ice = series([280, 282] ppm, at: [1800 CE, 1850 CE])\nair = series([315, 316] ppm, along: 1958..1959 CE by 1 yr)\nsplice(ice, air, at: 1900 CE)",
+        gives: "4 instants, 1800.5 CE to 1959.5 CE: 280 ppm to 316 ppm",
+    }],
+    fails: &[Fails {
+        program: "ice = series([280, 282] ppm, at: [1800 CE, 1850 CE])\nair = series([315, 316] ppm, along: 1958..1959 CE by 1 yr)\nsplice(ice, air, at: 1700 CE)",
+        code: "no-overlap",
+        says: "before",
+    }],
+    citations: &[],
+    search: &["join", "merge", "concatenate", "two sources"],
+    revision: 1,
+    reads_clock: ReadsClock::Never,
+    reads_file: None,
+    random: false,
+    labels: false,
+    shape: |call| {
+        let early = call.measure("early")?;
+        call.measure("late")?.unit.factor_to(&early.unit)?;
+        Ok(Shape::Series(early))
+    },
+    body: Body::PerMember(splice),
+};
+
+fn splice(call: &Call<'_>) -> Result<Value, Stop> {
+    let (early, late, at) = (call.value("early")?, call.value("late")?, call.value("at")?);
+    let (Value::Series(early), Value::Series(late), Value::Instant(at)) = (early.as_ref(), late.as_ref(), at.as_ref())
+    else {
+        return Err(Fault::new("wrong-argument", "two series and an instant are spliced").into());
+    };
+    if at.years.rows() > 1 {
+        return Err(Fault::new("must-be-certain", "`at` cannot carry an uncertainty").blame("at").into());
+    }
+    let factor = late.measure.unit.factor_to(&early.measure.unit)?;
+    let (before, after) = (early.axis.middles(), late.axis.middles());
+    let first = before.partition_point(|time| *time < at.year());
+    let second = after.partition_point(|time| *time < at.year());
+    if first == 0 || second == after.len() {
+        let (name, side) = if first == 0 { ("early", "before") } else { ("late", "from") };
+        return Err(Fault::new("no-overlap", format!("`{}` has no value {side} {at}", call.label(name))).blame("at").into());
+    }
+    let mut times = before.get(..first).unwrap_or(&[]).to_vec();
+    times.extend(after.get(second..).unwrap_or(&[]));
+    let late_part = late.values.columns_in(second..after.len()).times(factor);
+    let early_part = early.values.columns_in(0..first);
+    let rows = early_part.rows().max(late_part.rows());
+    let mut data = Vec::with_capacity(rows * times.len());
+    for member in 0..rows {
+        data.extend(early_part.member(member));
+        data.extend(late_part.member(member));
+    }
+    let values = Block::new(rows, times.len(), data);
+    call.context.note(format!(
+        "{} up to {at}, {} from then on; nothing was adjusted where they overlap",
+        call.label("early"),
+        call.label("late")
+    ));
+    let axis = Arc::new(Axis::instants(times, early.axis.era));
+    let mut joined = Series::new(axis, values, early.measure.clone(), Standing::Own);
+    joined.longest_gap_years = if call.slot("longest_gap").is_some() {
+        call.certain("longest_gap")?
+    } else {
+        early.longest_gap_years.max(late.longest_gap_years)
+    };
+    Ok(Value::Series(joined))
+}
+
+pub(super) const FAMILY: &[&Entry] = &[&COMPOSE, &WITHOUT, &SCALE, &ANOMALY, &SPLICE];

@@ -1,0 +1,59 @@
+//! The functions a notebook can call, ONE entry each. Evaluation, argument checks, completion, the reference,
+//! `explain` and the tests of every example read the entries; there is no second list.
+//!
+//! To add a function, write one `static` entry in the file of its room and list it in that file's `FAMILY`.
+
+mod algebra;
+mod attribution;
+mod call;
+mod citations;
+mod entry;
+mod gases;
+mod onto;
+mod operators;
+mod reading;
+mod response;
+mod showing;
+mod time;
+
+pub use call::{Call, Context, Given, InputFile, Path, Stop, What, check_arguments};
+pub use entry::{Body, Citation, Entry, Fails, ReadsClock, Room, Shows};
+pub use onto::{onto_clock, total};
+pub use showing::{CAUTION, attribution_table};
+
+const FAMILIES: &[&[&Entry]] = &[
+    operators::FAMILY,
+    time::FAMILY,
+    reading::FAMILY,
+    algebra::FAMILY,
+    gases::FAMILY,
+    response::FAMILY,
+    attribution::FAMILY,
+    showing::FAMILY,
+];
+
+/// Every entry, room by room.
+pub fn entries() -> impl Iterator<Item = &'static Entry> {
+    FAMILIES.iter().flat_map(|family| family.iter().copied())
+}
+
+/// The entry called `name`.
+pub fn find(name: &str) -> Option<&'static Entry> {
+    entries().find(|entry| entry.name == name)
+}
+
+/// The name among `names` that `word` may have meant.
+pub fn nearest<'a>(word: &str, names: impl Iterator<Item = &'a str>) -> Option<&'a str> {
+    let reach = (word.chars().count() / 3).clamp(1, 3);
+    names
+        .map(|name| (strsim::osa_distance(&word.to_lowercase(), &name.to_lowercase()), name))
+        .filter(|(distance, _)| *distance <= reach)
+        .min_by_key(|(distance, _)| *distance)
+        .map(|(_, name)| name)
+}
+
+/// The function that `word` may have meant: a near spelling, or another word for it.
+pub fn nearest_function(word: &str) -> Option<&'static str> {
+    nearest(word, entries().map(|entry| entry.name))
+        .or_else(|| entries().find(|entry| entry.search.contains(&word.to_lowercase().as_str())).map(|entry| entry.name))
+}

@@ -1,0 +1,200 @@
+//! Tables of results.
+
+use std::sync::Arc;
+
+use super::attribution::contribute;
+use super::call::{Call, Stop};
+use super::entry::{Body, Entry, Fails, ReadsClock, Room, Shows};
+use super::onto::{onto_clock, total};
+use crate::base::Fault;
+use crate::language::{Parameter, Signature};
+use crate::value::{Attribution, AxisKind, Cell, Coefficient, Column, Model, Series, Shape, Table, Value};
+
+static TABLE: Entry = Entry {
+    name: "table",
+    room: Room::Showing,
+    summary: "The numbers of a result in rows and columns.",
+    signature: Signature {
+        parameters: &[
+            Parameter::required("value", &["attribution", "series", "bundle", "model", "quantity"], "what to show"),
+            Parameter::optional("change", &["span"], "for an attribution: the later window of the change to explain"),
+            Parameter::optional("from", &["span"], "for an attribution: the earlier window"),
+        ],
+    },
+    result: "a table; values of an uncertain series with median and 5–95 % range",
+    equation: None,
+    gaps: "A gap is an empty cell.",
+    shows: &[Shows {
+        program: "table(series([1, 2] ppm, along: 1850..1851 CE by 1 yr))",
+        gives: "2 rows: year CE, value (ppm)",
+    }],
+    fails: &[
+        Fails { program: "table(1850 CE)", code: "wrong-argument", says: "it takes" },
+        Fails {
+            program: "table(series([1, 2] ppm, along: 1850..1851 CE by 1 yr), change: 1850..1851 CE, from: 1850..1851 CE)",
+            code: "wrong-argument",
+            says: "attribution",
+        },
+    ],
+    citations: &[],
+    search: &["show", "print", "numbers", "rows"],
+    revision: 1,
+    reads_clock: ReadsClock::WithSeries,
+    reads_file: None,
+    random: false,
+    labels: true,
+    shape: |call| {
+        let windows = call.slot("change").is_some() || call.slot("from").is_some();
+        if windows && call.shape("value")? != Shape::Attribution {
+            return Err(Fault::new("wrong-argument", "only the table of an attribution takes windows").blame("change").into());
+        }
+        if call.slot("change").is_some() != call.slot("from").is_some() {
+            return Err(Fault::new("missing-argument", "a change needs both its windows, `change:` and `from:`").into());
+        }
+        Ok(Shape::Table)
+    },
+    body: Body::AcrossMembers(|call| Ok(Value::Table(Arc::new(table(call)?)))),
+};
+
+pub(super) const FAMILY: &[&Entry] = &[&TABLE];
+
+fn table(call: &Call<'_>) -> Result<Table, Stop> {
+    let label = call.label("value");
+    match call.value("value")?.as_ref() {
+        Value::Attribution(attribution) => {
+            let mut attribution = Attribution::clone(attribution);
+            if let (Some(later), Some(earlier)) = (call.span("change")?, call.span("from")?) {
+                contribute(&mut attribution, later, earlier)?;
+            }
+            Ok(attribution_table(&attribution))
+        }
+        Value::Series(series) => series_table(call, series, &label),
+        Value::Bundle(bundle) => {
+            let sum = total(call.context, bundle)?;
+            let mut columns = vec![time_column(&sum)];
+            let mut values = Vec::new();
+            for (label, series) in bundle.leaves() {
+                let series = onto_clock(call.context, series, &label)?;
+                columns.push(Column::in_unit(&label, &series.measure.unit));
+                values.push(series.values.member(0).to_vec());
+            }
+            columns.push(Column::in_unit("total", &sum.measure.unit));
+            values.push(sum.values.member(0).to_vec());
+            Ok(Table { title: label.to_string(), rows: time_rows(&sum, &values), columns, notes: Vec::new() })
+        }
+        Value::Model(model) => Ok(model_table(model)),
+        Value::Quantity(quantity) => {
+            let mut columns = vec![Column::in_unit("value", &quantity.measure.unit)];
+            let mut row = vec![Cell::number(quantity.first())];
+            if let Some(spread) = call.slot("value").map(|slot| call.context.spread(slot)).transpose()?.flatten() {
+                for (name, values) in [("median", &spread.median), ("low", &spread.low), ("high", &spread.high)] {
+                    columns.push(Column::in_unit(name, &quantity.measure.unit));
+                    row.push(Cell::number(values.first().copied().unwrap_or(f64::NAN)));
+                }
+            }
+            Ok(Table { title: label.to_string(), columns, rows: vec![row], notes: Vec::new() })
+        }
+        other => Err(Fault::new("wrong-argument", format!("found {}", other.shape().describe())).blame("value").into()),
+    }
+}
+
+fn time_column(series: &Series) -> Column {
+    if series.axis.era.is_age() { Column::in_unit("age", series.axis.era.symbol()) } else { Column::plain("year CE") }
+}
+
+/// Calendar steps are named by the year they begin in, as they were written; ages by their number.
+fn time_rows(series: &Series, values: &[Vec<f64>]) -> Vec<Vec<Cell>> {
+    let axis = &series.axis;
+    let named = |start: &f64| if axis.era.is_age() { axis.era.of_year(*start) } else { *start };
+    axis.starts()
+        .iter()
+        .enumerate()
+        .map(|(row, start)| {
+            let numbers = values.iter().map(|column| Cell::number(column.get(row).copied().unwrap_or(f64::NAN)));
+            std::iter::once(Cell::number(named(start))).chain(numbers).collect()
+        })
+        .collect()
+}
+
+fn series_table(call: &Call<'_>, series: &Series, label: &str) -> Result<Table, Stop> {
+    let unit = &series.measure.unit;
+    let mut columns = vec![time_column(series), Column::in_unit("value", unit)];
+    let mut values = vec![series.values.member(0).to_vec()];
+    let mut notes = Vec::new();
+    if let Some(spread) = call.slot("value").map(|slot| call.context.spread(slot)).transpose()?.flatten() {
+        for (name, column) in [("median", &spread.median), ("low", &spread.low), ("high", &spread.high)] {
+            columns.push(Column::in_unit(name, unit));
+            values.push(column.clone());
+        }
+        notes.push(format!("low and high are the 5–95 % range of {} members", spread.members));
+    }
+    if series.axis.kind == AxisKind::Steps {
+        notes.push("each row is the mean over the step that begins there".to_owned());
+    }
+    Ok(Table { title: label.to_owned(), rows: time_rows(series, &values), columns, notes })
+}
+
+fn model_table(model: &Model) -> Table {
+    let rows = model
+        .parameters()
+        .into_iter()
+        .map(|(name, unit, values)| {
+            vec![Cell::Text(Arc::from(name)), Cell::number(values.first()), Cell::Text(Arc::from(unit))]
+        })
+        .collect();
+    let columns = vec![Column::plain("parameter"), Column::plain("value"), Column::plain("unit")];
+    Table { title: "two-layer model".to_owned(), columns, rows, notes: Vec::new() }
+}
+
+/// The table of an attribution, as it is shown and as JSON gives it.
+pub fn attribution_table(attribution: &Attribution) -> Table {
+    let columns = vec![
+        Column::plain("driver"),
+        Column::plain("coefficient"),
+        Column::plain("standard_error"),
+        Column::plain("t"),
+        Column::plain("low"),
+        Column::plain("high"),
+        Column::in_unit("contribution", &attribution.unit),
+        Column::in_unit("contribution_low", &attribution.unit),
+        Column::in_unit("contribution_high", &attribution.unit),
+        Column::plain("unit"),
+    ];
+    let row = |entry: &Coefficient| {
+        let (contribution, error) = entry.contribution.unwrap_or((f64::NAN, f64::NAN));
+        let reach = attribution.t_quantile * error;
+        vec![
+            Cell::Text(entry.label.clone()),
+            Cell::number(entry.value),
+            Cell::number(entry.standard_error),
+            Cell::number(entry.t),
+            Cell::number(entry.low),
+            Cell::number(entry.high),
+            Cell::number(contribution),
+            Cell::number(contribution - reach),
+            Cell::number(contribution + reach),
+            Cell::Text(Arc::from(entry.unit.to_string())),
+        ]
+    };
+    let rows = attribution.drivers.iter().chain([&attribution.intercept]).map(row).collect();
+    let mut notes = vec![format!(
+        "{}, noise {}; low and high are the 5–95 % interval by Student's t",
+        attribution.method, attribution.noise
+    )];
+    if let (Some((later, earlier)), Some(change)) = (&attribution.windows, attribution.observed_change) {
+        let explained: f64 = attribution.drivers.iter().filter_map(|driver| driver.contribution).map(|(value, _)| value).sum();
+        notes.push(format!(
+            "contribution: to the change from {earlier} to {later}; observed {change:.3} {unit}, explained {explained:.3}, unexplained {:.3}",
+            change - explained,
+            unit = attribution.unit
+        ));
+    } else {
+        notes.push("contributions need two windows: `change:` and `from:`".to_owned());
+    }
+    notes.push(CAUTION.to_owned());
+    Table { title: "attribution".to_owned(), columns, rows, notes }
+}
+
+/// The line beneath every attribution.
+pub const CAUTION: &str =
+    "a regression shows what goes together, under its assumptions; for assessed findings see the assessment reports";

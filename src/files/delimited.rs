@@ -1,0 +1,397 @@
+//! Bytes to a table of text cells: encoding, comments, delimiter, header, the shape of the rows.
+
+use super::text_layout::{comment_text, decode, find_delimiter, header_comments, newlines, newlines_in};
+use super::{FileFault, counted, quoted_names};
+
+/// What the reader of a table is told beforehand.
+#[derive(Debug, Clone, Default, PartialEq, Eq)]
+pub struct DelimitedOptions {
+    /// Numbers are written `3,14`. Here it only decides between delimiters.
+    pub decimal_comma: bool,
+}
+
+/// A table as text. Cells are kept in one buffer, trimmed of white space, row by row.
+#[derive(Debug, Clone)]
+pub struct DelimitedTable {
+    /// The comment lines before, in and after the data, without `#` and surrounding white space.
+    pub comments: Vec<String>,
+    /// The columns in file order.
+    pub columns: Vec<TextColumn>,
+    /// Whether the columns were named by the file (otherwise they are `column 1`, …).
+    pub has_header: bool,
+    /// What was decided while reading.
+    pub notes: Vec<String>,
+    text: String,
+    cell_ends: Vec<usize>,
+    row_width: usize,
+    row_lines: Vec<usize>,
+}
+
+/// The head of one column; its cells are in [`DelimitedTable::cell`].
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct TextColumn {
+    /// The name without its unit: `co2` for `co2 (ppm)`.
+    pub name: String,
+    /// The text in the round or square brackets that end the header: `ppm`.
+    pub unit_text: Option<String>,
+    /// The header as the file has it.
+    pub header: String,
+    /// Its place in the row, which is not its place in `columns` once empty columns are dropped.
+    offset: usize,
+}
+
+impl DelimitedTable {
+    /// How many rows of data there are.
+    #[must_use]
+    pub fn row_count(&self) -> usize {
+        self.row_lines.len()
+    }
+
+    /// The line of the file (from 1) on which a row begins; 0 for a row that does not exist.
+    #[must_use]
+    pub fn line_of_row(&self, row: usize) -> usize {
+        self.row_lines.get(row).copied().unwrap_or(0)
+    }
+
+    /// The text of one cell, `""` when there is no such cell. `column` counts in `columns`.
+    #[must_use]
+    pub fn cell(&self, row: usize, column: usize) -> &str {
+        let Some(head) = self.columns.get(column) else {
+            return "";
+        };
+        let index = row * self.row_width + head.offset;
+        let start = match index.checked_sub(1) {
+            Some(before) => self.cell_ends.get(before).copied(),
+            None => Some(0),
+        };
+        match (start, self.cell_ends.get(index)) {
+            (Some(start), Some(&end)) => self.text.get(start..end).unwrap_or(""),
+            _ => "",
+        }
+    }
+
+    /// Finds a column by its name or by its whole header.
+    ///
+    /// # Errors
+    /// `file-no-such-column`, listing the columns and the nearest name; `file-column-twice` when
+    /// the name is not unique.
+    pub fn column_named(&self, wanted: &str) -> Result<usize, FileFault> {
+        let wanted = wanted.trim();
+        let by = |matches: &dyn Fn(&TextColumn) -> bool| -> Vec<usize> {
+            (0..self.columns.len()).filter(|&i| matches(&self.columns[i])).collect()
+        };
+        let mut found = by(&|column| column.header == wanted);
+        if found.is_empty() {
+            found = by(&|column| column.name == wanted);
+        }
+        match found.as_slice() {
+            [one] => Ok(*one),
+            [] => Err(self.no_such_column(wanted)),
+            [first, second, ..] => Err(FileFault::new(
+                "file-column-twice",
+                format!("columns {} and {} are both named `{wanted}`", first + 1, second + 1),
+            )
+            .help("give them different names in the file")),
+        }
+    }
+
+    fn no_such_column(&self, wanted: &str) -> FileFault {
+        let list = quoted_names(self.columns.iter().map(|column| column.header.as_str()));
+        let fault = FileFault::new(
+            "file-no-such-column",
+            format!("there is no column `{wanted}`; the columns are {list}"),
+        );
+        let folded = wanted.to_lowercase();
+        let nearest = self
+            .columns
+            .iter()
+            .map(|column| {
+                let distance = strsim::damerau_levenshtein(&folded, &column.name.to_lowercase());
+                (distance, &column.name)
+            })
+            .min_by_key(|(distance, _)| *distance);
+        match nearest {
+            Some((distance, name)) if distance <= 1 + wanted.chars().count() / 3 => {
+                fault.help(format!("did you mean `{name}`?"))
+            }
+            Some(_) | None => fault,
+        }
+    }
+}
+
+/// Reads delimited text.
+///
+/// Comment lines begin with `#`; blank lines and rows without a single filled cell are skipped. The
+/// delimiter is the tab, the semicolon or the comma, found from the first line and confirmed by the
+/// second.
+///
+/// # Errors
+/// No UTF-8, no data, a row of another length than the header (with its line).
+pub fn read_table(bytes: &[u8], options: &DelimitedOptions) -> Result<DelimitedTable, FileFault> {
+    let text = decode(bytes)?;
+    let mut notes = Vec::new();
+    let mut comments = Vec::new();
+    let body_start = header_comments(&text, &mut comments);
+    let body = &text[body_start..];
+    if body.is_empty() {
+        let what =
+            if comments.is_empty() { "the file is empty" } else { "the file holds comments and no data" };
+        return Err(FileFault::new("file-empty", what)
+            .help("expected a line of column names and a line for each time"));
+    }
+    let delimiter = find_delimiter(body, options.decimal_comma);
+    match delimiter {
+        b'\t' => notes.push("columns are separated by tabs".to_owned()),
+        b';' => notes.push("columns are separated by semicolons".to_owned()),
+        _ => {}
+    }
+
+    let mut rows = RowReader {
+        reader: csv::ReaderBuilder::new()
+            .has_headers(false)
+            .flexible(true)
+            .delimiter(delimiter)
+            .comment(Some(b'#'))
+            .from_reader(body.as_bytes()),
+        record: csv::ByteRecord::new(),
+        body,
+        cursor: 0,
+        line: 1 + newlines(&text[..body_start]),
+        comments: Vec::new(),
+        first_comment_line: 0,
+    };
+    let Some(first_line) = rows.next_row()? else {
+        return Err(FileFault::new("file-empty", "the file holds no data"));
+    };
+    let first: Vec<String> =
+        rows.record.iter().map(|cell| String::from_utf8_lossy(cell).trim().to_owned()).collect();
+    let has_header = !looks_like_data(&first);
+    let mut table = DelimitedTable {
+        comments,
+        columns: columns_from(&first, has_header),
+        has_header,
+        notes,
+        text: String::with_capacity(body.len()),
+        cell_ends: Vec::new(),
+        row_width: first.len(),
+        row_lines: Vec::new(),
+    };
+    if has_header {
+        table.comments.append(&mut rows.comments);
+    } else {
+        table.notes.push(format!(
+            "the first row (line {first_line}) is all numbers, so the columns have no names: they are {}",
+            quoted_names(table.columns.iter().map(|column| column.name.as_str()))
+        ));
+        table.push_row(&rows.record, first_line);
+    }
+    let mut empty_rows = 0;
+    let mut comments_inside = (0, 0);
+    while let Some(line) = rows.next_row()? {
+        if !rows.comments.is_empty() {
+            if table.row_count() > 0 {
+                if comments_inside.0 == 0 {
+                    comments_inside.1 = rows.first_comment_line;
+                }
+                comments_inside.0 += rows.comments.len();
+            }
+            table.comments.append(&mut rows.comments);
+        }
+        if rows.record.iter().all(|cell| cell.trim_ascii().is_empty()) {
+            empty_rows += 1;
+        } else if rows.record.len() == table.row_width {
+            table.push_row(&rows.record, line);
+        } else {
+            return Err(row_length_fault(&table, &rows, line, delimiter));
+        }
+    }
+    table.comments.append(&mut rows.comments);
+    if table.row_count() == 0 {
+        let names = quoted_names(first.iter().map(String::as_str));
+        return Err(FileFault::new(
+            "file-empty",
+            format!("the file has column names ({names}) and no rows below them"),
+        )
+        .at_line(first_line));
+    }
+    if comments_inside.0 > 0 {
+        table.notes.push(format!(
+            "{} among the data rows skipped (first in line {})",
+            counted(comments_inside.0, "comment line"),
+            comments_inside.1
+        ));
+    }
+    if empty_rows > 0 {
+        let rows = if empty_rows == 1 { "row" } else { "rows" };
+        table.notes.push(format!("{empty_rows} {rows} without any value skipped"));
+    }
+    table.drop_empty_columns(&first);
+    Ok(table)
+}
+
+impl DelimitedTable {
+    fn push_row(&mut self, record: &csv::ByteRecord, line: usize) {
+        for cell in record {
+            // The whole file was checked as UTF-8 and the delimiter is ASCII, so nothing is ever
+            // lost here.
+            if let Ok(cell) = std::str::from_utf8(cell) {
+                self.text.push_str(cell.trim());
+            }
+            self.cell_ends.push(self.text.len());
+        }
+        self.row_lines.push(line);
+    }
+
+    /// Spreadsheets end each row with delimiters: columns with neither name nor cell are no
+    /// columns.
+    fn drop_empty_columns(&mut self, headers: &[String]) {
+        if !self.has_header || headers.iter().all(|header| !header.is_empty()) {
+            return;
+        }
+        let kept = (0..self.columns.len())
+            .filter(|&column| {
+                headers.get(column).is_some_and(|header| !header.is_empty())
+                    || (0..self.row_count()).any(|row| !self.cell(row, column).is_empty())
+            })
+            .map(|column| self.columns[column].clone())
+            .collect();
+        self.columns = kept;
+    }
+}
+
+/// The csv reader, with the true line of each record. Its own count is that of the first comment or
+/// blank line skipped before the record, so lines are counted here, on the text.
+struct RowReader<'a> {
+    reader: csv::Reader<&'a [u8]>,
+    record: csv::ByteRecord,
+    body: &'a str,
+    cursor: usize,
+    line: usize,
+    /// Comment lines skipped before the present record.
+    comments: Vec<String>,
+    first_comment_line: usize,
+}
+
+impl RowReader<'_> {
+    /// The text of the present record, its newline included.
+    fn row_text(&self) -> &str {
+        let end = usize::try_from(self.reader.position().byte()).unwrap_or(usize::MAX);
+        let end = end.min(self.body.len());
+        self.body.get(self.cursor..end).unwrap_or("")
+    }
+
+    /// The csv reader takes an open quote for a field that runs to the end of the file.
+    fn quote_is_open(&self) -> bool {
+        let is_last = self.reader.position().byte() >= self.body.len() as u64;
+        is_last && newlines(self.row_text().trim_end()) > 0 && self.row_text().matches('"').count() % 2 == 1
+    }
+
+    fn next_row(&mut self) -> Result<Option<usize>, FileFault> {
+        let from = usize::try_from(self.reader.position().byte()).unwrap_or(usize::MAX);
+        let more = self.reader.read_byte_record(&mut self.record);
+        let bytes = self.body.as_bytes();
+        let from = from.min(bytes.len());
+        self.line += newlines_in(&bytes[self.cursor..from]);
+        self.cursor = from;
+        while let Some(&byte) = bytes.get(self.cursor) {
+            if byte == b'#' {
+                let rest = &self.body[self.cursor..];
+                let length = rest.find('\n').unwrap_or(rest.len());
+                if self.comments.is_empty() {
+                    self.first_comment_line = self.line;
+                }
+                self.comments.push(comment_text(&rest[..length]));
+                self.cursor += length;
+            } else if byte == b'\n' || byte == b'\r' {
+                self.line += usize::from(byte == b'\n');
+                self.cursor += 1;
+            } else {
+                break;
+            }
+        }
+        match more {
+            Ok(true) if self.quote_is_open() => {
+                Err(FileFault::new("file-open-quote", "a quotation mark opened in this row is never closed")
+                    .at_line(self.line))
+            }
+            Ok(true) => Ok(Some(self.line)),
+            Ok(false) => Ok(None),
+            Err(error) => {
+                Err(FileFault::new("file-unreadable", format!("the row could not be read: {error}"))
+                    .at_line(self.line))
+            }
+        }
+    }
+}
+
+/// A first row is data when each cell is a number, a date or a gap, and not all are gaps.
+fn looks_like_data(cells: &[String]) -> bool {
+    let is_number = |cell: &String| {
+        let plain = cell.replace('−', "-").replace(',', ".");
+        let starts_as_number = plain.starts_with(|c: char| c.is_ascii_digit() || "+-.".contains(c));
+        starts_as_number && (plain.parse::<f64>().is_ok() || super::calendar::parse_date(&plain).is_some())
+    };
+    cells.iter().any(is_number)
+        && cells.iter().all(|cell| is_number(cell) || super::numbers::is_missing_marker(cell))
+}
+
+fn columns_from(first: &[String], has_header: bool) -> Vec<TextColumn> {
+    let named = |(offset, cell): (usize, &String)| {
+        let header =
+            if has_header && !cell.is_empty() { cell.clone() } else { format!("column {}", offset + 1) };
+        let (name, unit_text) = split_unit(&header);
+        TextColumn { name, unit_text, header, offset }
+    };
+    first.iter().enumerate().map(named).collect()
+}
+
+/// `co2 (ppm)` and `co2 [ppm]` are a name and a unit; any other header is a name.
+fn split_unit(header: &str) -> (String, Option<String>) {
+    for (open, close) in [('(', ')'), ('[', ']')] {
+        let Some(inner) = header.strip_suffix(close) else {
+            continue;
+        };
+        // The bracket that matches the last one: units hold brackets of their own, as in `flux (kg
+        // (m2 s)-1)`.
+        let mut depth = 1;
+        for (at, character) in inner.char_indices().rev() {
+            if character == close {
+                depth += 1;
+            } else if character == open {
+                depth -= 1;
+            }
+            if depth == 0 {
+                let name = inner[..at].trim();
+                let unit = inner[at + 1..].trim();
+                if !name.is_empty() && !unit.is_empty() {
+                    return (name.to_owned(), Some(unit.to_owned()));
+                }
+                break;
+            }
+        }
+    }
+    (header.to_owned(), None)
+}
+
+fn row_length_fault(table: &DelimitedTable, rows: &RowReader<'_>, line: usize, delimiter: u8) -> FileFault {
+    let found = rows.record.len();
+    let expected = table.row_width;
+    let than = if table.has_header { "the header has" } else { "the first row has" };
+    let fault = FileFault::new(
+        "file-row-length",
+        format!("the row has {}, {than} {expected}", counted(found, "field")),
+    )
+    .at_line(line);
+    if newlines(rows.row_text().trim_end()) > 0 {
+        fault.help("a quotation mark is opened in this line and not closed in it")
+    } else if delimiter == b',' && found > expected {
+        fault.help(
+            "if commas are decimal marks, separate the columns by `;` or tabs and say decimal_comma: \
+             true; text that holds a comma goes into double quotes",
+        )
+    } else if found > expected {
+        fault.help("text that holds the delimiter goes into double quotes")
+    } else {
+        fault.help("leave the cell of a missing value empty, but keep its delimiter")
+    }
+}
