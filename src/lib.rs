@@ -5,7 +5,10 @@
 
 pub mod base;
 pub mod catalogue;
+pub mod display;
 pub mod files;
 pub mod language;
+pub mod notebook;
 pub mod science;
+pub mod session;
 pub mod value;

@@ -1,1 +1,246 @@
-fn main(){}
+//! The command line.
+
+use std::io::{IsTerminal, Write};
+use std::path::PathBuf;
+use std::process::ExitCode;
+use std::sync::Arc;
+use std::sync::atomic::{AtomicBool, Ordering};
+use std::time::{Duration, Instant};
+
+use clap::{Parser, Subcommand, ValueEnum};
+
+use rhythmite::session::{CellReply, Session};
+use rhythmite::{catalogue, display, notebook};
+
+/// Climate forcing time series: compose drivers, respond, attribute a record.
+#[derive(Parser)]
+#[command(name = "rhythmite", version, about)]
+struct Arguments {
+    #[command(subcommand)]
+    command: Command,
+}
+
+#[derive(Subcommand)]
+enum Command {
+    /// Run a script (.rhy) and print its results.
+    Run {
+        /// The script; it reads files in its own folder and below.
+        file: PathBuf,
+        /// How results are printed.
+        #[arg(long, value_enum, default_value = "text")]
+        format: Format,
+        /// Write the results there instead of printing them.
+        #[arg(long)]
+        out: Option<PathBuf>,
+        /// How many threads to use; all processors by default. The numbers are the same for any.
+        #[arg(long)]
+        threads: Option<usize>,
+        /// The largest input file that is read, in MiB.
+        #[arg(long, default_value_t = 256)]
+        file_limit: u64,
+    },
+    /// Print the help of one function.
+    Explain {
+        /// Its name, or the sign of an operator.
+        name: String,
+    },
+}
+
+#[derive(Clone, Copy, PartialEq, Eq, ValueEnum)]
+enum Format {
+    /// Lines and tables.
+    Text,
+    /// One JSON object.
+    Json,
+}
+
+/// The program ran and every result is there.
+const SUCCESS: u8 = 0;
+/// Something in the program is wrong.
+const WRONG_PROGRAM: u8 = 1;
+/// The command line is wrong, or a file it names cannot be read or written.
+const WRONG_CALL: u8 = 2;
+
+fn main() -> ExitCode {
+    let arguments = Arguments::parse();
+    let code = match arguments.command {
+        Command::Run { file, format, out, threads, file_limit } => {
+            let (session_limit, memory) = (file_limit.saturating_mul(1024 * 1024), 512 * 1024 * 1024);
+            run(&file, format, out.as_deref(), threads, memory, session_limit)
+        }
+        Command::Explain { name } => explain(&name),
+    };
+    ExitCode::from(code)
+}
+
+/// Print to standard output; a reader that has gone (`| head`) is no mistake.
+fn print(text: &str) {
+    let mut out = std::io::stdout().lock();
+    let _ = out.write_all(text.as_bytes());
+    let _ = out.flush();
+}
+
+fn complain(text: &str) {
+    let mut out = std::io::stderr().lock();
+    let _ = out.write_all(text.as_bytes());
+}
+
+fn explain(name: &str) -> u8 {
+    match catalogue::find(name) {
+        Some(entry) => {
+            print(&catalogue::explain(entry));
+            SUCCESS
+        }
+        None => {
+            let near = catalogue::nearest_function(name);
+            let names: Vec<&str> = catalogue::entries().map(|entry| entry.name).collect();
+            complain(&match near {
+                Some(near) => format!("there is no function `{name}`; did you mean `{near}`?\n"),
+                None => format!("there is no function `{name}`; there are {}\n", names.join(", ")),
+            });
+            WRONG_CALL
+        }
+    }
+}
+
+fn run(
+    file: &std::path::Path,
+    format: Format,
+    out: Option<&std::path::Path>,
+    threads: Option<usize>,
+    memory: usize,
+    file_limit: u64,
+) -> u8 {
+    if file.extension().is_some_and(|extension| extension == "ipynb") {
+        complain("this version runs scripts (.rhy); copy the cells of the notebook into one\n");
+        return WRONG_CALL;
+    }
+    let bytes = match std::fs::read(file) {
+        Ok(bytes) => bytes,
+        Err(error) => {
+            complain(&format!("{} cannot be read: {error}\n", file.display()));
+            return WRONG_CALL;
+        }
+    };
+    let text = match String::from_utf8(bytes) {
+        Ok(text) => text,
+        Err(error) => {
+            let at = error.utf8_error().valid_up_to();
+            complain(&format!("{} is not UTF-8: the first wrong byte is number {}\n", file.display(), at + 1));
+            return WRONG_CALL;
+        }
+    };
+    let folder = file.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(std::path::Path::new("."));
+    let name = file.file_name().map_or_else(|| "script".into(), |name| name.to_string_lossy().into_owned());
+    let mut session = Session::with_limits(folder, threads, memory, file_limit);
+    let progress = Progress::begin();
+    let reply = session.run_cell(&name, &text);
+    progress.end();
+    let failed = !reply.problems.is_empty()
+        || !reply.waiting.is_empty()
+        || reply.outputs.iter().any(|output| output.result.is_err());
+    let mut report = Report { session: &session, colour: std::io::stdout().is_terminal(), text: String::new() };
+    let printed = match format {
+        Format::Text => {
+            report.reply(&reply);
+            report.text
+        }
+        Format::Json => {
+            let json = notebook::run_to_json(&session, &[(0, reply)]);
+            serde_json::to_string_pretty(&json).unwrap_or_default() + "\n"
+        }
+    };
+    match out {
+        None => print(&printed),
+        Some(path) => {
+            if let Err(error) = std::fs::write(path, printed) {
+                complain(&format!("{} cannot be written: {error}\n", path.display()));
+                return WRONG_CALL;
+            }
+        }
+    }
+    if failed { WRONG_PROGRAM } else { SUCCESS }
+}
+
+/// Results as text.
+struct Report<'a> {
+    session: &'a Session,
+    colour: bool,
+    text: String,
+}
+
+impl Report<'_> {
+    fn reply(&mut self, reply: &CellReply) {
+        let sources = |id| self.session.source(id);
+        for problem in reply.problems.iter().chain(&reply.waiting) {
+            self.text += &display::diagnostic(problem, &sources, self.colour);
+            self.text.push('\n');
+        }
+        for notice in &reply.notices {
+            self.text += &format!("{notice}\n\n");
+        }
+        for output in &reply.outputs {
+            let (bold, dim, plain) = if self.colour { ("\x1b[1m", "\x1b[2m", "\x1b[0m") } else { ("", "", "") };
+            match &output.result {
+                Ok(shown) => {
+                    self.text += &format!("{bold}{}{plain}\n", output.expression);
+                    self.text += &indented(&display::text(shown));
+                    for note in &output.notes {
+                        self.text += &format!("  {dim}– {note}{plain}\n");
+                    }
+                    self.text += &format!("  {dim}{}{plain}\n\n", output.fingerprint.short());
+                }
+                Err(problem) if reply.problems.contains(problem) || reply.waiting.contains(problem) => {
+                    let line = display::problem_line(problem, &sources);
+                    self.text += &format!("{bold}{}{plain}\n  not shown, because of the error at {line}\n\n", output.expression);
+                }
+                Err(problem) => {
+                    self.text += &display::diagnostic(problem, &sources, self.colour);
+                    self.text.push('\n');
+                }
+            }
+        }
+    }
+}
+
+fn indented(text: &str) -> String {
+    text.lines().map(|line| if line.starts_with("  ") { format!("{line}\n") } else { format!("  {line}\n") }).collect()
+}
+
+/// A line on standard error that says how long a run has taken, on a terminal and after half a second.
+struct Progress {
+    done: Arc<AtomicBool>,
+    ticker: Option<std::thread::JoinHandle<()>>,
+}
+
+impl Progress {
+    fn begin() -> Self {
+        let done = Arc::new(AtomicBool::new(false));
+        if !std::io::stderr().is_terminal() {
+            return Self { done, ticker: None };
+        }
+        let flag = done.clone();
+        let ticker = std::thread::spawn(move || {
+            let began = Instant::now();
+            let mut shown = false;
+            while !flag.load(Ordering::Relaxed) {
+                std::thread::sleep(Duration::from_millis(100));
+                if began.elapsed() > Duration::from_millis(500) && !flag.load(Ordering::Relaxed) {
+                    shown = true;
+                    complain(&format!("\rcomputing, {:.1} s; Ctrl-C stops it", began.elapsed().as_secs_f64()));
+                }
+            }
+            if shown {
+                complain("\r\x1b[K");
+            }
+        });
+        Self { done, ticker: Some(ticker) }
+    }
+
+    fn end(self) {
+        self.done.store(true, Ordering::Relaxed);
+        if let Some(ticker) = self.ticker {
+            let _ = ticker.join();
+        }
+    }
+}

@@ -5,5 +5,6 @@ mod diagnostic;
 mod source;
 
 pub use cancellation::{Cancellation, Cancelled};
+pub(crate) use diagnostic::INTERRUPTED;
 pub use diagnostic::{Blame, Diagnostic, Fault, Mark};
 pub use source::{LineIndex, Position, Source, SourceId, Span};

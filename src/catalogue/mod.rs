@@ -8,6 +8,7 @@ mod attribution;
 mod call;
 mod citations;
 mod entry;
+mod explain;
 mod gases;
 mod onto;
 mod operators;
@@ -18,8 +19,8 @@ mod time;
 
 pub use call::{Call, Context, Given, InputFile, Path, Stop, What, check_arguments};
 pub use entry::{Body, Citation, Entry, Fails, ReadsClock, Room, Shows};
+pub use explain::{explain, reference};
 pub use onto::{onto_clock, total};
-pub use showing::{CAUTION, attribution_table};
 
 const FAMILIES: &[&[&Entry]] = &[
     operators::FAMILY,

@@ -2,7 +2,7 @@
 
 use std::sync::Arc;
 
-use super::call::{Call, Context, Path, Stop, wrong_kind};
+use super::call::{Context, Path, Stop, wrong_kind};
 use super::citations::{GEOFFROY_2013A, GEOFFROY_2013B};
 use super::entry::{Body, Entry, Fails, ReadsClock, Room, Shows};
 use super::onto::bring;

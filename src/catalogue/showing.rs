@@ -8,7 +8,7 @@ use super::entry::{Body, Entry, Fails, ReadsClock, Room, Shows};
 use super::onto::{onto_clock, total};
 use crate::base::Fault;
 use crate::language::{Parameter, Signature};
-use crate::value::{Attribution, AxisKind, Cell, Coefficient, Column, Model, Series, Shape, Table, Value};
+use crate::value::{Attribution, AxisKind, Cell, Column, Series, Shape, Table, Value};
 
 static TABLE: Entry = Entry {
     name: "table",
@@ -66,7 +66,7 @@ fn table(call: &Call<'_>) -> Result<Table, Stop> {
             if let (Some(later), Some(earlier)) = (call.span("change")?, call.span("from")?) {
                 contribute(&mut attribution, later, earlier)?;
             }
-            Ok(attribution_table(&attribution))
+            Ok(attribution.table())
         }
         Value::Series(series) => series_table(call, series, &label),
         Value::Bundle(bundle) => {
@@ -82,7 +82,7 @@ fn table(call: &Call<'_>) -> Result<Table, Stop> {
             values.push(sum.values.member(0).to_vec());
             Ok(Table { title: label.to_string(), rows: time_rows(&sum, &values), columns, notes: Vec::new() })
         }
-        Value::Model(model) => Ok(model_table(model)),
+        Value::Model(model) => Ok(model.table()),
         Value::Quantity(quantity) => {
             let mut columns = vec![Column::in_unit("value", &quantity.measure.unit)];
             let mut row = vec![Cell::number(quantity.first())];
@@ -133,68 +133,3 @@ fn series_table(call: &Call<'_>, series: &Series, label: &str) -> Result<Table, 
     }
     Ok(Table { title: label.to_owned(), rows: time_rows(series, &values), columns, notes })
 }
-
-fn model_table(model: &Model) -> Table {
-    let rows = model
-        .parameters()
-        .into_iter()
-        .map(|(name, unit, values)| {
-            vec![Cell::Text(Arc::from(name)), Cell::number(values.first()), Cell::Text(Arc::from(unit))]
-        })
-        .collect();
-    let columns = vec![Column::plain("parameter"), Column::plain("value"), Column::plain("unit")];
-    Table { title: "two-layer model".to_owned(), columns, rows, notes: Vec::new() }
-}
-
-/// The table of an attribution, as it is shown and as JSON gives it.
-pub fn attribution_table(attribution: &Attribution) -> Table {
-    let columns = vec![
-        Column::plain("driver"),
-        Column::plain("coefficient"),
-        Column::plain("standard_error"),
-        Column::plain("t"),
-        Column::plain("low"),
-        Column::plain("high"),
-        Column::in_unit("contribution", &attribution.unit),
-        Column::in_unit("contribution_low", &attribution.unit),
-        Column::in_unit("contribution_high", &attribution.unit),
-        Column::plain("unit"),
-    ];
-    let row = |entry: &Coefficient| {
-        let (contribution, error) = entry.contribution.unwrap_or((f64::NAN, f64::NAN));
-        let reach = attribution.t_quantile * error;
-        vec![
-            Cell::Text(entry.label.clone()),
-            Cell::number(entry.value),
-            Cell::number(entry.standard_error),
-            Cell::number(entry.t),
-            Cell::number(entry.low),
-            Cell::number(entry.high),
-            Cell::number(contribution),
-            Cell::number(contribution - reach),
-            Cell::number(contribution + reach),
-            Cell::Text(Arc::from(entry.unit.to_string())),
-        ]
-    };
-    let rows = attribution.drivers.iter().chain([&attribution.intercept]).map(row).collect();
-    let mut notes = vec![format!(
-        "{}, noise {}; low and high are the 5–95 % interval by Student's t",
-        attribution.method, attribution.noise
-    )];
-    if let (Some((later, earlier)), Some(change)) = (&attribution.windows, attribution.observed_change) {
-        let explained: f64 = attribution.drivers.iter().filter_map(|driver| driver.contribution).map(|(value, _)| value).sum();
-        notes.push(format!(
-            "contribution: to the change from {earlier} to {later}; observed {change:.3} {unit}, explained {explained:.3}, unexplained {:.3}",
-            change - explained,
-            unit = attribution.unit
-        ));
-    } else {
-        notes.push("contributions need two windows: `change:` and `from:`".to_owned());
-    }
-    notes.push(CAUTION.to_owned());
-    Table { title: "attribution".to_owned(), columns, rows, notes }
-}
-
-/// The line beneath every attribution.
-pub const CAUTION: &str =
-    "a regression shows what goes together, under its assumptions; for assessed findings see the assessment reports";

@@ -1,6 +1,7 @@
 use std::sync::Arc;
 
 use super::axis::{Axis, Span};
+use super::table::{Cell, Column, Table};
 use super::unit::Unit;
 
 /// How much each driver explains of a record, by regression, with what is needed to judge it.
@@ -81,8 +82,62 @@ pub struct FitStatistics {
 }
 
 impl Attribution {
+    /// The table of an attribution, as it is shown and as JSON gives it.
+    pub fn table(&self) -> Table {
+            let attribution = self;
+        let columns = vec![
+            Column::plain("driver"),
+            Column::plain("coefficient"),
+            Column::plain("standard_error"),
+            Column::plain("t"),
+            Column::plain("low"),
+            Column::plain("high"),
+            Column::in_unit("contribution", &attribution.unit),
+            Column::in_unit("contribution_low", &attribution.unit),
+            Column::in_unit("contribution_high", &attribution.unit),
+            Column::plain("unit"),
+        ];
+        let row = |entry: &Coefficient| {
+            let (contribution, error) = entry.contribution.unwrap_or((f64::NAN, f64::NAN));
+            let reach = attribution.t_quantile * error;
+            vec![
+                Cell::Text(entry.label.clone()),
+                Cell::number(entry.value),
+                Cell::number(entry.standard_error),
+                Cell::number(entry.t),
+                Cell::number(entry.low),
+                Cell::number(entry.high),
+                Cell::number(contribution),
+                Cell::number(contribution - reach),
+                Cell::number(contribution + reach),
+                Cell::Text(Arc::from(entry.unit.to_string())),
+            ]
+        };
+        let rows = attribution.drivers.iter().chain([&attribution.intercept]).map(row).collect();
+        let mut notes = vec![format!(
+            "{}, noise {}; low and high are the 5–95 % interval by Student's t",
+            attribution.method, attribution.noise
+        )];
+        if let (Some((later, earlier)), Some(change)) = (&attribution.windows, attribution.observed_change) {
+            let explained: f64 = attribution.drivers.iter().filter_map(|driver| driver.contribution).map(|(value, _)| value).sum();
+            notes.push(format!(
+                "contribution: to the change from {earlier} to {later}; observed {change:.3} {unit}, explained {explained:.3}, unexplained {:.3}",
+                change - explained,
+                unit = attribution.unit
+            ));
+        } else {
+            notes.push("contributions need two windows: `change:` and `from:`".to_owned());
+        }
+        notes.push(CAUTION.to_owned());
+        Table { title: "attribution".to_owned(), columns, rows, notes }
+    }
+
     /// How many numbers it holds.
     pub fn numbers(&self) -> usize {
         self.axis.len() * (4 + self.drivers.len()) + self.covariance.len() + 64
     }
 }
+
+/// The line beneath every attribution.
+pub const CAUTION: &str =
+    "a regression shows what goes together, under its assumptions; for assessed findings see the assessment reports";

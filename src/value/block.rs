@@ -1,34 +1,36 @@
+use std::sync::Arc;
+
 /// Members × columns of numbers: row `m` holds what member `m` of the block in hand says.
 ///
 /// A certain value has one row, whatever the block; rows are spread when certain and uncertain values meet.
-/// The nominal path is evaluated like a block of one member. Gaps are NaN.
+/// The nominal path is evaluated like a block of one member. Gaps are NaN. A clone shares the numbers.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Block {
     rows: usize,
     columns: usize,
-    data: Vec<f64>,
+    data: Arc<Vec<f64>>,
 }
 
 impl Block {
     /// Build from rows laid one after the other; what is missing is a gap, what is too much is dropped.
     pub fn new(rows: usize, columns: usize, mut data: Vec<f64>) -> Self {
         data.resize(rows * columns, f64::NAN);
-        Self { rows, columns, data }
+        Self { rows, columns, data: Arc::new(data) }
     }
 
     /// One row, one column.
     pub fn single(value: f64) -> Self {
-        Self { rows: 1, columns: 1, data: vec![value] }
+        Self::new(1, 1, vec![value])
     }
 
     /// One certain row.
     pub fn row(data: Vec<f64>) -> Self {
-        Self { rows: 1, columns: data.len(), data }
+        Self::new(1, data.len(), data)
     }
 
     /// One column, a row for each member.
     pub fn column(data: Vec<f64>) -> Self {
-        Self { rows: data.len(), columns: 1, data }
+        Self::new(data.len(), 1, data)
     }
 
     /// Number of rows: 1, or the members of the block in hand.
@@ -75,8 +77,7 @@ impl Block {
     /// Apply `function` to every number.
     #[must_use]
     pub fn map(&self, function: impl Fn(f64) -> f64) -> Self {
-        let data = self.data.iter().map(|value| function(*value)).collect();
-        Self { rows: self.rows, columns: self.columns, data }
+        Self::new(self.rows, self.columns, self.data.iter().map(|value| function(*value)).collect())
     }
 
     /// Multiply every number; by one, exactly nothing changes.
@@ -112,7 +113,7 @@ impl Block {
                 function(self.member(member), target);
             }
         }
-        Self { rows: self.rows, columns, data }
+        Self::new(self.rows, columns, data)
     }
 
     /// The columns `range`, for all rows.

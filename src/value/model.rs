@@ -1,4 +1,7 @@
+use std::sync::Arc;
+
 use super::block::Block;
+use super::table::{Cell, Column, Table};
 
 /// A response model with a value of each parameter for every member.
 #[derive(Clone, Debug)]
@@ -31,4 +34,17 @@ impl Model {
             ],
         }
     }
+
+    /// Names, nominal values and units as a table.
+    pub fn table(&self) -> Table {
+    let rows = self
+        .parameters()
+        .into_iter()
+        .map(|(name, unit, values)| {
+            vec![Cell::Text(Arc::from(name)), Cell::number(values.first()), Cell::Text(Arc::from(unit))]
+        })
+        .collect();
+    let columns = vec![Column::plain("parameter"), Column::plain("value"), Column::plain("unit")];
+    Table { title: "two-layer model".to_owned(), columns, rows, notes: Vec::new() }
+}
 }

@@ -1,0 +1,252 @@
+use super::number::{plain, with_range};
+use crate::value::{Attribution, Axis, Cell, Era, Measure, Shown, ShownSeries, Spread, Table, Unit};
+
+/// The one line of text under an output: the numbers a person wants first.
+pub fn line(shown: &Shown) -> String {
+    match shown {
+        Shown::Quantity { measure, nominal, spread } => quantity(*nominal, spread.as_deref(), measure),
+        Shown::Instant { era, nominal, spread } => instant(*era, *nominal, spread.as_deref()),
+        Shown::Series(series) => series_line(series),
+        Shown::Bundle { components, total } => {
+            let labels: Vec<&str> = components.iter().map(|(label, _)| &**label).collect();
+            let word = if labels.len() == 1 { "component" } else { "components" };
+            format!("{} {word} ({}); total: {}", labels.len(), labels.join(", "), series_line(total))
+        }
+        Shown::Span(span) => span.to_string(),
+        Shown::Range(range) => format!("{}..{}{}", plain(range.low), plain(range.high), after(&range.unit)),
+        Shown::Clock(clock) => clock.axis.describe(),
+        Shown::Model(model, spreads) => {
+            let parameters: Vec<String> = model
+                .parameters()
+                .into_iter()
+                .zip(spreads.iter().map(Some).chain(std::iter::repeat(None)))
+                .map(|((name, unit, values), spread)| {
+                    let number = ranged(values.first(), spread.and_then(|spread| spread.as_deref()), 0);
+                    format!("{name} {number}{}", if unit == "1" { String::new() } else { format!(" {unit}") })
+                })
+                .collect();
+            format!("two-layer model: {}", parameters.join(", "))
+        }
+        Shown::Attribution(attribution) => attribution_line(attribution),
+        Shown::Table(table) => {
+            let columns: Vec<String> = table.columns.iter().map(heading).collect();
+            let word = if table.rows.len() == 1 { "row" } else { "rows" };
+            format!("{} {word}: {}", table.rows.len(), columns.join(", "))
+        }
+        Shown::Text(text) => text.to_string(),
+        Shown::List(items) => format!("[{}]", items.iter().map(line).collect::<Vec<_>>().join(", ")),
+    }
+}
+
+/// All of an output as text: the line, and the table where there is one.
+pub fn text(shown: &Shown) -> String {
+    match shown {
+        Shown::Attribution(attribution) => table(&attribution.table()) + &diagnostics(attribution),
+        Shown::Table(content) => table(content),
+        Shown::Bundle { components, total } => {
+            let width = components.iter().map(|(label, _)| label.chars().count()).max().unwrap_or(0).max(5);
+            let row = |label: &str, series: &ShownSeries| format!("{label:width$}  {}\n", series_line(series));
+            let rows: String = components.iter().map(|(label, series)| row(label, series)).collect();
+            rows + &row("total", total)
+        }
+        Shown::List(items) => items.iter().map(|item| line(item) + "\n").collect(),
+        Shown::Quantity { .. }
+        | Shown::Instant { .. }
+        | Shown::Series(_)
+        | Shown::Span(_)
+        | Shown::Range(_)
+        | Shown::Clock(_)
+        | Shown::Model(..)
+        | Shown::Text(_) => line(shown) + "\n",
+    }
+}
+
+fn after(unit: &Unit) -> String {
+    if unit.is_bare() { String::new() } else { format!(" {unit}") }
+}
+
+/// A number with its range at one column of the members, where it has one.
+fn ranged(nominal: f64, spread: Option<&Spread>, column: usize) -> String {
+    let range = spread.and_then(|spread| spread.low.get(column).zip(spread.high.get(column)));
+    range.map_or_else(|| plain(nominal), |(low, high)| with_range(nominal, *low, *high))
+}
+
+fn quantity(nominal: f64, spread: Option<&Spread>, measure: &Measure) -> String {
+    let number = ranged(nominal, spread, 0);
+    let unit = after(&measure.unit);
+    match number.split_once(" [") {
+        Some((value, range)) => format!("{value}{unit} [{range}"),
+        None => number + &unit,
+    }
+}
+
+fn instant(era: Era, nominal: f64, spread: Option<&Spread>) -> String {
+    let range = spread.and_then(|spread| spread.low.first().zip(spread.high.first()));
+    match range {
+        None => era.format(nominal),
+        Some((low, high)) => {
+            let (low, high) = (era.of_year(*low), era.of_year(*high));
+            let number = with_range(era.of_year(nominal), low.min(high), low.max(high));
+            match number.split_once(" [") {
+                Some((value, range)) => format!("{value} {} [{range}", era.symbol()),
+                None => format!("{number} {}", era.symbol()),
+            }
+        }
+    }
+}
+
+fn series_line(series: &ShownSeries) -> String {
+    let unit = after(&series.measure.unit);
+    let known: Vec<usize> =
+        series.nominal.iter().enumerate().filter(|(_, value)| !value.is_nan()).map(|(index, _)| index).collect();
+    let axis = series.axis.describe();
+    let (Some(first), Some(last)) = (known.first(), known.last()) else { return format!("{axis}: all gaps") };
+    let at = |index: &usize| series.nominal.get(*index).copied().unwrap_or(f64::NAN);
+    let mut words = match &series.spread {
+        None => format!("{axis}: {} to {}{unit}", plain(at(first)), plain(at(last))),
+        Some(spread) => {
+            let ends = [first, last].map(|index| ranged(at(index), Some(spread), *index));
+            format!("{axis}: {} to {}{unit}", ends[0], ends[1])
+        }
+    };
+    let gaps = series.nominal.len() - known.len();
+    if gaps > 0 {
+        words += &format!("; {gaps} {}", if gaps == 1 { "gap" } else { "gaps" });
+    }
+    words
+}
+
+fn attribution_line(attribution: &Attribution) -> String {
+    let drivers: Vec<String> = attribution
+        .drivers
+        .iter()
+        .map(|driver| {
+            let number = with_range(driver.value, driver.low, driver.high);
+            match number.split_once(" [") {
+                Some((value, range)) => format!("{} {value}{} [{range}", driver.label, after(&driver.unit)),
+                None => format!("{} {number}{}", driver.label, after(&driver.unit)),
+            }
+        })
+        .collect();
+    let statistics = &attribution.statistics;
+    format!("{}; n = {}, R2 = {:.3}", drivers.join(", "), statistics.count, statistics.r_squared)
+}
+
+fn diagnostics(attribution: &Attribution) -> String {
+    let statistics = &attribution.statistics;
+    let times = span_words(&attribution.axis);
+    format!(
+        "  n = {} ({times}), R2 {:.3}, Durbin–Watson {:.2}, residual autocorrelation {:.2}, condition number {:.1}, log-likelihood {:.2}, AIC {:.2}\n",
+        statistics.count,
+        statistics.r_squared,
+        statistics.durbin_watson,
+        statistics.residual_autocorrelation,
+        statistics.condition_number,
+        statistics.log_likelihood,
+        statistics.akaike
+    )
+}
+
+fn span_words(axis: &Axis) -> String {
+    let words = axis.describe();
+    words.split_once(", ").map_or(words.clone(), |(_, span)| span.to_owned())
+}
+
+/// A column's heading with its unit: `contribution (degC)`.
+fn heading(column: &crate::value::Column) -> String {
+    match &column.unit {
+        Some(unit) if unit != "1" => format!("{} ({unit})", column.name),
+        _ => column.name.clone(),
+    }
+}
+
+/// How many rows of a long table are shown at its beginning and at its end.
+const HEAD: usize = 20;
+const TAIL: usize = 5;
+
+/// A table as text: aligned on the decimal point, a long one cut with a count, notes beneath.
+pub fn table(content: &Table) -> String {
+    let rows = content.rows.len();
+    let cut = rows > HEAD + TAIL + 1;
+    let shown: Vec<&Vec<Cell>> = if cut {
+        content.rows.iter().take(HEAD).chain(content.rows.iter().skip(rows - TAIL)).collect()
+    } else {
+        content.rows.iter().collect()
+    };
+    let columns: Vec<Vec<String>> = content
+        .columns
+        .iter()
+        .enumerate()
+        .filter(|(index, _)| content.rows.iter().any(|row| row.get(*index).is_some_and(|cell| *cell != Cell::Empty)))
+        .map(|(index, column)| {
+            let cells: Vec<&Cell> = shown.iter().filter_map(|row| row.get(index)).collect();
+            std::iter::once(heading(column)).chain(aligned(&cells)).collect()
+        })
+        .collect();
+    let widths: Vec<usize> =
+        columns.iter().map(|cells| cells.iter().map(|cell| cell.chars().count()).max().unwrap_or(0)).collect();
+    let mut out = String::new();
+    for line in 0..=shown.len() {
+        let cells: Vec<String> = columns
+            .iter()
+            .zip(&widths)
+            .enumerate()
+            .map(|(number, (cells, width))| {
+                let cell = cells.get(line).map_or("", String::as_str);
+                let padding = " ".repeat(width - cell.chars().count());
+                // Words begin at the left, numbers end at the right.
+                if number == 0 { format!("{cell}{padding}") } else { format!("{padding}{cell}") }
+            })
+            .collect();
+        out += &format!("  {}\n", cells.join("  ").trim_end());
+        if cut && line == HEAD {
+            out += &format!("  … {} rows more …\n", rows - HEAD - TAIL);
+        }
+    }
+    for note in &content.notes {
+        out += &format!("  {note}\n");
+    }
+    out
+}
+
+/// Numbers of one column with as many decimals as the column needs, words as they are.
+fn aligned(cells: &[&Cell]) -> Vec<String> {
+    let texts: Vec<String> = cells
+        .iter()
+        .map(|cell| match cell {
+            Cell::Text(text) => text.to_string(),
+            Cell::Number(value) => compact(*value),
+            Cell::Empty => String::new(),
+        })
+        .collect();
+    let decimals = |text: &str| text.split_once('.').map_or(0, |(_, decimals)| decimals.len());
+    let numbers: Vec<bool> = cells.iter().map(|cell| matches!(cell, Cell::Number(_))).collect();
+    let most = texts
+        .iter()
+        .zip(&numbers)
+        .filter(|(text, number)| **number && !text.contains('e'))
+        .map(|(text, _)| decimals(text))
+        .max()
+        .unwrap_or(0);
+    texts
+        .into_iter()
+        .zip(numbers)
+        .map(|(text, number)| {
+            if !number {
+                return text;
+            }
+            // Spaces stand for missing decimals, so that the points stand in one column.
+            let missing = if text.contains('.') { most - decimals(&text).min(most) } else if most > 0 { most + 1 } else { 0 };
+            text + &" ".repeat(missing)
+        })
+        .collect()
+}
+
+/// Four significant digits for a table; whole numbers whole.
+fn compact(value: f64) -> String {
+    if (value - value.round()).abs() < 1e-9 && value.abs() < 1e7 {
+        return format!("{}", value.round());
+    }
+    let digits = 4 - 1 - value.abs().log10().floor() as i32;
+    if !(0..8).contains(&digits) { plain(value) } else { format!("{value:.*}", digits as usize) }
+}

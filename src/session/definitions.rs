@@ -1,0 +1,135 @@
+use std::collections::{BTreeMap, BTreeSet};
+use std::sync::Arc;
+
+use super::node::Node;
+use super::resolve::{Functions, check_local_name, resolve};
+use crate::base::{Diagnostic, Fault, SourceId, Span};
+use crate::catalogue;
+use crate::language::Expression;
+
+/// The definitions in force, by name.
+#[derive(Default)]
+pub(super) struct Definitions {
+    pub(super) values: BTreeMap<Arc<str>, Definition>,
+    pub(super) functions: BTreeMap<String, Arc<Function>>,
+}
+
+/// A name and the expression it is bound to.
+pub(super) struct Definition {
+    /// The cell it has its home in.
+    pub(super) cell: Arc<str>,
+    /// Other cells that define the name too; the last one run is in force.
+    pub(super) rivals: BTreeSet<Arc<str>>,
+    /// Whether the front end said that its cell is gone.
+    pub(super) deleted: bool,
+    pub(super) name_span: Span,
+    pub(super) expression: Expression,
+    /// The expression with its functions put in, or why that cannot be.
+    pub(super) node: Result<Arc<Node>, Diagnostic>,
+}
+
+/// A function of the user's: an expression with parameters.
+#[derive(Debug)]
+pub(super) struct Function {
+    pub(super) cell: Arc<str>,
+    pub(super) parameters: Vec<String>,
+    pub(super) name_span: Span,
+    pub(super) body: Expression,
+}
+
+impl Functions for Definitions {
+    fn function(&self, name: &str) -> Option<Arc<Function>> {
+        self.functions.get(name).cloned()
+    }
+
+    fn names(&self) -> Vec<String> {
+        self.functions.keys().cloned().collect()
+    }
+}
+
+impl Definitions {
+    /// Whether a function may be defined so.
+    pub(super) fn check_function(
+        name: &str,
+        name_span: Span,
+        parameters: &[(String, Span)],
+    ) -> Result<(), Diagnostic> {
+        if catalogue::find(name).is_some() {
+            return Err(Fault::new("catalogue-name", format!("`{name}` is a function of the language already"))
+                .help("give yours another name; a plain name (without brackets) may be the same")
+                .at(name_span));
+        }
+        for (index, (parameter, span)) in parameters.iter().enumerate() {
+            check_local_name(parameter, *span)?;
+            if parameters.iter().take(index).any(|(other, _)| other == parameter) {
+                return Err(Fault::new("argument-twice", format!("`{parameter}` is a parameter twice")).at(*span));
+            }
+        }
+        Ok(())
+    }
+
+    /// Bind a name; returns the cell that it is taken from, where that is another.
+    pub(super) fn define(
+        &mut self,
+        name: &str,
+        cell: &Arc<str>,
+        name_span: Span,
+        expression: Expression,
+    ) -> Option<Arc<str>> {
+        let mut rivals = BTreeSet::new();
+        let mut from = None;
+        if let Some(old) = self.values.get(name) {
+            rivals.clone_from(&old.rivals);
+            rivals.remove(cell);
+            if old.cell != *cell {
+                rivals.insert(old.cell.clone());
+                from = Some(old.cell.clone());
+            }
+        }
+        let node = resolve(self, Some(name), &expression);
+        let definition = Definition { cell: cell.clone(), rivals, deleted: false, name_span, expression, node };
+        self.values.insert(Arc::from(name), definition);
+        from
+    }
+
+    /// Put functions into every definition again, after a function has changed.
+    pub(super) fn resolve_again(&mut self) {
+        let names: Vec<Arc<str>> = self.values.keys().cloned().collect();
+        for name in names {
+            let node = self.values.get(&name).map(|found| resolve(&*self, Some(&name), &found.expression));
+            if let (Some(definition), Some(node)) = (self.values.get_mut(&name), node) {
+                definition.node = node;
+            }
+        }
+    }
+
+    /// Take the names away whose home is `cell`, but for those in `kept`; what a rival cell defined does not come back
+    /// until that cell is run. Returns the names.
+    pub(super) fn leave_cell(
+        &mut self,
+        cell: &str,
+        kept: &BTreeSet<String>,
+        kept_functions: &BTreeSet<String>,
+    ) -> Vec<String> {
+        let gone: Vec<Arc<str>> = self
+            .values
+            .iter()
+            .filter(|(name, definition)| &*definition.cell == cell && !kept.contains(&***name))
+            .map(|(name, _)| name.clone())
+            .collect();
+        for name in &gone {
+            self.values.remove(name);
+        }
+        for definition in self.values.values_mut() {
+            definition.rivals.remove(cell);
+        }
+        self.functions.retain(|name, function| &*function.cell != cell || kept_functions.contains(name));
+        gone.iter().map(|name| name.to_string()).collect()
+    }
+
+    /// The texts that spans of definitions point into.
+    pub(super) fn sources(&self) -> BTreeSet<SourceId> {
+        let values = self.values.values().map(|definition| definition.name_span.source);
+        values.chain(self.functions.values().map(|function| function.name_span.source)).collect()
+    }
+}

@@ -1,0 +1,48 @@
+use std::sync::Arc;
+
+use sha2::{Digest, Sha256};
+
+use crate::base::Diagnostic;
+use crate::value::{AxisKind, Clock};
+
+/// The number of members where nobody sets it.
+pub(super) const DEFAULT_MEMBERS: u64 = 1000;
+/// The seed where nobody sets it.
+pub(super) const DEFAULT_SEED: u64 = 1;
+
+/// What an evaluation depends on besides the expression.
+#[derive(Clone, Debug)]
+pub(super) struct Environment {
+    pub(super) clock: Option<Arc<Clock>>,
+    /// Tells environments apart: a hash of the clock.
+    pub(super) key: u64,
+    pub(super) members: u64,
+    pub(super) seed: u64,
+    /// Why there is no clock although one is defined.
+    pub(super) clock_problem: Option<Arc<Diagnostic>>,
+}
+
+impl Environment {
+    /// The environment in which settings are evaluated.
+    pub(super) fn empty() -> Self {
+        Self { clock: None, key: 0, members: DEFAULT_MEMBERS, seed: DEFAULT_SEED, clock_problem: None }
+    }
+
+    /// The same with another clock.
+    pub(super) fn with_clock(&self, clock: Arc<Clock>) -> Self {
+        let axis = &clock.axis;
+        let mut hash = Sha256::new();
+        hash.update([u8::from(axis.kind == AxisKind::Steps)]);
+        hash.update((axis.len() as u64).to_le_bytes());
+        hash.update(clock.step_years.to_bits().to_le_bytes());
+        if let Some((start, end)) = axis.bounds() {
+            hash.update(start.to_bits().to_le_bytes());
+            hash.update(end.to_bits().to_le_bytes());
+        }
+        hash.update(axis.era.symbol());
+        let digest: [u8; 32] = hash.finalize().into();
+        let key = digest.iter().take(8).fold(0u64, |key, byte| (key << 8) | u64::from(*byte));
+        // Zero stands for no clock.
+        Self { clock: Some(clock), key: key.max(1), clock_problem: None, ..self.clone() }
+    }
+}

@@ -1,0 +1,665 @@
+//! Shape, fingerprint and value of nodes in an environment; everything a body may ask for.
+
+use std::cell::RefCell;
+use std::collections::{HashMap, HashSet};
+use std::sync::atomic::{AtomicU64, AtomicUsize, Ordering};
+use std::sync::{Arc, Mutex, PoisonError};
+
+use super::definitions::Definitions;
+use super::environment::{DEFAULT_MEMBERS, DEFAULT_SEED, Environment};
+use super::fingerprint::{Fingerprint, Parts};
+use super::graph::Graph;
+use super::inputs::{Inputs, UNREADABLE};
+use super::memo::{Memo, Notes};
+use super::node::{CallNode, Node, NodeKind};
+use super::resolve::{SETTINGS, SIZE_LIMIT};
+use crate::base::{Blame, Cancellation, Diagnostic, Fault, INTERRUPTED, Span};
+use crate::catalogue::{
+    self, Body, Call, Context, Given, InputFile, Path, ReadsClock, Stop, What, check_arguments, nearest,
+};
+use crate::science::draws;
+use crate::value::{Clock, Instant, Quantity, Shape, Spread, TimeSpan, Unit, Value};
+
+/// A value with the notes made on the way to it.
+pub(super) type Evaluated = (Arc<Value>, Notes);
+
+/// The most values that a list may hold in all, lists inside it included.
+const LIST_LIMIT: usize = 10_000;
+
+pub(super) struct Evaluator<'s> {
+    pub(super) definitions: &'s Definitions,
+    pub(super) graph: &'s Graph,
+    pub(super) inputs: &'s Inputs,
+    pub(super) memo: &'s Memo,
+    pub(super) cancellation: &'s Cancellation,
+    /// Counts the bodies that were called.
+    pub(super) evaluations: &'s AtomicU64,
+    pub(super) caches: Caches,
+}
+
+/// What is remembered for the length of one execution, by the place of a node in memory: nodes outlive it.
+#[derive(Default)]
+pub(super) struct Caches {
+    shapes: Mutex<HashMap<(usize, u64), Result<Shape, Stop>>>,
+    prints: Mutex<HashMap<(usize, u64), Fingerprint>>,
+    uncertain: Mutex<HashMap<usize, bool>>,
+    items: Mutex<HashMap<(usize, usize), Arc<Node>>>,
+    expanded: AtomicUsize,
+}
+
+fn lock<T>(mutex: &Mutex<T>) -> std::sync::MutexGuard<'_, T> {
+    mutex.lock().unwrap_or_else(PoisonError::into_inner)
+}
+
+fn address(node: &Arc<Node>) -> usize {
+    Arc::as_ptr(node) as usize
+}
+
+impl Evaluator<'_> {
+    /// The node that a name is bound to, and the environment it is evaluated in.
+    fn definition(
+        &self,
+        name: &Arc<str>,
+        span: Span,
+        environment: &Environment,
+    ) -> Result<(Arc<Node>, Environment), Stop> {
+        if let Some(problem) = self.graph.problems.get(name) {
+            return Err(Stop::Placed(Box::new(problem.clone())));
+        }
+        let setting = SETTINGS.contains(&&**name);
+        let environment = if setting { Environment::empty() } else { environment.clone() };
+        match self.definitions.values.get(name) {
+            Some(definition) => match &definition.node {
+                Ok(node) => Ok((node.clone(), environment)),
+                Err(problem) => Err(Stop::Placed(Box::new(problem.clone()))),
+            },
+            None => match &**name {
+                "members" => Ok((default_setting(DEFAULT_MEMBERS, span), environment)),
+                "seed" => Ok((default_setting(DEFAULT_SEED, span), environment)),
+                _ => Err(Stop::Placed(Box::new(self.not_defined(name).at(span)))),
+            },
+        }
+    }
+
+    fn not_defined(&self, name: &str) -> Fault {
+        let fault = Fault::new("not-defined", format!("`{name}` is not defined yet"));
+        if catalogue::find(name).is_some() || self.definitions.functions.contains_key(name) {
+            return fault.help(format!("`{name}` is a function: a call has brackets, `{name}(…)`"));
+        }
+        let names = self.definitions.values.keys().map(|name| &**name);
+        match nearest(name, names) {
+            Some(near) => fault.help(format!("did you mean `{near}`?")),
+            None => fault.help(format!("define it in this cell or another: `{name} = …`")),
+        }
+    }
+
+    /// Whether a node has members.
+    pub(super) fn is_uncertain(&self, node: &Arc<Node>) -> bool {
+        if let Some(known) = lock(&self.caches.uncertain).get(&address(node)) {
+            return *known;
+        }
+        let result = match &node.kind {
+            NodeKind::Constant(_) | NodeKind::Variable(_) => false,
+            NodeKind::Reference(name) => match self.definition(name, node.span, &Environment::empty()) {
+                Ok((target, _)) => self.is_uncertain(&target),
+                Err(_) => false,
+            },
+            NodeKind::Call(call) => match call.entry.body {
+                Body::AcrossMembers(_) => false,
+                Body::PerMember(_) => call.entry.random || call.slots.iter().any(|slot| self.is_uncertain(slot)),
+            },
+            NodeKind::List(_) | NodeKind::Item { .. } | NodeKind::ForEach { .. } => {
+                node.children().into_iter().any(|child| self.is_uncertain(child))
+            }
+        };
+        lock(&self.caches.uncertain).insert(address(node), result);
+        result
+    }
+
+    /// Kind and unit of a node, checked all the way down.
+    pub(super) fn shape(&self, node: &Arc<Node>, environment: &Environment) -> Result<Shape, Stop> {
+        let key = (address(node), environment.key);
+        if let Some(known) = lock(&self.caches.shapes).get(&key) {
+            return known.clone();
+        }
+        let result = self.find_shape(node, environment);
+        lock(&self.caches.shapes).insert(key, result.clone());
+        result
+    }
+
+    fn find_shape(&self, node: &Arc<Node>, environment: &Environment) -> Result<Shape, Stop> {
+        match &node.kind {
+            NodeKind::Constant(value) => Ok(value.shape()),
+            NodeKind::List(items) => {
+                let shapes = items.iter().map(|item| self.shape(item, environment)).collect::<Result<Vec<_>, _>>()?;
+                limited(Shape::List(shapes), node.span)
+            }
+            NodeKind::Reference(name) => {
+                let (target, environment) = self.definition(name, node.span, environment)?;
+                self.shape(&target, &environment)
+            }
+            NodeKind::Item { list, index } => match self.shape(list, environment)? {
+                Shape::List(items) => items.get(*index).cloned().ok_or_else(|| internal("an item is missing").into()),
+                _ => Err(internal("an item of no list").into()),
+            },
+            NodeKind::ForEach { .. } => {
+                let items = self.items(node, environment)?;
+                let shapes = items.iter().map(|item| self.shape(item, environment)).collect::<Result<Vec<_>, _>>()?;
+                limited(Shape::List(shapes), node.span)
+            }
+            NodeKind::Variable(_) => Err(internal("a loop variable stands outside its loop").into()),
+            NodeKind::Call(call) => {
+                let context = NodeContext::new(self, node, call, environment, Path::Nominal);
+                let view = Call::new(call.entry.signature.parameters, &call.given, &context);
+                check_arguments(&view)
+                    .and_then(|()| (call.entry.shape)(&view))
+                    .map_err(|stop| placed(stop, node, call))
+            }
+        }
+    }
+
+    /// The body of a `for` with each item put in.
+    fn items(&self, node: &Arc<Node>, environment: &Environment) -> Result<Vec<Arc<Node>>, Stop> {
+        let NodeKind::ForEach { body, variable, list } = &node.kind else { return Ok(Vec::new()) };
+        let shape = self.shape(list, environment)?;
+        let Shape::List(shapes) = &shape else {
+            return Err(Fault::new("wrong-argument", format!("`for` goes over a list, not over {}", shape.describe()))
+                .at(list.span)
+                .into_stop());
+        };
+        let whole = self.caches.expanded.load(Ordering::Relaxed) + shapes.len() * body.size;
+        if whole > 5 * SIZE_LIMIT {
+            return Err(Fault::new("too-large", "the loops of this cell grow too large")
+                .help("go over fewer items, or give parts names of their own")
+                .at(node.span)
+                .into_stop());
+        }
+        let made = (0..shapes.len()).map(|index| {
+            let key = (address(node), index);
+            if let Some(known) = lock(&self.caches.items).get(&key) {
+                return known.clone();
+            }
+            self.caches.expanded.fetch_add(body.size, Ordering::Relaxed);
+            let item = match &list.kind {
+                NodeKind::List(items) => items.get(index).cloned(),
+                _ => None,
+            };
+            let item = item.unwrap_or_else(|| {
+                let label = Arc::from(format!("{}[{index}]", list.label));
+                Node::new(NodeKind::Item { list: list.clone(), index }, list.span, label)
+            });
+            let made = body.with_item(*variable, &item);
+            lock(&self.caches.items).insert(key, made.clone());
+            made
+        });
+        Ok(made.collect())
+    }
+
+    /// The fingerprint of a node in an environment.
+    pub(super) fn fingerprint(&self, node: &Arc<Node>, environment: &Environment) -> Fingerprint {
+        let key = (address(node), environment.key);
+        if let Some(known) = lock(&self.caches.prints).get(&key) {
+            return *known;
+        }
+        let print = self.find_fingerprint(node, environment);
+        lock(&self.caches.prints).insert(key, print);
+        print
+    }
+
+    fn find_fingerprint(&self, node: &Arc<Node>, environment: &Environment) -> Fingerprint {
+        match &node.kind {
+            NodeKind::Constant(value) => {
+                let mut parts = Parts::new("constant");
+                constant(&mut parts, value);
+                parts.finish()
+            }
+            NodeKind::List(items) => self.list_fingerprint(items, environment),
+            NodeKind::ForEach { .. } => match self.items(node, environment) {
+                Ok(items) => self.list_fingerprint(&items, environment),
+                Err(_) => Parts::new("broken loop").finish(),
+            },
+            NodeKind::Reference(name) => match self.definition(name, node.span, environment) {
+                Ok((target, environment)) => self.fingerprint(&target, &environment),
+                Err(_) => {
+                    let mut parts = Parts::new("missing");
+                    parts.text(name);
+                    parts.finish()
+                }
+            },
+            NodeKind::Item { list, index } => {
+                let mut parts = Parts::new("item");
+                parts.print(self.fingerprint(list, environment));
+                parts.number(*index as u64);
+                parts.finish()
+            }
+            NodeKind::Variable(number) => {
+                let mut parts = Parts::new("variable");
+                parts.number(u64::from(*number));
+                parts.finish()
+            }
+            NodeKind::Call(call) => {
+                let mut parts = Parts::new("call");
+                parts.text(call.entry.name);
+                parts.number(u64::from(call.entry.revision));
+                self.given_parts(&mut parts, &call.given, call, environment);
+                if let Some(variable) = call.variable {
+                    parts.bytes(&variable);
+                    parts.number(environment.members);
+                    parts.number(environment.seed);
+                }
+                if self.reads_clock(call, environment) {
+                    parts.number(environment.key);
+                }
+                if let Some(parameter) = call.entry.reads_file {
+                    let context = NodeContext::new(self, node, call, environment, Path::Nominal);
+                    let view = Call::new(call.entry.signature.parameters, &call.given, &context);
+                    if let Ok(Some(path)) = view.text(parameter) {
+                        parts.text(&self.inputs.file(&path).map_or_else(|fault| fault.message, |file| file.sha256.clone()));
+                    }
+                }
+                parts.finish()
+            }
+        }
+    }
+
+    fn list_fingerprint(&self, items: &[Arc<Node>], environment: &Environment) -> Fingerprint {
+        let mut parts = Parts::new("list");
+        for item in items {
+            parts.print(self.fingerprint(item, environment));
+        }
+        parts.finish()
+    }
+
+    fn given_parts(&self, parts: &mut Parts, given: &[Given], call: &CallNode, environment: &Environment) {
+        parts.number(given.len() as u64);
+        // The order of named arguments is no part of what a call means.
+        let mut order: Vec<&Given> = given.iter().collect();
+        order.sort_by_key(|given| given.parameter);
+        for given in order {
+            parts.number(given.parameter as u64);
+            parts.text(given.label.as_deref().unwrap_or(""));
+            match &given.what {
+                What::Value(slot) => {
+                    let Some(slot) = call.slots.get(*slot) else { continue };
+                    parts.print(self.fingerprint(slot, environment));
+                    if call.entry.labels {
+                        parts.text(&slot.label);
+                        for label in self.item_labels(slot, environment) {
+                            parts.text(&label);
+                        }
+                    }
+                }
+                What::Choice { choice, given } => {
+                    parts.number(*choice as u64);
+                    self.given_parts(parts, given, call, environment);
+                }
+                What::Groups(groups) => {
+                    for group in groups {
+                        parts.number(group.len() as u64);
+                        group.iter().for_each(|label| parts.text(label));
+                    }
+                }
+            }
+        }
+    }
+
+    /// What the items of a list are called; those of a list that goes by a name, as they are called where it is
+    /// defined.
+    fn item_labels(&self, node: &Arc<Node>, environment: &Environment) -> Vec<Arc<str>> {
+        let mut current = node.clone();
+        loop {
+            let next = match &current.kind {
+                NodeKind::Reference(name) => self.definition(name, current.span, environment),
+                NodeKind::List(items) => return items.iter().map(|item| item.label.clone()).collect(),
+                _ => return Vec::new(),
+            };
+            match next {
+                Ok((target, _)) => current = target,
+                Err(_) => return Vec::new(),
+            }
+        }
+    }
+
+    fn reads_clock(&self, call: &CallNode, environment: &Environment) -> bool {
+        match call.entry.reads_clock {
+            ReadsClock::Always => true,
+            ReadsClock::Never => false,
+            ReadsClock::WithSeries => {
+                call.slots.iter().any(|slot| self.shape(slot, environment).is_ok_and(|shape| holds_series(&shape)))
+            }
+        }
+    }
+
+    /// The value of a node for the members in hand.
+    pub(super) fn value(
+        &self,
+        node: &Arc<Node>,
+        environment: &Environment,
+        path: Path,
+    ) -> Result<Evaluated, Stop> {
+        match &node.kind {
+            NodeKind::Constant(value) => Ok((value.clone(), Notes::default())),
+            NodeKind::List(items) => self.list_value(items, environment, path),
+            NodeKind::ForEach { .. } => {
+                let items = self.items(node, environment)?;
+                self.list_value(&items, environment, path)
+            }
+            NodeKind::Reference(name) => {
+                let (target, environment) = self.definition(name, node.span, environment)?;
+                self.value(&target, &environment, path)
+            }
+            NodeKind::Item { list, index } => {
+                let (value, notes) = self.value(list, environment, path)?;
+                match value.as_ref() {
+                    Value::List(items) => {
+                        let item = items.get(*index).cloned().ok_or_else(|| internal("an item is missing"))?;
+                        Ok((item, notes))
+                    }
+                    _ => Err(internal("an item of no list").into()),
+                }
+            }
+            NodeKind::Variable(_) => Err(internal("a loop variable stands outside its loop").into()),
+            NodeKind::Call(call) => self.call_value(node, call, environment, path),
+        }
+    }
+
+    fn list_value(&self, items: &[Arc<Node>], environment: &Environment, path: Path) -> Result<Evaluated, Stop> {
+        let mut values = Vec::with_capacity(items.len());
+        let mut notes = Vec::new();
+        for item in items {
+            let (value, more) = self.value(item, environment, path)?;
+            values.push(value);
+            add_notes(&mut notes, &more);
+        }
+        Ok((Arc::new(Value::List(values)), Arc::new(notes)))
+    }
+
+    fn call_value(
+        &self,
+        node: &Arc<Node>,
+        call: &CallNode,
+        environment: &Environment,
+        path: Path,
+    ) -> Result<Evaluated, Stop> {
+        // What is certain is the same for all members, and is computed once.
+        let path = if self.is_uncertain(node) { path } else { Path::Nominal };
+        let print = self.fingerprint(node, environment);
+        if let Some(remembered) = self.memo.get(print, path) {
+            return remembered.map_err(|fault| placed(Stop::Fault(fault), node, call));
+        }
+        self.cancellation.check()?;
+        self.shape(node, environment)?;
+        if let Some(problem) = &environment.clock_problem
+            && self.reads_clock(call, environment)
+        {
+            return Err(Stop::Placed(Box::new(Diagnostic::clone(problem))));
+        }
+        let context = NodeContext::new(self, node, call, environment, path);
+        let view = Call::new(call.entry.signature.parameters, &call.given, &context);
+        self.evaluations.fetch_add(1, Ordering::Relaxed);
+        let result = match call.entry.body {
+            Body::PerMember(body) | Body::AcrossMembers(body) => body(&view),
+        };
+        let notes = Arc::new(context.notes.into_inner());
+        match result {
+            Ok(value) => {
+                let evaluated = (Arc::new(value), notes);
+                self.memo.insert(print, path, Ok(evaluated.clone()));
+                Ok(evaluated)
+            }
+            Err(stop) => {
+                if let Stop::Fault(fault) = &stop
+                    && fault.code != INTERRUPTED
+                    && fault.code != UNREADABLE
+                {
+                    self.memo.insert(print, path, Err(fault.clone()));
+                }
+                Err(placed(stop, node, call))
+            }
+        }
+    }
+}
+
+fn default_setting(value: u64, span: Span) -> Arc<Node> {
+    let value = Value::Quantity(Quantity::certain(value as f64, Unit::number()));
+    Node::new(NodeKind::Constant(Arc::new(value)), span, Arc::from("default"))
+}
+
+pub(super) fn internal(message: &str) -> Fault {
+    Fault::new("internal", format!("{message}: this is a mistake of the program, please report it"))
+}
+
+trait IntoStop {
+    fn into_stop(self) -> Stop;
+}
+
+impl IntoStop for Diagnostic {
+    fn into_stop(self) -> Stop {
+        Stop::Placed(Box::new(self))
+    }
+}
+
+/// Give a fault of a call its place: the argument that it blames, else the call.
+fn placed(stop: Stop, node: &Node, call: &CallNode) -> Stop {
+    let fault = match stop {
+        Stop::Placed(_) => return stop,
+        Stop::Fault(fault) => fault,
+    };
+    let parameters = call.entry.signature.parameters;
+    let slot_of = |given: &Given| match &given.what {
+        What::Value(slot) => call.slots.get(*slot),
+        What::Choice { .. } | What::Groups(_) => None,
+    };
+    let place = match &fault.blame {
+        Blame::Call => None,
+        Blame::Argument(name) => call
+            .given
+            .iter()
+            .find(|given| parameters.get(given.parameter).is_some_and(|parameter| parameter.name == *name))
+            .and_then(slot_of),
+        Blame::Item(number) => {
+            let repeated = call.given.iter().filter(|given| {
+                parameters.get(given.parameter).is_some_and(|parameter| {
+                    matches!(parameter.presence, crate::language::Presence::Repeated { .. })
+                })
+            });
+            repeated.clone().nth(*number).and_then(slot_of)
+        }
+    };
+    let span = place.map_or(node.span, |argument| argument.span);
+    Stop::Placed(Box::new(fault.at(span)))
+}
+
+fn limited(shape: Shape, span: Span) -> Result<Shape, Stop> {
+    fn leaves(shape: &Shape) -> usize {
+        match shape {
+            Shape::List(items) => items.iter().map(leaves).sum(),
+            Shape::Bundle(parts) => parts.len(),
+            _ => 1,
+        }
+    }
+    // Lists that hold lists double with every name; the cap keeps the shapes themselves small too.
+    if leaves(&shape) > LIST_LIMIT {
+        return Err(Fault::new("too-large", format!("this list holds more than {LIST_LIMIT} values"))
+            .help("load long series from a file")
+            .at(span)
+            .into_stop());
+    }
+    Ok(shape)
+}
+
+fn holds_series(shape: &Shape) -> bool {
+    match shape {
+        Shape::Series(_) | Shape::Bundle(_) => true,
+        Shape::List(items) => items.iter().any(holds_series),
+        Shape::Quantity(_)
+        | Shape::Instant(_)
+        | Shape::Span
+        | Shape::Range(_)
+        | Shape::Clock
+        | Shape::Model
+        | Shape::Attribution
+        | Shape::Table
+        | Shape::Text => false,
+    }
+}
+
+/// The bytes of a literal.
+fn constant(parts: &mut Parts, value: &Value) {
+    parts.text(value.kind());
+    match value {
+        Value::Quantity(Quantity { values, measure }) => {
+            values.data().iter().for_each(|number| parts.float(*number));
+            parts.text(&measure.unit.to_string());
+        }
+        Value::Instant(Instant { years, era, width_years }) => {
+            years.data().iter().for_each(|number| parts.float(*number));
+            parts.text(era.symbol());
+            parts.float(*width_years);
+        }
+        Value::Text(text) => parts.text(text),
+        Value::Span(TimeSpan { start, end, .. }) => {
+            parts.float(*start);
+            parts.float(*end);
+        }
+        Value::Range(_)
+        | Value::Clock(_)
+        | Value::Series(_)
+        | Value::Bundle(_)
+        | Value::Model(_)
+        | Value::Attribution(_)
+        | Value::Table(_)
+        | Value::List(_) => parts.text("no literal"),
+    }
+}
+
+/// Add notes that are not there yet.
+pub(super) fn add_notes(notes: &mut Vec<Arc<str>>, more: &[Arc<str>]) {
+    let mut known: HashSet<Arc<str>> = notes.iter().cloned().collect();
+    for note in more {
+        if known.insert(note.clone()) {
+            notes.push(note.clone());
+        }
+    }
+}
+
+/// What the body of one node sees of the session.
+pub(super) struct NodeContext<'e> {
+    evaluator: &'e Evaluator<'e>,
+    node: &'e Arc<Node>,
+    call: Option<&'e CallNode>,
+    environment: &'e Environment,
+    path: Path,
+    pub(super) notes: RefCell<Vec<Arc<str>>>,
+}
+
+impl<'e> NodeContext<'e> {
+    pub(super) fn new(
+        evaluator: &'e Evaluator<'e>,
+        node: &'e Arc<Node>,
+        call: &'e CallNode,
+        environment: &'e Environment,
+        path: Path,
+    ) -> Self {
+        Self { evaluator, node, call: Some(call), environment, path, notes: RefCell::default() }
+    }
+
+    /// The context in which a finished value is shown.
+    pub(super) fn showing(
+        evaluator: &'e Evaluator<'e>,
+        node: &'e Arc<Node>,
+        environment: &'e Environment,
+        path: Path,
+    ) -> Self {
+        Self { evaluator, node, call: None, environment, path, notes: RefCell::default() }
+    }
+
+    fn slot(&self, slot: usize) -> Result<&'e Arc<Node>, Stop> {
+        self.call.and_then(|call| call.slots.get(slot)).ok_or_else(|| internal("an argument is missing").into())
+    }
+
+    fn take(&self, (value, notes): Evaluated) -> Arc<Value> {
+        add_notes(&mut self.notes.borrow_mut(), &notes);
+        value
+    }
+}
+
+impl Context for NodeContext<'_> {
+    fn shape(&self, slot: usize) -> Result<Shape, Stop> {
+        self.evaluator.shape(self.slot(slot)?, self.environment)
+    }
+
+    fn value(&self, slot: usize) -> Result<Arc<Value>, Stop> {
+        self.evaluator.value(self.slot(slot)?, self.environment, self.path).map(|evaluated| self.take(evaluated))
+    }
+
+    fn value_under(&self, slot: usize, clock: Arc<Clock>) -> Result<Arc<Value>, Stop> {
+        let environment = self.environment.with_clock(clock);
+        let node = self.slot(slot)?;
+        self.evaluator.shape(node, &environment)?;
+        self.evaluator.value(node, &environment, self.path).map(|evaluated| self.take(evaluated))
+    }
+
+    fn own_value(&self) -> Result<Arc<Value>, Stop> {
+        let call = self.call.ok_or_else(|| internal("no call"))?;
+        // The shape is being asked for, so the body must not ask for it again.
+        let print = self.evaluator.fingerprint(self.node, self.environment);
+        if let Some(remembered) = self.evaluator.memo.get(print, Path::Nominal) {
+            return Ok(remembered?.0);
+        }
+        let view = Call::new(call.entry.signature.parameters, &call.given, self);
+        self.evaluator.evaluations.fetch_add(1, Ordering::Relaxed);
+        let Body::PerMember(body) = call.entry.body else { return Err(internal("no value of its own").into()) };
+        let value = Arc::new(body(&view)?);
+        let notes = Arc::new(self.notes.borrow().clone());
+        if !self.evaluator.is_uncertain(self.node) {
+            self.evaluator.memo.insert(print, Path::Nominal, Ok((value.clone(), notes)));
+        }
+        Ok(value)
+    }
+
+    fn spread(&self, slot: usize) -> Result<Option<Arc<Spread>>, Stop> {
+        self.evaluator.spread_of(self.slot(slot)?, self.environment)
+    }
+
+    fn is_uncertain(&self, slot: usize) -> bool {
+        self.slot(slot).is_ok_and(|node| self.evaluator.is_uncertain(node))
+    }
+
+    fn label(&self, slot: usize) -> Arc<str> {
+        self.slot(slot).map_or_else(|_| Arc::from("it"), |node| node.label.clone())
+    }
+
+    fn item_labels(&self, slot: usize) -> Vec<Arc<str>> {
+        self.slot(slot).map_or_else(|_| Vec::new(), |node| self.evaluator.item_labels(node, self.environment))
+    }
+
+    fn clock(&self) -> Option<Arc<Clock>> {
+        self.environment.clock.clone()
+    }
+
+    fn path(&self) -> Path {
+        self.path
+    }
+
+    fn standard_normals(&self) -> Vec<f64> {
+        let (Path::Block { first, count }, Some(variable)) = (self.path, self.call.and_then(|call| call.variable)) else {
+            return vec![0.0];
+        };
+        let mut numbers = vec![0.0; count];
+        draws::normals(self.environment.seed, &variable, first, &mut numbers);
+        numbers
+    }
+
+    fn file(&self, path: &str) -> Result<Arc<InputFile>, Fault> {
+        self.evaluator.inputs.file(path)
+    }
+
+    fn note(&self, text: String) {
+        add_notes(&mut self.notes.borrow_mut(), &[Arc::from(text)]);
+    }
+
+    fn cancellation(&self) -> &Cancellation {
+        self.evaluator.cancellation
+    }
+}

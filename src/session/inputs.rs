@@ -1,0 +1,127 @@
+//! Input files: read only below the notebook's folder, hashed as read, looked at again at each execution.
+
+use std::collections::BTreeMap;
+use std::path::{Component, Path, PathBuf};
+use std::sync::{Arc, Mutex, PoisonError};
+use std::time::SystemTime;
+
+use sha2::{Digest, Sha256};
+
+use crate::base::Fault;
+use crate::catalogue::{InputFile, nearest};
+
+/// The largest file that is read where nobody raises the limit.
+pub(super) const FILE_LIMIT: u64 = 256 * 1024 * 1024;
+
+pub(super) struct Inputs {
+    folder: PathBuf,
+    limit: u64,
+    seen: Mutex<BTreeMap<String, Seen>>,
+}
+
+#[derive(Clone)]
+struct Seen {
+    modified: Option<SystemTime>,
+    length: u64,
+    /// Whether it was looked at during this execution: within one, a file is read once.
+    fresh: bool,
+    file: Arc<InputFile>,
+}
+
+impl Inputs {
+    pub(super) fn new(folder: PathBuf, limit: u64) -> Self {
+        Self { folder, limit, seen: Mutex::default() }
+    }
+
+    /// Look at every file again when it is next asked for.
+    pub(super) fn look_again(&self) {
+        for seen in self.seen.lock().unwrap_or_else(PoisonError::into_inner).values_mut() {
+            seen.fresh = false;
+        }
+    }
+
+    /// Every file that was read, with its hash.
+    pub(super) fn read(&self) -> Vec<(String, String)> {
+        let seen = self.seen.lock().unwrap_or_else(PoisonError::into_inner);
+        seen.iter().map(|(path, seen)| (path.clone(), seen.file.sha256.clone())).collect()
+    }
+
+    pub(super) fn file(&self, path: &str) -> Result<Arc<InputFile>, Fault> {
+        let mut seen = self.seen.lock().unwrap_or_else(PoisonError::into_inner);
+        if let Some(found) = seen.get(path).filter(|found| found.fresh) {
+            return Ok(found.file.clone());
+        }
+        let place = self.place(path)?;
+        let metadata = place.metadata().map_err(|error| unreadable(path, &error))?;
+        if !metadata.is_file() {
+            return Err(Fault::new("file-kind", format!("\"{path}\" is no regular file")).help("name a file, not a folder or a device"));
+        }
+        if metadata.len() > self.limit {
+            let size = metadata.len() / (1024 * 1024);
+            return Err(Fault::new("file-size", format!("\"{path}\" has {size} MiB; the most is {} MiB", self.limit / (1024 * 1024)))
+                .help("raise the limit with `--file-limit`, or take the columns that are needed"));
+        }
+        let modified = metadata.modified().ok();
+        if let Some(found) = seen.get_mut(path)
+            && found.modified.is_some()
+            && found.modified == modified
+            && found.length == metadata.len()
+        {
+            found.fresh = true;
+            return Ok(found.file.clone());
+        }
+        let bytes = std::fs::read(&place).map_err(|error| unreadable(path, &error))?;
+        let digest: [u8; 32] = Sha256::digest(&bytes).into();
+        let sha256 = digest.iter().map(|byte| format!("{byte:02x}")).collect();
+        let file = Arc::new(InputFile { path: path.to_owned(), bytes, sha256 });
+        seen.insert(path.to_owned(), Seen { modified, length: metadata.len(), fresh: true, file: file.clone() });
+        Ok(file)
+    }
+
+    /// Where a path leads, if it stays below the folder, links included.
+    fn place(&self, path: &str) -> Result<PathBuf, Fault> {
+        let outside = || {
+            Fault::new("file-outside", format!("\"{path}\" lies outside the notebook's folder"))
+                .help("a notebook reads only its own folder and those below: copy the file there")
+        };
+        let relative = Path::new(path);
+        let plain = relative.components().all(|part| matches!(part, Component::Normal(_) | Component::CurDir));
+        if !plain {
+            return Err(outside());
+        }
+        let whole = self.folder.join(relative);
+        let folder = self.folder.canonicalize().map_err(|error| unreadable(path, &error))?;
+        let real = match whole.canonicalize() {
+            Ok(real) => real,
+            Err(error) if error.kind() == std::io::ErrorKind::NotFound => return Err(self.missing(path, &whole)),
+            Err(error) => return Err(unreadable(path, &error)),
+        };
+        if real.starts_with(&folder) { Ok(real) } else { Err(outside()) }
+    }
+
+    fn missing(&self, path: &str, whole: &Path) -> Fault {
+        let fault = Fault::new("file-missing", format!("there is no file \"{path}\""));
+        let (Some(parent), Some(name)) = (whole.parent(), whole.file_name().and_then(|name| name.to_str())) else {
+            return fault;
+        };
+        let Ok(entries) = parent.read_dir() else {
+            return fault.help("its folder does not exist either: paths begin at the notebook's folder");
+        };
+        let mut names: Vec<String> = entries.flatten().filter_map(|entry| entry.file_name().into_string().ok()).collect();
+        names.sort();
+        match nearest(name, names.iter().map(String::as_str)) {
+            Some(near) => {
+                let near = Path::new(path).with_file_name(near);
+                fault.help(format!("did you mean \"{}\"?", near.display()))
+            }
+            None => fault.help("paths begin at the notebook's folder"),
+        }
+    }
+}
+
+/// The code of faults that the next look may not find any more; they are never remembered.
+pub(super) const UNREADABLE: &str = "file-unreadable";
+
+fn unreadable(path: &str, error: &std::io::Error) -> Fault {
+    Fault::new(UNREADABLE, format!("\"{path}\" cannot be read: {error}"))
+}

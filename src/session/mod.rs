@@ -1,0 +1,20 @@
+//! Definitions in force, their evaluation, and what of the shown results has moved.
+//!
+//! A cell goes through `resolve` (syntax to [`node::Node`]s, random variables named), `graph` (circles),
+//! `evaluate` (shape, fingerprint, value), `memo` (values remembered by fingerprint) and `inputs` (files).
+
+mod cell;
+mod definitions;
+mod environment;
+mod evaluate;
+mod fingerprint;
+mod graph;
+mod inputs;
+mod memo;
+mod node;
+mod resolve;
+mod settings;
+mod show;
+
+pub use cell::{CellReply, Output, Session};
+pub use fingerprint::Fingerprint;

@@ -1,0 +1,228 @@
+//! Results as they are shown: the nominal path beside the members' medians and ranges.
+
+use std::sync::Arc;
+
+use rayon::prelude::*;
+
+use super::environment::Environment;
+use super::evaluate::{Evaluator, NodeContext, add_notes, internal};
+use super::memo::Notes;
+use super::node::Node;
+use crate::base::Fault;
+use crate::catalogue::{Context, Path, Stop, onto_clock, total};
+use crate::science::reduce;
+use crate::value::{Block, Bundle, Component, Content, Shown, ShownSeries, Series, Spread, Value};
+
+/// Members are computed in blocks of this many, folded in order: the same bits for any number of threads.
+const BLOCK: u64 = 1024;
+
+/// The most members that a session may have.
+pub(super) const MEMBERS_LIMIT: u64 = 10_000_000;
+
+/// The most bytes that the members of one shown result may take.
+const BYTES_LIMIT: f64 = 2e9;
+
+const PROBABILITIES: [f64; 3] = [0.05, 0.5, 0.95];
+
+impl Evaluator<'_> {
+    /// A node's result as it is shown, with the notes made on the way.
+    pub(super) fn shown(&self, node: &Arc<Node>, environment: &Environment) -> Result<(Shown, Notes), Stop> {
+        let (nominal, notes) = self.value(node, environment, Path::Nominal)?;
+        let context = NodeContext::showing(self, node, environment, Path::Nominal);
+        add_notes(&mut context.notes.borrow_mut(), &notes);
+        let ready = ready(&context, &nominal)?;
+        let members = self.members(node, environment, &ready)?;
+        let shown = shown(&ready, &members.iter().map(AsRef::as_ref).collect::<Vec<_>>())?;
+        Ok((shown, Arc::new(context.notes.into_inner())))
+    }
+
+    /// Medians and ranges of a quantity, instant, series, or a bundle's sum; none where it is certain.
+    pub(super) fn spread_of(
+        &self,
+        node: &Arc<Node>,
+        environment: &Environment,
+    ) -> Result<Option<Arc<Spread>>, Stop> {
+        match self.shown(node, environment)?.0 {
+            Shown::Quantity { spread, .. } | Shown::Instant { spread, .. } => Ok(spread),
+            Shown::Series(series) => Ok(series.spread),
+            Shown::Bundle { total, .. } => Ok(total.spread),
+            _ => Ok(None),
+        }
+    }
+
+    /// The value for every block of members, ready to be shown; empty where it is certain.
+    fn members(
+        &self,
+        node: &Arc<Node>,
+        environment: &Environment,
+        nominal: &Value,
+    ) -> Result<Vec<Arc<Value>>, Stop> {
+        if !self.is_uncertain(node) {
+            return Ok(Vec::new());
+        }
+        let bytes = nominal.bytes() as f64 * environment.members as f64;
+        if bytes > BYTES_LIMIT {
+            return Err(Fault::new(
+                "too-large",
+                format!("{} members of this would take {:.1} GB", environment.members, bytes / 1e9),
+            )
+            .help("take fewer `members`, or a clock with fewer steps")
+            .at(node.span)
+            .into());
+        }
+        let blocks: Vec<Path> = (0..environment.members.div_ceil(BLOCK))
+            .map(|block| {
+                let first = block * BLOCK;
+                Path::Block { first, count: BLOCK.min(environment.members - first) as usize }
+            })
+            .collect();
+        blocks
+            .into_par_iter()
+            .map(|path| {
+                let (value, _) = self.value(node, environment, path)?;
+                let context = NodeContext::showing(self, node, environment, path);
+                Ok(Arc::new(ready(&context, &value)?))
+            })
+            .collect()
+    }
+}
+
+impl From<crate::base::Diagnostic> for Stop {
+    fn from(diagnostic: crate::base::Diagnostic) -> Self {
+        Stop::Placed(Box::new(diagnostic))
+    }
+}
+
+/// A value ready to be shown: the components of a bundle on the clock, with their sum as the last one.
+fn ready(context: &dyn Context, value: &Value) -> Result<Value, Stop> {
+    match value {
+        Value::Bundle(bundle) => {
+            let sum = total(context, bundle)?;
+            let mut components = Vec::with_capacity(bundle.components.len() + 1);
+            for part in &bundle.components {
+                let series = match &part.content {
+                    Content::Series(series) => onto_clock(context, series, &part.label)?,
+                    Content::Bundle(inner) => total(context, inner)?,
+                };
+                components.push(Component { label: part.label.clone(), content: Content::Series(series) });
+            }
+            components.push(Component { label: Arc::from("total"), content: Content::Series(sum) });
+            Ok(Value::Bundle(Bundle { components }))
+        }
+        Value::List(items) => {
+            let items = items.iter().map(|item| Ok(Arc::new(ready(context, item)?))).collect::<Result<_, Stop>>()?;
+            Ok(Value::List(items))
+        }
+        other => Ok(other.clone()),
+    }
+}
+
+fn shown(nominal: &Value, members: &[&Value]) -> Result<Shown, Stop> {
+    Ok(match nominal {
+        Value::Quantity(quantity) => {
+            let blocks = blocks(members, &|value| match value {
+                Value::Quantity(quantity) => Some(&quantity.values),
+                _ => None,
+            });
+            Shown::Quantity { measure: quantity.measure.clone(), nominal: quantity.first(), spread: spread(&blocks) }
+        }
+        Value::Instant(instant) => {
+            let blocks = blocks(members, &|value| if let Value::Instant(instant) = value { Some(&instant.years) } else { None });
+            Shown::Instant { era: instant.era, nominal: instant.year(), spread: spread(&blocks) }
+        }
+        Value::Series(series) => {
+            let blocks = blocks(members, &|value| if let Value::Series(series) = value { Some(&series.values) } else { None });
+            Shown::Series(shown_series(series, &blocks))
+        }
+        Value::Bundle(bundle) => {
+            let mut components = Vec::with_capacity(bundle.components.len());
+            for (index, part) in bundle.components.iter().enumerate() {
+                let Content::Series(series) = &part.content else { continue };
+                let blocks = blocks(members, &|value| {
+                    let Value::Bundle(bundle) = value else { return None };
+                    match bundle.components.get(index).map(|part| &part.content) {
+                        Some(Content::Series(series)) => Some(&series.values),
+                        _ => None,
+                    }
+                });
+                components.push((part.label.clone(), shown_series(series, &blocks)));
+            }
+            let Some((_, total)) = components.pop() else { return Err(internal("a bundle without sum").into()) };
+            Shown::Bundle { components, total }
+        }
+        Value::Model(model) => {
+            let count = model.parameters().len();
+            let spreads = (0..count)
+                .map(|index| {
+                    let blocks = blocks(members, &|value| match value {
+                        Value::Model(model) => model.parameters().get(index).map(|(_, _, block)| *block),
+                        _ => None,
+                    });
+                    spread(&blocks)
+                })
+                .collect();
+            Shown::Model(model.clone(), spreads)
+        }
+        Value::List(items) => {
+            let mut shown_items = Vec::with_capacity(items.len());
+            for (index, item) in items.iter().enumerate() {
+                let inner: Vec<&Value> = members
+                    .iter()
+                    .filter_map(|value| match value {
+                        Value::List(items) => items.get(index).map(AsRef::as_ref),
+                        _ => None,
+                    })
+                    .collect();
+                shown_items.push(shown(item, &inner)?);
+            }
+            Shown::List(shown_items)
+        }
+        Value::Span(span) => Shown::Span(span.clone()),
+        Value::Range(range) => Shown::Range(range.clone()),
+        Value::Clock(clock) => Shown::Clock(clock.clone()),
+        Value::Attribution(attribution) => Shown::Attribution(attribution.clone()),
+        Value::Table(table) => Shown::Table(table.clone()),
+        Value::Text(text) => Shown::Text(text.clone()),
+    })
+}
+
+fn blocks<'a>(members: &[&'a Value], pick: &dyn Fn(&'a Value) -> Option<&'a Block>) -> Vec<&'a Block> {
+    let picked: Vec<&Block> = members.iter().filter_map(|value| pick(value)).collect();
+    // A part that is certain has one row in every block, and no spread.
+    if picked.iter().all(|block| block.rows() <= 1) && picked.len() <= 1 { Vec::new() } else { picked }
+}
+
+fn shown_series(series: &Series, blocks: &[&Block]) -> ShownSeries {
+    ShownSeries {
+        axis: series.axis.clone(),
+        measure: series.measure.clone(),
+        nominal: series.values.member(0).to_vec(),
+        spread: spread(blocks),
+    }
+}
+
+/// Medians and 5–95 % ranges, column by column, of the members in order.
+fn spread(blocks: &[&Block]) -> Option<Arc<Spread>> {
+    if blocks.is_empty() || blocks.iter().all(|block| block.rows() <= 1) {
+        return None;
+    }
+    let columns = blocks.iter().map(|block| block.columns()).max().unwrap_or(0);
+    let members: usize = blocks.iter().map(|block| block.rows()).sum();
+    let quantiles: Vec<[f64; 3]> = (0..columns)
+        .into_par_iter()
+        .map_init(
+            || (Vec::with_capacity(members), Vec::new()),
+            |(values, workspace), column| {
+                values.clear();
+                for block in blocks {
+                    values.extend((0..block.rows()).map(|row| block.member(row).get(column).copied().unwrap_or(f64::NAN)));
+                }
+                let mut out = [f64::NAN; 3];
+                reduce::quantiles(values, &PROBABILITIES, workspace, &mut out);
+                out
+            },
+        )
+        .collect();
+    let pick = |index: usize| quantiles.iter().map(|out| out.get(index).copied().unwrap_or(f64::NAN)).collect();
+    Some(Arc::new(Spread { low: pick(0), median: pick(1), high: pick(2), members: members as u64 }))
+}
