@@ -32,7 +32,7 @@ static COMPOSE: Entry = Entry {
     gaps: "A gap in one component is a gap in the sum.",
     shows: &[Shows {
         program: "clock = 1850..1851 CE by 1 yr\nsun = constant(0.1 W/m2)\nhaze = constant(-0.5 W/m2)\ncompose(sun, haze)",
-        gives: "2 components (sun, haze); total: 2 steps, 1850 CE to 1851 CE: -0.4 W/m2 to -0.4 W/m2",
+        gives: "2 components (sun, haze); total: 2 steps, 1850 CE to 1851 CE: -0.4 to -0.4 W/m2",
     }],
     fails: &[
         Fails {
@@ -129,7 +129,7 @@ static WITHOUT: Entry = Entry {
     gaps: "Gaps stay as they are.",
     shows: &[Shows {
         program: "clock = 1850..1851 CE by 1 yr\nsun = constant(0.1 W/m2)\nhaze = constant(-0.5 W/m2)\ncompose(sun, haze) |> without([haze])",
-        gives: "1 component (sun); total: 2 steps, 1850 CE to 1851 CE: 0.1 W/m2 to 0.1 W/m2",
+        gives: "1 component (sun); total: 2 steps, 1850 CE to 1851 CE: 0.1 to 0.1 W/m2",
     }],
     fails: &[Fails {
         program: "clock = 1850..1851 CE by 1 yr\nsun = constant(0.1 W/m2)\nhaze = constant(1 W/m2)\ncompose(sun, haze) |> without([gases])",
@@ -200,7 +200,7 @@ static SCALE: Entry = Entry {
     gaps: "A gap stays a gap.",
     shows: &[Shows {
         program: "x = series([1, 2] W/m2, along: 1850..1851 CE by 1 yr)\nx |> scale(0.5)",
-        gives: "2 steps, 1850 CE to 1851 CE: 0.5 W/m2 to 1 W/m2",
+        gives: "2 steps, 1850 CE to 1851 CE: 0.5 to 1 W/m2",
     }],
     fails: &[Fails {
         program: "x = series([1, 2] W/m2, along: 1850..1851 CE by 1 yr)\nx |> scale(\"half\")",
@@ -243,7 +243,7 @@ static ANOMALY: Entry = Entry {
     gaps: "A gap stays a gap; two thirds of the baseline must have values.",
     shows: &[Shows {
         program: "x = series([14, 15, 16] degC, along: 1850..1852 CE by 1 yr)\nx |> anomaly(relative_to: 1850..1851 CE)",
-        gives: "3 steps, 1850 CE to 1852 CE: -0.5 degC to 1.5 degC",
+        gives: "3 steps, 1850 CE to 1852 CE: -0.5 to 1.5 degC",
     }],
     fails: &[Fails {
         program: "x = series([14, 15, 16] degC, along: 1850..1852 CE by 1 yr)\nx |> anomaly(relative_to: 1840..1851 CE)",
@@ -318,7 +318,7 @@ static SPLICE: Entry = Entry {
     gaps: "A gap stays a gap; the stretch between the two is one, unless `longest_gap` bridges it.",
     shows: &[Shows {
         program: "ice = series([280, 282] ppm, at: [1800 CE, 1850 CE])\nair = series([315, 316] ppm, along: 1958..1959 CE by 1 yr)\nsplice(ice, air, at: 1900 CE)",
-        gives: "4 instants, 1800.5 CE to 1959.5 CE: 280 ppm to 316 ppm",
+        gives: "4 instants, 1800.5 CE to 1959.5 CE: 280 to 316 ppm",
     }],
     fails: &[Fails {
         program: "ice = series([280, 282] ppm, at: [1800 CE, 1850 CE])\nair = series([315, 316] ppm, along: 1958..1959 CE by 1 yr)\nsplice(ice, air, at: 1700 CE)",

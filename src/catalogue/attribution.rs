@@ -59,11 +59,11 @@ static ATTRIBUTE: Entry = Entry {
     shows: &[
         Shows {
             program: "x = series([0, 1, 2, 3, 4] W/m2, along: 1850..1854 CE by 1 yr)\ny = series([0.1, 0.4, 1.1, 1.4, 2.1] degC, along: 1850..1854 CE by 1 yr)\nattribute(y, to: [x])",
-            gives: "x 0.5 degC*m2/W [0.406, 0.594]; n = 5, R2 = 0.981",
+            gives: "x 0.500 degC*m2/W [0.406, 0.594]; n = 5, R2 = 0.981",
         },
         Shows {
             program: "x = series([0, 1, 2, 3, 4] W/m2, along: 1850..1854 CE by 1 yr)\ny = series([0.1, 0.4, 1.1, 1.4, 2.1] degC, along: 1850..1854 CE by 1 yr)\nattribute(y, to: [x], method: generalised_least_squares, noise: ar1(0.5, per: 1 yr))",
-            gives: "x 0.5 degC*m2/W [0.362, 0.638]; n = 5, R2 = 0.981",
+            gives: "x 0.50 degC*m2/W [0.34, 0.66]; n = 5, R2 = 0.980",
         },
     ],
     fails: &[

@@ -37,7 +37,7 @@ static CO2_FORCING: Entry = Entry {
         Shows { program: "co2_forcing(556 ppm)", gives: "3.70834 W/m2" },
         Shows {
             program: "co2 = series([278, 417] ppm, along: 1850..1851 CE by 1 yr)\nco2_forcing(co2)",
-            gives: "2 steps, 1850 CE to 1851 CE: 0 W/m2 to 2.16924 W/m2",
+            gives: "2 steps, 1850 CE to 1851 CE: 0 to 2.16924 W/m2",
         },
     ],
     fails: &[

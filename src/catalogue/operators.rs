@@ -141,7 +141,7 @@ static PLUS_MINUS: Entry = Entry {
     equation: Some(r"X = \mu + \sigma\,\Phi^{-1}(U),\quad U \sim \mathrm{uniform}(0, 1)"),
     gaps: "It meets none.",
     shows: &[
-        Shows { program: "18 ± 4 Mt", gives: "18 Mt [12, 25]" },
+        Shows { program: "18 ± 4 Mt", gives: "18.0 Mt [11.3, 24.7]" },
         Shows { program: "a = 1 ± 0.1\nb = a * 2\nb - a - a", gives: "0" },
     ],
     fails: &[

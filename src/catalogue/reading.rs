@@ -37,10 +37,10 @@ static LOAD: Entry = Entry {
     equation: None,
     gaps: "Empty cells, NaN and infinities are gaps and are counted in a note; other oddities are errors with line and column.",
     shows: &[
-        Shows { program: "load(\"spots.csv\")", gives: "6 steps, 1850 CE to 1855 CE: 66 spots_v2 to 7 spots_v2" },
+        Shows { program: "load(\"spots.csv\")", gives: "6 steps, 1850 CE to 1855 CE: 66 to 7 spots_v2" },
         Shows {
             program: "load(\"core.csv\", value: \"co2\", unit: \"ppm\")",
-            gives: "4 instants, 21 ka to 18 ka: 190 ppm to 205 ppm",
+            gives: "4 instants, 21 ka to 18 ka: 190 to 205 ppm",
         },
     ],
     fails: &[
@@ -161,11 +161,11 @@ static SERIES: Entry = Entry {
     shows: &[
         Shows {
             program: "series([280, 285 ± 1, 290] ppm, along: 1850..1852 CE by 1 yr)",
-            gives: "3 steps, 1850 CE to 1852 CE: 280 ppm to 290 ppm",
+            gives: "3 steps, 1850 CE to 1852 CE: 280 to 290 ppm",
         },
         Shows {
             program: "series([190, 265] ppm, at: [21 ka, 11 ka])",
-            gives: "2 instants, 21 ka to 11 ka: 190 ppm to 265 ppm",
+            gives: "2 instants, 21 ka to 11 ka: 190 to 265 ppm",
         },
     ],
     fails: &[
@@ -288,7 +288,7 @@ static CONSTANT: Entry = Entry {
     gaps: "It has none.",
     shows: &[Shows {
         program: "clock = 1850..1852 CE by 1 yr\nconstant(0.3 ± 0.1 W/m2)",
-        gives: "3 steps, 1850 CE to 1852 CE: 0.3 W/m2 to 0.3 W/m2",
+        gives: "3 steps, 1850 CE to 1852 CE: 0.30 [0.13, 0.46] to 0.30 [0.13, 0.46] W/m2",
     }],
     fails: &[Fails { program: "constant(0.3 W/m2)", code: "no-clock", says: "clock" }],
     citations: &[],

@@ -45,7 +45,7 @@ static TWO_LAYER: Entry = Entry {
     gaps: "It meets none.",
     shows: &[Shows {
         program: "two_layer(feedback: 1.3 ± 0.2 W/m2/K)",
-        gives: "two-layer model: heat_capacity 7.3 W*yr/m2/K, deep_heat_capacity 106 W*yr/m2/K, exchange 0.73 W/m2/K, feedback 1.3 W/m2/K, heat_uptake_efficacy 1",
+        gives: "two-layer model: heat_capacity 7.3 W*yr/m2/K, deep_heat_capacity 106 W*yr/m2/K, exchange 0.73 W/m2/K, feedback 1.30 [0.98, 1.63] W/m2/K, heat_uptake_efficacy 1",
     }],
     fails: &[
         Fails { program: "two_layer(feedback: 1.3 W/m2)", code: "unit-mismatch", says: "W/m2/K" },
@@ -133,7 +133,7 @@ static RESPOND: Entry = Entry {
     gaps: "The response begins in equilibrium at the first value; after a gap inside, everything is a gap. Data from before the clock's start are used where there are any.",
     shows: &[Shows {
         program: "clock = 1850..1950 CE by 1 yr\nrespond(constant(3.45 W/m2), two_layer())",
-        gives: "101 steps, 1850 CE to 1950 CE: 0.21746 degC to 2.23886 degC",
+        gives: "101 steps, 1850 CE to 1950 CE: 0.21746 to 2.23645 degC",
     }],
     fails: &[
         Fails {

@@ -88,7 +88,7 @@ static ON: Entry = Entry {
     gaps: "A step is the mean of its data if two thirds of it are covered, else a gap; gaps longer than `longest_gap` are not bridged.",
     shows: &[Shows {
         program: "x = series([1, 2, 3, 4] ppm, along: 1850..1853 CE by 1 yr)\nx |> on(1850..1853 CE by 2 yr)",
-        gives: "2 steps, 1850 CE to 1852 CE: 1.5 ppm to 3.5 ppm",
+        gives: "2 steps, 1850 CE to 1852 CE: 1.5 to 3.5 ppm",
     }],
     fails: &[Fails {
         program: "x = series([1, 2] ppm, along: 1850..1851 CE by 1 yr)\nx |> on(21..20 ka by 1 kyr)",
@@ -133,7 +133,7 @@ static WITHIN: Entry = Entry {
     gaps: "A gap inside stays a gap.",
     shows: &[Shows {
         program: "x = series([1, 2, 3, 4] ppm, along: 1850..1853 CE by 1 yr)\nx |> within(1851..1852 CE)",
-        gives: "2 steps, 1851 CE to 1852 CE: 2 ppm to 3 ppm",
+        gives: "2 steps, 1851 CE to 1852 CE: 2 to 3 ppm",
     }],
     fails: &[Fails {
         program: "x = series([1, 2] ppm, along: 1850..1851 CE by 1 yr)\nx |> within(1900..1950 CE)",
@@ -187,11 +187,11 @@ static LAG: Entry = Entry {
     shows: &[
         Shows {
             program: "x = series([1, 2, 3] ppm, along: 1850..1852 CE by 1 yr)\nx |> lag(1 yr)",
-            gives: "3 steps, 1851 CE to 1853 CE: 1 ppm to 3 ppm",
+            gives: "3 steps, 1851 CE to 1853 CE: 1 to 3 ppm",
         },
         Shows {
             program: "clock = 1851..1852 CE by 1 yr\nx = series([1, 2, 3] ppm, along: 1850..1852 CE by 1 yr)\n(x + 0 ppm * x) |> lag(6 month)",
-            gives: "2 steps, 1851 CE to 1852 CE: 1.5 ppm to 2.5 ppm",
+            gives: "2 steps, 1851 CE to 1852 CE: 1.5 to 2.5 ppm",
         },
     ],
     fails: &[Fails {

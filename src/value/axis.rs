@@ -379,8 +379,8 @@ mod tests {
 
     #[test]
     fn days_follow_the_calendar() {
-        let first = super::super::instant_of_date(2016, 1, 1).unwrap();
-        let last = super::super::instant_of_date(2016, 12, 31).unwrap();
+        let first = crate::value::instant_of_date(2016, 1, 1).unwrap();
+        let last = crate::value::instant_of_date(2016, 12, 31).unwrap();
         let year = Span::between(&first, &last).unwrap();
         let clock = Clock::new(&year, 1.0 / 365.2425, Some(1), None).unwrap();
         assert_eq!(clock.axis.len(), 366);

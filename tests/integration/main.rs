@@ -1,1 +1,5 @@
+//! One binary for all tests that use the crate from outside.
 
+mod catalogue_examples;
+mod certified_science;
+mod layers;
