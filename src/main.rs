@@ -9,8 +9,8 @@ use std::time::{Duration, Instant};
 
 use clap::{Parser, Subcommand, ValueEnum};
 
-use rhythmite::session::{CellReply, Session};
-use rhythmite::{catalogue, display, notebook};
+use rhythmite::session::Session;
+use rhythmite::{catalogue, notebook};
 
 /// Climate forcing time series: compose drivers, respond, attribute a record.
 #[derive(Parser)]
@@ -139,11 +139,12 @@ fn run(
     let failed = !reply.problems.is_empty()
         || !reply.waiting.is_empty()
         || reply.outputs.iter().any(|output| output.result.is_err());
-    let mut report = Report { session: &session, colour: std::io::stdout().is_terminal(), text: String::new() };
     let printed = match format {
         Format::Text => {
-            report.reply(&reply);
-            report.text
+            let colour = out.is_none() && std::io::stdout().is_terminal() && std::env::var_os("NO_COLOR").is_none();
+            let mut report = notebook::Report::new(colour, true);
+            report.add(&session, &reply);
+            report.take()
         }
         Format::Json => {
             let json = notebook::run_to_json(&session, &[(0, reply)]);
@@ -160,51 +161,6 @@ fn run(
         }
     }
     if failed { WRONG_PROGRAM } else { SUCCESS }
-}
-
-/// Results as text.
-struct Report<'a> {
-    session: &'a Session,
-    colour: bool,
-    text: String,
-}
-
-impl Report<'_> {
-    fn reply(&mut self, reply: &CellReply) {
-        let sources = |id| self.session.source(id);
-        for problem in reply.problems.iter().chain(&reply.waiting) {
-            self.text += &display::diagnostic(problem, &sources, self.colour);
-            self.text.push('\n');
-        }
-        for notice in &reply.notices {
-            self.text += &format!("{notice}\n\n");
-        }
-        for output in &reply.outputs {
-            let (bold, dim, plain) = if self.colour { ("\x1b[1m", "\x1b[2m", "\x1b[0m") } else { ("", "", "") };
-            match &output.result {
-                Ok(shown) => {
-                    self.text += &format!("{bold}{}{plain}\n", output.expression);
-                    self.text += &indented(&display::text(shown));
-                    for note in &output.notes {
-                        self.text += &format!("  {dim}– {note}{plain}\n");
-                    }
-                    self.text += &format!("  {dim}{}{plain}\n\n", output.fingerprint.short());
-                }
-                Err(problem) if reply.problems.contains(problem) || reply.waiting.contains(problem) => {
-                    let line = display::problem_line(problem, &sources);
-                    self.text += &format!("{bold}{}{plain}\n  not shown, because of the error at {line}\n\n", output.expression);
-                }
-                Err(problem) => {
-                    self.text += &display::diagnostic(problem, &sources, self.colour);
-                    self.text.push('\n');
-                }
-            }
-        }
-    }
-}
-
-fn indented(text: &str) -> String {
-    text.lines().map(|line| if line.starts_with("  ") { format!("{line}\n") } else { format!("  {line}\n") }).collect()
 }
 
 /// A line on standard error that says how long a run has taken, on a terminal and after half a second.

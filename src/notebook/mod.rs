@@ -1,5 +1,7 @@
-//! Results out: one JSON object for a whole run. Notebooks in and out will stand here too.
+//! Results out: as text, and as one JSON object for a whole run. Notebooks in and out will stand here too.
 
 mod json;
+mod report;
 
 pub use json::run_to_json;
+pub use report::Report;

@@ -3,3 +3,4 @@
 mod catalogue_examples;
 mod certified_science;
 mod layers;
+mod suite;

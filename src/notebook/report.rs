@@ -1,0 +1,81 @@
+use std::collections::HashSet;
+use std::sync::Arc;
+
+use crate::display;
+use crate::session::{CellReply, Output, Session};
+
+/// What cells gave, as text for a terminal or a page: results, notes, diagnostics.
+///
+/// A note is printed where it first comes up and not again, so that a long script does not repeat how a file was read.
+#[derive(Default)]
+pub struct Report {
+    /// Whether ANSI colours are used.
+    pub colour: bool,
+    /// Whether each result is followed by its fingerprint.
+    pub fingerprints: bool,
+    said: HashSet<Arc<str>>,
+    text: String,
+}
+
+impl Report {
+    /// An empty report.
+    pub fn new(colour: bool, fingerprints: bool) -> Self {
+        Self { colour, fingerprints, ..Self::default() }
+    }
+
+    /// The text so far; the report is empty afterwards, but remembers the notes it printed.
+    pub fn take(&mut self) -> String {
+        std::mem::take(&mut self.text)
+    }
+
+    /// Add what a cell gave.
+    pub fn add(&mut self, session: &Session, reply: &CellReply) {
+        let sources = |id| session.source(id);
+        for problem in reply.problems.iter().chain(&reply.waiting) {
+            self.text += &display::diagnostic(problem, &sources, self.colour);
+            self.text.push('\n');
+        }
+        for notice in &reply.notices {
+            self.text += &format!("{notice}\n\n");
+        }
+        for output in &reply.outputs {
+            self.output(session, reply, output);
+        }
+        for output in &reply.moved {
+            let by = output.refreshed_by.join(", ");
+            self.text += &format!("{}, refreshed by {by}:\n", output.cell);
+            self.output(session, reply, output);
+        }
+    }
+
+    fn output(&mut self, session: &Session, reply: &CellReply, output: &Output) {
+        let (bold, dim, plain) = if self.colour { ("\x1b[1m", "\x1b[2m", "\x1b[0m") } else { ("", "", "") };
+        let sources = |id| session.source(id);
+        match &output.result {
+            Ok(shown) => {
+                self.text += &format!("{bold}{}{plain}\n", output.expression);
+                for line in display::text(shown).lines() {
+                    let indent = if line.starts_with("  ") { "" } else { "  " };
+                    self.text += &format!("{indent}{line}\n");
+                }
+                for note in &output.notes {
+                    if self.said.insert(note.clone()) {
+                        self.text += &format!("  {dim}– {note}{plain}\n");
+                    }
+                }
+                if self.fingerprints {
+                    self.text += &format!("  {dim}{}{plain}\n", output.fingerprint.short());
+                }
+                self.text.push('\n');
+            }
+            Err(problem) if reply.problems.contains(problem) || reply.waiting.contains(problem) => {
+                let line = display::problem_line(problem, &sources);
+                self.text += &format!("{bold}{}{plain}\n  not shown, because of the error at {line}\n\n", output.expression);
+            }
+            Err(problem) => {
+                self.text += &display::diagnostic(problem, &sources, self.colour);
+                self.text.push('\n');
+            }
+        }
+    }
+}
