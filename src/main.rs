@@ -126,11 +126,16 @@ fn run(
         Ok(text) => text,
         Err(error) => {
             let at = error.utf8_error().valid_up_to();
-            complain(&format!("{} is not UTF-8: the first wrong byte is number {}\n", file.display(), at + 1));
+            complain(&format!(
+                "{} is not UTF-8: the first wrong byte is number {}\n",
+                file.display(),
+                at + 1
+            ));
             return WRONG_CALL;
         }
     };
-    let folder = file.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(std::path::Path::new("."));
+    let folder =
+        file.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(std::path::Path::new("."));
     let name = file.file_name().map_or_else(|| "script".into(), |name| name.to_string_lossy().into_owned());
     let mut session = Session::with_limits(folder, threads, memory, file_limit);
     let progress = Progress::begin();
@@ -141,7 +146,8 @@ fn run(
         || reply.outputs.iter().any(|output| output.result.is_err());
     let printed = match format {
         Format::Text => {
-            let colour = out.is_none() && std::io::stdout().is_terminal() && std::env::var_os("NO_COLOR").is_none();
+            let colour =
+                out.is_none() && std::io::stdout().is_terminal() && std::env::var_os("NO_COLOR").is_none();
             let mut report = notebook::Report::new(colour, true);
             report.add(&session, &reply);
             report.take()
@@ -183,7 +189,10 @@ impl Progress {
                 std::thread::sleep(Duration::from_millis(100));
                 if began.elapsed() > Duration::from_millis(500) && !flag.load(Ordering::Relaxed) {
                     shown = true;
-                    complain(&format!("\rcomputing, {:.1} s; Ctrl-C stops it", began.elapsed().as_secs_f64()));
+                    complain(&format!(
+                        "\rcomputing, {:.1} s; Ctrl-C stops it",
+                        began.elapsed().as_secs_f64()
+                    ));
                 }
             }
             if shown {

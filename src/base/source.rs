@@ -59,8 +59,7 @@ pub struct LineIndex<'a> {
 impl<'a> LineIndex<'a> {
     /// Index the lines of `text`.
     pub fn new(text: &'a str) -> Self {
-        let line_starts =
-            std::iter::once(0).chain(text.match_indices('\n').map(|(at, _)| at + 1)).collect();
+        let line_starts = std::iter::once(0).chain(text.match_indices('\n').map(|(at, _)| at + 1)).collect();
         Self { text, line_starts }
     }
 

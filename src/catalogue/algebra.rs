@@ -105,12 +105,18 @@ fn mixed_kinds(bundle: &Bundle) -> Option<String> {
     let kinds: Vec<_> = bundle
         .leaves()
         .iter()
-        .filter_map(|(label, series)| series.measure.forcing.as_ref().map(|forcing| (label.clone(), forcing.kind)))
+        .filter_map(|(label, series)| {
+            series.measure.forcing.as_ref().map(|forcing| (label.clone(), forcing.kind))
+        })
         .collect();
     let declared = kinds.iter().find(|(_, kind)| *kind != Undeclared)?.1;
-    let undeclared: Vec<&str> = kinds.iter().filter(|(_, kind)| *kind == Undeclared).map(|(label, _)| &**label).collect();
+    let undeclared: Vec<&str> =
+        kinds.iter().filter(|(_, kind)| *kind == Undeclared).map(|(label, _)| &**label).collect();
     (!undeclared.is_empty()).then(|| {
-        format!("the kind of forcing of {} is not declared; composed with {declared} forcing", undeclared.join(", "))
+        format!(
+            "the kind of forcing of {} is not declared; composed with {declared} forcing",
+            undeclared.join(", ")
+        )
     })
 }
 
@@ -121,7 +127,12 @@ static WITHOUT: Entry = Entry {
     signature: Signature {
         parameters: &[
             Parameter::required("bundle", &["bundle"], "a bundle"),
-            Parameter::required("components", &["list"], "the labels of the components to leave out: `[sun, haze]`").as_groups(),
+            Parameter::required(
+                "components",
+                &["list"],
+                "the labels of the components to leave out: `[sun, haze]`",
+            )
+            .as_groups(),
         ],
     },
     result: "a bundle of the other components",
@@ -145,7 +156,9 @@ static WITHOUT: Entry = Entry {
     labels: false,
     shape: |call| {
         let Shape::Bundle(parts) = call.shape("bundle")? else {
-            return Err(Fault::new("wrong-argument", "only a bundle has components to leave out").blame("bundle").into());
+            return Err(Fault::new("wrong-argument", "only a bundle has components to leave out")
+                .blame("bundle")
+                .into());
         };
         let labels: Vec<Arc<str>> = parts.iter().map(|(label, _)| label.clone()).collect();
         let out = labels_left_out(call, &labels)?;
@@ -156,7 +169,8 @@ static WITHOUT: Entry = Entry {
         let Value::Bundle(bundle) = value.as_ref() else { return Err(wrong_kind("bundle", &value).into()) };
         let labels: Vec<Arc<str>> = bundle.components.iter().map(|part| part.label.clone()).collect();
         let out = labels_left_out(call, &labels)?;
-        let components = bundle.components.iter().filter(|part| !out.contains(&part.label)).cloned().collect();
+        let components =
+            bundle.components.iter().filter(|part| !out.contains(&part.label)).cloned().collect();
         Ok(Value::Bundle(Bundle { components }))
     }),
 };
@@ -192,7 +206,11 @@ static SCALE: Entry = Entry {
     signature: Signature {
         parameters: &[
             Parameter::required("series", SERIES, "a series or bundle"),
-            Parameter::required("factor", &["quantity"], "the factor; `1 ± 0.35` makes one shared scale uncertainty"),
+            Parameter::required(
+                "factor",
+                &["quantity"],
+                "the factor; `1 ± 0.35` makes one shared scale uncertainty",
+            ),
         ],
     },
     result: "in the product of the units; a plain factor keeps unit and kind of forcing",
@@ -220,7 +238,9 @@ static SCALE: Entry = Entry {
     },
     body: Body::PerMember(|call| {
         let factor = call.value("factor")?;
-        let Value::Quantity(factor) = factor.as_ref() else { return Err(wrong_kind("factor", &factor).into()) };
+        let Value::Quantity(factor) = factor.as_ref() else {
+            return Err(wrong_kind("factor", &factor).into());
+        };
         series_or_bundle(&*call.value("series")?, "", &mut |series, _| {
             let values = series.values.zip(&factor.values, |value, factor| value * factor);
             Ok(series.with(values, series.measure.product(&factor.measure, 1)))
@@ -258,7 +278,9 @@ static ANOMALY: Entry = Entry {
     random: false,
     labels: false,
     shape: |call| {
-        each_measure(call.shape("series")?, |measure| Ok(Measure { reading: Reading::Difference, ..measure.clone() }))
+        each_measure(call.shape("series")?, |measure| {
+            Ok(Measure { reading: Reading::Difference, ..measure.clone() })
+        })
     },
     body: Body::PerMember(|call| {
         let Some(span) = call.span("relative_to")? else {
@@ -342,7 +364,8 @@ static SPLICE: Entry = Entry {
 
 fn splice(call: &Call<'_>) -> Result<Value, Stop> {
     let (early, late, at) = (call.value("early")?, call.value("late")?, call.value("at")?);
-    let (Value::Series(early), Value::Series(late), Value::Instant(at)) = (early.as_ref(), late.as_ref(), at.as_ref())
+    let (Value::Series(early), Value::Series(late), Value::Instant(at)) =
+        (early.as_ref(), late.as_ref(), at.as_ref())
     else {
         return Err(Fault::new("wrong-argument", "two series and an instant are spliced").into());
     };
@@ -355,7 +378,9 @@ fn splice(call: &Call<'_>) -> Result<Value, Stop> {
     let second = after.partition_point(|time| *time < at.year());
     if first == 0 || second == after.len() {
         let (name, side) = if first == 0 { ("early", "before") } else { ("late", "from") };
-        return Err(Fault::new("no-overlap", format!("`{}` has no value {side} {at}", call.label(name))).blame("at").into());
+        return Err(Fault::new("no-overlap", format!("`{}` has no value {side} {at}", call.label(name)))
+            .blame("at")
+            .into());
     }
     let mut times = before.get(..first).unwrap_or(&[]).to_vec();
     times.extend(after.get(second..).unwrap_or(&[]));

@@ -2,17 +2,18 @@
 
 use std::sync::Arc;
 
+use super::algebra::unknown_component;
 use super::call::{Call, Path, Stop, wrong_kind};
 use super::citations::{AITKEN_1936, DURBIN_WATSON_1950, PRAIS_WINSTEN_1954};
 use super::entry::{Body, Entry, Fails, ReadsClock, Room, Shows};
-use super::algebra::unknown_component;
 use super::onto::{bring, content_total, counted, total};
 use super::response::respond;
 use crate::base::Fault;
 use crate::language::{Choice, Parameter, Signature};
 use crate::science::{reduce, regression, student};
 use crate::value::{
-    Attribution, Axis, Bundle, Coefficient, Content, FitStatistics, Model, Series, Shape, TimeSpan, Unit, Value,
+    Attribution, Axis, Bundle, Coefficient, Content, FitStatistics, Model, Series, Shape, TimeSpan, Unit,
+    Value,
 };
 
 static ATTRIBUTE: Entry = Entry {
@@ -21,13 +22,30 @@ static ATTRIBUTE: Entry = Entry {
     summary: "How much of a record each driver explains, by regression, with intervals and diagnostics.",
     signature: Signature {
         parameters: &[
-            Parameter::required("record", &["series"], "the record; it is never refined, and n counts its own values"),
-            Parameter::required("to", &["bundle", "series", "list"], "the drivers: a bundle, whose components are regressors, or a list, whose items may differ in unit where no response is asked for"),
+            Parameter::required(
+                "record",
+                &["series"],
+                "the record; it is never refined, and n counts its own values",
+            ),
+            Parameter::required(
+                "to",
+                &["bundle", "series", "list"],
+                "the drivers: a bundle, whose components are regressors, or a list, whose items may differ in unit where no response is asked for",
+            ),
             Parameter::required("response", &["model"], "the model that every driver goes through first")
                 .or_choices(&[Choice::plain("none", "the drivers as they are")])
                 .by_default("none"),
-            Parameter::optional("beside", &["series", "list"], "regressors that are no forcing and go through no response, such as an ocean index"),
-            Parameter::optional("groups", &["list"], "what counts as one regressor: `[sun + sulfate, gases]`").as_groups(),
+            Parameter::optional(
+                "beside",
+                &["series", "list"],
+                "regressors that are no forcing and go through no response, such as an ocean index",
+            ),
+            Parameter::optional(
+                "groups",
+                &["list"],
+                "what counts as one regressor: `[sun + sulfate, gases]`",
+            )
+            .as_groups(),
             Parameter::choice(
                 "method",
                 &[
@@ -37,24 +55,44 @@ static ATTRIBUTE: Entry = Entry {
                 "ordinary_least_squares",
                 "the regression",
             ),
-            Parameter::optional("noise", &[], "what the residuals are like; must be said for generalised least squares")
-                .or_choices(&[
-                    Choice::plain("white", "independent"),
-                    Choice {
-                        name: "ar1",
-                        meaning: "a first-order autoregression with known persistence",
-                        parameters: &[
-                            Parameter::required("coefficient", &["quantity"], "the correlation of values one `per` apart").in_unit("1"),
-                            Parameter::required("per", &["duration"], "the time to which the coefficient belongs").in_unit("yr"),
-                        ],
-                    },
-                ]),
-            Parameter::optional("change", &["span"], "the later window of the change that is to be explained"),
+            Parameter::optional(
+                "noise",
+                &[],
+                "what the residuals are like; must be said for generalised least squares",
+            )
+            .or_choices(&[
+                Choice::plain("white", "independent"),
+                Choice {
+                    name: "ar1",
+                    meaning: "a first-order autoregression with known persistence",
+                    parameters: &[
+                        Parameter::required(
+                            "coefficient",
+                            &["quantity"],
+                            "the correlation of values one `per` apart",
+                        )
+                        .in_unit("1"),
+                        Parameter::required(
+                            "per",
+                            &["duration"],
+                            "the time to which the coefficient belongs",
+                        )
+                        .in_unit("yr"),
+                    ],
+                },
+            ]),
+            Parameter::optional(
+                "change",
+                &["span"],
+                "the later window of the change that is to be explained",
+            ),
             Parameter::optional("from", &["span"], "the earlier window of that change"),
         ],
     },
     result: "an attribution: coefficients in the record's unit over the driver's, 5–95 % intervals by Student's t, contributions",
-    equation: Some(r"y = \beta_0 + \sum_i \beta_i x_i + u,\quad \hat\beta = (X^\top V^{-1} X)^{-1} X^\top V^{-1} y,\quad V_{st} = \rho^{|s-t|}"),
+    equation: Some(
+        r"y = \beta_0 + \sum_i \beta_i x_i + u,\quad \hat\beta = (X^\top V^{-1} X)^{-1} X^\top V^{-1} y,\quad V_{st} = \rho^{|s-t|}",
+    ),
     gaps: "Times at which the record or any driver has a gap are left out, and counted.",
     shows: &[
         Shows {
@@ -84,7 +122,15 @@ static ATTRIBUTE: Entry = Entry {
         },
     ],
     citations: &[&AITKEN_1936, &PRAIS_WINSTEN_1954, &DURBIN_WATSON_1950],
-    search: &["regression", "fit", "detection", "scaling factor", "explain", "least squares", "multiple linear"],
+    search: &[
+        "regression",
+        "fit",
+        "detection",
+        "scaling factor",
+        "explain",
+        "least squares",
+        "multiple linear",
+    ],
     revision: 1,
     reads_clock: ReadsClock::Always,
     reads_file: None,
@@ -107,10 +153,13 @@ fn check(call: &Call<'_>) -> Result<Shape, Stop> {
                 .into());
         }
         ("ordinary_least_squares", Some("ar1")) => {
-            return Err(Fault::new("wrong-argument", "ordinary least squares takes the residuals to be independent")
-                .blame("noise")
-                .help("for correlated residuals add `method: generalised_least_squares`")
-                .into());
+            return Err(Fault::new(
+                "wrong-argument",
+                "ordinary least squares takes the residuals to be independent",
+            )
+            .blame("noise")
+            .help("for correlated residuals add `method: generalised_least_squares`")
+            .into());
         }
         _ => {}
     }
@@ -125,10 +174,13 @@ fn check(call: &Call<'_>) -> Result<Shape, Stop> {
     let Shape::List(items) = call.shape("to")? else { return Ok(Shape::Attribution) };
     for item in &items {
         if !matches!(item, Shape::Series(_) | Shape::Bundle(_)) {
-            return Err(Fault::new("wrong-argument", format!("{} stands in the list of drivers", item.describe()))
-                .blame("to")
-                .help("the list holds series and bundles")
-                .into());
+            return Err(Fault::new(
+                "wrong-argument",
+                format!("{} stands in the list of drivers", item.describe()),
+            )
+            .blame("to")
+            .help("the list holds series and bundles")
+            .into());
         }
     }
     if items.is_empty() {
@@ -145,7 +197,9 @@ fn drivers_are_forcings(call: &Call<'_>) -> Result<(), Stop> {
     };
     for measure in shapes.iter().filter_map(Shape::measure) {
         measure.unit.factor_to(&flux).map_err(|fault| {
-            fault.blame("to").help("what goes through a response is a forcing in W/m2; other regressors go into `beside:`")
+            fault
+                .blame("to")
+                .help("what goes through a response is a forcing in W/m2; other regressors go into `beside:`")
         })?;
     }
     Ok(())
@@ -193,7 +247,9 @@ fn attribute(call: &Call<'_>) -> Result<Value, Stop> {
             t: value_at(&fit.t, index),
             low,
             high,
-            variance_inflation: index.checked_sub(1).and_then(|at| fit.variance_inflation_factors.get(at).copied()),
+            variance_inflation: index
+                .checked_sub(1)
+                .and_then(|at| fit.variance_inflation_factors.get(at).copied()),
             regressor,
             contribution: None,
         }
@@ -208,7 +264,8 @@ fn attribute(call: &Call<'_>) -> Result<Value, Stop> {
             coefficient(index + 1, label.clone(), unit, column)
         })
         .collect();
-    let fitted = response.iter().zip(&fit.residuals).map(|(observed, residual)| observed - residual).collect();
+    let fitted =
+        response.iter().zip(&fit.residuals).map(|(observed, residual)| observed - residual).collect();
     let mut attribution = Attribution {
         method: call.choice("method").map_or("", |(word, _)| word).replace('_', " "),
         noise,
@@ -267,15 +324,22 @@ fn record_axis(call: &Call<'_>, record: &Series) -> Result<Arc<Axis>, Stop> {
     let span = TimeSpan { start, end, era: record.axis.era, last: end };
     let inside = record.axis.inside(&span);
     if inside.is_empty() {
-        return Err(Fault::new("no-overlap", format!("`{}` has no value inside the clock's span", call.label("record")))
-            .detail(format!("record: {}", record.axis.describe()))
-            .blame("record")
-            .into());
+        return Err(Fault::new(
+            "no-overlap",
+            format!("`{}` has no value inside the clock's span", call.label("record")),
+        )
+        .detail(format!("record: {}", record.axis.describe()))
+        .blame("record")
+        .into());
     }
     if inside.len() == record.axis.len() {
         return Ok(record.axis.clone());
     }
-    call.context.note(format!("the record is used inside the clock's span: {} of its {} values", inside.len(), record.axis.len()));
+    call.context.note(format!(
+        "the record is used inside the clock's span: {} of its {} values",
+        inside.len(),
+        record.axis.len()
+    ));
     Ok(Arc::new(record.axis.part(inside)))
 }
 
@@ -305,9 +369,11 @@ fn regressors(call: &Call<'_>) -> Result<Vec<Labelled>, Stop> {
         regressors.push((label, series));
     }
     if let Some(beside) = call.maybe("beside")? {
-        regressors.extend(listed(call, "beside", beside.as_ref())?.into_iter().filter_map(|(label, content)| {
-            if let Content::Series(series) = content { Some((label, series)) } else { None }
-        }));
+        regressors.extend(listed(call, "beside", beside.as_ref())?.into_iter().filter_map(
+            |(label, content)| {
+                if let Content::Series(series) = content { Some((label, series)) } else { None }
+            },
+        ));
     }
     for (index, (label, _)) in regressors.iter().enumerate() {
         if regressors.iter().take(index).any(|(other, _)| other == label) {
@@ -389,7 +455,10 @@ fn listed(call: &Call<'_>, name: &'static str, value: &Value) -> Result<Vec<(Arc
                 .iter()
                 .enumerate()
                 .map(|(index, item)| {
-                    let label = labels.get(index).cloned().unwrap_or_else(|| Arc::from(format!("driver {}", index + 1)));
+                    let label = labels
+                        .get(index)
+                        .cloned()
+                        .unwrap_or_else(|| Arc::from(format!("driver {}", index + 1)));
                     match item.as_ref() {
                         Value::Series(series) => Ok((label, Content::Series(series.clone()))),
                         Value::Bundle(bundle) => Ok((label, Content::Bundle(bundle.clone()))),
@@ -416,22 +485,31 @@ fn fit(
             let coefficient = noise.certain("coefficient")?;
             let per_years = noise.certain("per")?;
             if !(coefficient > -1.0 && coefficient < 1.0) || per_years <= 0.0 {
-                return Err(Fault::new("out-of-range", "the coefficient of an ar1 noise lies between -1 and 1, and `per` is above zero")
-                    .blame("noise")
-                    .into());
+                return Err(Fault::new(
+                    "out-of-range",
+                    "the coefficient of an ar1 noise lies between -1 and 1, and `per` is above zero",
+                )
+                .blame("noise")
+                .into());
             }
             let middles = axis.middles();
             let first = value_at(&middles, 0);
             let positions: Vec<f64> = middles.iter().map(|time| (time - first) / per_years).collect();
-            let fit = regression::generalised_least_squares_ar1_known(response, design, Some(&positions), coefficient)
-                .map_err(|error| regression_fault(&error, labels))?;
+            let fit = regression::generalised_least_squares_ar1_known(
+                response,
+                design,
+                Some(&positions),
+                coefficient,
+            )
+            .map_err(|error| regression_fault(&error, labels))?;
             let step = axis.median_step() / per_years;
             let rho = if coefficient > 0.0 { coefficient.powf(step) } else { coefficient };
             let words = format!("ar1({coefficient}, per: {})", crate::value::duration_words(per_years));
             Ok((fit, words, Some(rho)))
         }
         _ => {
-            let fit = regression::ordinary_least_squares(response, design).map_err(|error| regression_fault(&error, labels))?;
+            let fit = regression::ordinary_least_squares(response, design)
+                .map_err(|error| regression_fault(&error, labels))?;
             Ok(white(fit))
         }
     }
@@ -443,13 +521,20 @@ fn regression_fault(error: &regression::RegressionError, labels: &[Arc<str>]) ->
     match error {
         RegressionError::TooFewValues { values, coefficients } => Fault::new(
             "too-few-values",
-            format!("{} at which the record and all drivers are known, for {coefficients} coefficients", counted(*values, "times")),
+            format!(
+                "{} at which the record and all drivers are known, for {coefficients} coefficients",
+                counted(*values, "times")
+            ),
         )
         .help("take fewer drivers, or a longer stretch of time in which all have values"),
-        RegressionError::ConstantColumn(index) => {
-            Fault::new("constant-driver", format!("`{}` does not change over the record, so nothing can be attributed to it", label(*index)))
-                .blame("to")
-        }
+        RegressionError::ConstantColumn(index) => Fault::new(
+            "constant-driver",
+            format!(
+                "`{}` does not change over the record, so nothing can be attributed to it",
+                label(*index)
+            ),
+        )
+        .blame("to"),
         RegressionError::CollinearColumns { column, with } => {
             let others: Vec<&str> = with.iter().map(|index| label(*index)).collect();
             Fault::new(
@@ -469,7 +554,11 @@ fn regression_fault(error: &regression::RegressionError, labels: &[Arc<str>]) ->
 
 /// Fill in what each driver contributes to the change of the record between two windows: coefficient times the change
 /// of the regressor, with the standard error that follows from the coefficient's.
-pub(super) fn contribute(attribution: &mut Attribution, later: TimeSpan, earlier: TimeSpan) -> Result<(), Fault> {
+pub(super) fn contribute(
+    attribution: &mut Attribution,
+    later: TimeSpan,
+    earlier: TimeSpan,
+) -> Result<(), Fault> {
     let axis = attribution.axis.clone();
     let mean = |values: &[f64], span: &TimeSpan, parameter: &'static str| {
         let inside = axis.inside(span);
@@ -477,7 +566,10 @@ pub(super) fn contribute(attribution: &mut Attribution, later: TimeSpan, earlier
         if (inside.len() as f64) < whole * (2.0 / 3.0) - 1e-6 {
             return Err(Fault::new(
                 "baseline",
-                format!("the fit has {} in {span}, and two thirds of it are needed", counted(inside.len(), "values")),
+                format!(
+                    "the fit has {} in {span}, and two thirds of it are needed",
+                    counted(inside.len(), "values")
+                ),
             )
             .detail(format!("fit: {}", axis.describe()))
             .blame(parameter));
@@ -488,7 +580,8 @@ pub(super) fn contribute(attribution: &mut Attribution, later: TimeSpan, earlier
         Ok(mean(values, &later, "change")? - mean(values, &earlier, "from")?)
     };
     attribution.observed_change = Some(change(&attribution.observed)?);
-    let changes = attribution.drivers.iter().map(|driver| change(&driver.regressor)).collect::<Result<Vec<_>, _>>()?;
+    let changes =
+        attribution.drivers.iter().map(|driver| change(&driver.regressor)).collect::<Result<Vec<_>, _>>()?;
     for (driver, change) in attribution.drivers.iter_mut().zip(changes) {
         driver.contribution = Some((driver.value * change, (driver.standard_error * change).abs()));
     }

@@ -236,7 +236,8 @@ impl<'a> Call<'a> {
     pub fn numbers(&self, name: &'static str) -> Result<Block, Stop> {
         let value = self.value(name)?;
         let Value::Quantity(quantity) = value.as_ref() else { return Err(wrong_kind(name, &value).into()) };
-        let unit = self.parameters.iter().find(|parameter| parameter.name == name).and_then(|found| found.unit);
+        let unit =
+            self.parameters.iter().find(|parameter| parameter.name == name).and_then(|found| found.unit);
         let Some(Ok(unit)) = unit.map(Unit::parse) else { return Ok(quantity.values.clone()) };
         let factor = quantity.measure.unit.factor_to(&unit).map_err(|fault| fault.blame(name))?;
         Ok(quantity.values.times(factor))
@@ -290,7 +291,9 @@ impl<'a> Call<'a> {
     /// What is wrong with the argument.
     pub fn measure(&self, name: &'static str) -> Result<Measure, Stop> {
         let shape = self.shape(name)?;
-        shape.measure().ok_or_else(|| Fault::new("wrong-argument", format!("found {}", shape.describe())).blame(name).into())
+        shape.measure().ok_or_else(|| {
+            Fault::new("wrong-argument", format!("found {}", shape.describe())).blame(name).into()
+        })
     }
 
     /// What the user calls an argument.
@@ -356,14 +359,18 @@ fn check_shape(parameter: &Parameter, shape: &Shape) -> Result<(), Fault> {
     });
     if !accepted {
         let expected = expected_words(parameter);
-        return Err(Fault::new("wrong-argument", format!("`{}` is {}; it takes {expected}", parameter.name, shape.describe()))
-            .label(format!("I was expecting {expected}")));
+        return Err(Fault::new(
+            "wrong-argument",
+            format!("`{}` is {}; it takes {expected}", parameter.name, shape.describe()),
+        )
+        .label(format!("I was expecting {expected}")));
     }
     if let (Some(Ok(unit)), Some(measure)) = (parameter.unit.map(Unit::parse), shape.measure()) {
         measure.unit.factor_to(&unit).map_err(|fault| {
             let expected = format!("`{}` must be convertible to {unit}", parameter.name);
             let mut fault = fault.label(expected);
-            fault.message = format!("`{}` is {}, which does not convert to {unit}", parameter.name, shape.describe());
+            fault.message =
+                format!("`{}` is {}, which does not convert to {unit}", parameter.name, shape.describe());
             fault
         })?;
     }
@@ -377,7 +384,8 @@ fn expected_words(parameter: &Parameter) -> String {
         .map(|kind| format!("{} {kind}", if kind.starts_with(['a', 'i']) { "an" } else { "a" }))
         .collect();
     words.extend(parameter.choices.iter().map(|choice| format!("`{}`", choice.name)));
-    let unit = parameter.unit.filter(|unit| *unit != "1").map(|unit| format!(" in {unit}")).unwrap_or_default();
+    let unit =
+        parameter.unit.filter(|unit| *unit != "1").map(|unit| format!(" in {unit}")).unwrap_or_default();
     let list = match words.as_slice() {
         [] => "something else".to_owned(),
         [one] => one.clone(),

@@ -34,7 +34,8 @@ fn takes(parameter: &Parameter) -> String {
     if parameter.groups_labels {
         words = vec!["labels in a list".to_owned()];
     }
-    let unit = parameter.unit.filter(|unit| *unit != "1").map(|unit| format!(" in {unit}")).unwrap_or_default();
+    let unit =
+        parameter.unit.filter(|unit| *unit != "1").map(|unit| format!(" in {unit}")).unwrap_or_default();
     format!("{}{unit}", words.join(" or "))
 }
 
@@ -93,14 +94,23 @@ pub fn reference() -> String {
                 Presence::Optional => " May be left out.".to_owned(),
                 Presence::Required | Presence::Repeated { .. } => String::new(),
             };
-            out += &format!("| `{}` | {} | {}.{default} |\n", parameter.name, takes(parameter), parameter.meaning);
+            out += &format!(
+                "| `{}` | {} | {}.{default} |\n",
+                parameter.name,
+                takes(parameter),
+                parameter.meaning
+            );
         }
         if let Some(equation) = entry.equation {
             out += &format!("\n$${equation}$$\n");
         }
         out += &format!("\n**Gaps:** {}\n", entry.gaps);
         for example in entry.shows {
-            out += &format!("\n```rhythmite\n{}\n# {}\n```\n", example.program, example.gives.replace('\n', "\n# "));
+            out += &format!(
+                "\n```rhythmite\n{}\n# {}\n```\n",
+                example.program,
+                example.gives.replace('\n', "\n# ")
+            );
         }
         if !entry.citations.is_empty() {
             let sources: Vec<&str> = entry.citations.iter().map(|citation| citation.reference).collect();

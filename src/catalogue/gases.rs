@@ -43,7 +43,11 @@ static CO2_FORCING: Entry = Entry {
     fails: &[
         Fails { program: "co2_forcing(400 W/m2)", code: "unit-mismatch", says: "ppm" },
         Fails { program: "co2_forcing(400 ppm, formula: myhre)", code: "unknown-choice", says: "myhre" },
-        Fails { program: "co2_forcing(400 ppm, reference: -1 ppm)", code: "out-of-range", says: "above zero" },
+        Fails {
+            program: "co2_forcing(400 ppm, reference: -1 ppm)",
+            code: "out-of-range",
+            says: "above zero",
+        },
     ],
     citations: &[&MYHRE_1998],
     search: &["carbon dioxide", "greenhouse", "radiative forcing"],
@@ -73,11 +77,14 @@ fn forcing_measure(reference: &str) -> Result<Measure, Stop> {
 fn co2_forcing(call: &Call<'_>) -> Result<Value, Stop> {
     let reference = call.numbers("reference")?;
     if reference.data().iter().any(|value| *value <= 0.0) {
-        return Err(Fault::new("out-of-range", "the reference amount must be above zero").blame("reference").into());
+        return Err(Fault::new("out-of-range", "the reference amount must be above zero")
+            .blame("reference")
+            .into());
     }
     let ppm = Unit::parse("ppm").map_err(|_| Fault::new("internal", "a unit of the table is missing"))?;
     let measure = forcing_measure("")?;
-    let words = format!("the forcing is a change from {} ppm of CO2, stratosphere-adjusted", reference.first());
+    let words =
+        format!("the forcing is a change from {} ppm of CO2, stratosphere-adjusted", reference.first());
     call.context.note(words);
     match numeric(call, "co2")? {
         Numeric::Quantity(co2) => {

@@ -22,18 +22,29 @@ fn view(axis: &Axis) -> resample::Axis<'_> {
 }
 
 /// The series on `axis`, with a note of what was done; `name` is what the user calls it.
-pub(super) fn bring(context: &dyn Context, series: &Series, name: &str, axis: &Arc<Axis>) -> Result<Block, Stop> {
+pub(super) fn bring(
+    context: &dyn Context,
+    series: &Series,
+    name: &str,
+    axis: &Arc<Axis>,
+) -> Result<Block, Stop> {
     if Arc::ptr_eq(&series.axis, axis) || *series.axis == **axis {
         return Ok(series.values.clone());
     }
     let valid: Vec<bool> = series.values.member(0).iter().map(|value| !value.is_nan()).collect();
-    let plan = Plan::new(view(&series.axis), &valid, view(axis), series.longest_gap_years)
-        .map_err(|error| Fault::new("internal", format!("`{name}` cannot be brought onto the clock: {error:?}")))?;
+    let plan =
+        Plan::new(view(&series.axis), &valid, view(axis), series.longest_gap_years).map_err(|error| {
+            Fault::new("internal", format!("`{name}` cannot be brought onto the clock: {error:?}"))
+        })?;
     let mut out = vec![f64::NAN; series.values.rows() * axis.len()];
-    plan.apply_to_members(series.values.data(), &mut out, context.cancellation()).map_err(|error| match error {
-        resample::ResampleError::Cancelled => Stop::from(crate::base::Cancelled),
-        other => Fault::new("internal", format!("`{name}` cannot be brought onto the clock: {other:?}")).into(),
-    })?;
+    plan.apply_to_members(series.values.data(), &mut out, context.cancellation()).map_err(
+        |error| match error {
+            resample::ResampleError::Cancelled => Stop::from(crate::base::Cancelled),
+            other => {
+                Fault::new("internal", format!("`{name}` cannot be brought onto the clock: {other:?}")).into()
+            }
+        },
+    )?;
     let gaps = plan.not_covered() + plan.too_little_covered();
     if gaps >= axis.len() {
         return Err(Fault::new("no-overlap", format!("`{name}` has no value inside the time asked for"))
@@ -49,7 +60,11 @@ pub(super) fn bring(context: &dyn Context, series: &Series, name: &str, axis: &A
 }
 
 fn words(series: &Series, name: &str, axis: &Axis, plan: &Plan, gaps: usize) -> String {
-    let how = if axis.median_step() >= 0.9 * series.axis.median_step() { "averaged" } else { "interpolated linearly" };
+    let how = if axis.median_step() >= 0.9 * series.axis.median_step() {
+        "averaged"
+    } else {
+        "interpolated linearly"
+    };
     let mut words = format!("{name}: {} {how} onto {}", series.axis.describe(), axis.describe());
     let partly = plan.partly_covered();
     if partly > 0 {
@@ -63,7 +78,11 @@ fn words(series: &Series, name: &str, axis: &Axis, plan: &Plan, gaps: usize) -> 
 
 /// `1 step`, `3 steps`.
 pub(super) fn counted(number: usize, plural: &str) -> String {
-    if number == 1 { format!("1 {}", plural.strip_suffix('s').unwrap_or(plural)) } else { format!("{number} {plural}") }
+    if number == 1 {
+        format!("1 {}", plural.strip_suffix('s').unwrap_or(plural))
+    } else {
+        format!("{number} {plural}")
+    }
 }
 
 /// Bring series that meet in one operation onto one axis: the clock in force, a pinned axis that all share, or
@@ -91,12 +110,16 @@ pub(super) fn align(context: &dyn Context, members: &[(&Series, Arc<str>)]) -> R
 fn two_axes(series: &Series, name: &str, axis: &Axis, standing: Standing) -> Fault {
     let fault = if standing == Standing::Pinned {
         Fault::new("two-axes", format!("`{name}` meets a series that was put on another axis with `on`"))
-            .help("bring it onto the same clock with `on`, or take the `on` away so that both follow the clock")
+            .help(
+                "bring it onto the same clock with `on`, or take the `on` away so that both follow the clock",
+            )
     } else {
         Fault::new("two-axes", "these series are on different axes, and there is no clock to bring them onto")
             .help("define a clock, such as `clock = 1850..2020 CE by 1 yr`, or bring one onto the other's with `on`")
     };
-    fault.detail(format!("{name}: {}", series.axis.describe())).detail(format!("the other: {}", axis.describe()))
+    fault
+        .detail(format!("{name}: {}", series.axis.describe()))
+        .detail(format!("the other: {}", axis.describe()))
 }
 
 /// The sum of a bundle's components, on one axis.
@@ -105,7 +128,8 @@ fn two_axes(series: &Series, name: &str, axis: &Axis, standing: Standing) -> Fau
 /// What keeps the components from meeting on one axis, or adding.
 pub fn total(context: &dyn Context, bundle: &Bundle) -> Result<Series, Stop> {
     let leaves = bundle.leaves();
-    let named: Vec<(&Series, Arc<str>)> = leaves.iter().map(|(label, series)| (*series, label.clone())).collect();
+    let named: Vec<(&Series, Arc<str>)> =
+        leaves.iter().map(|(label, series)| (*series, label.clone())).collect();
     let aligned = align(context, &named)?;
     let mut measure: Option<Measure> = None;
     let mut sum: Option<Block> = None;

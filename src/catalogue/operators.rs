@@ -9,7 +9,9 @@ use super::entry::{Body, Entry, Fails, ReadsClock, Room, Shows};
 use super::onto::{align, total};
 use crate::base::Fault;
 use crate::language::{Parameter, Signature};
-use crate::value::{Block, Clock, Era, Instant, Measure, Quantity, Range, Series, Shape, TimeSpan, Unit, Value};
+use crate::value::{
+    Block, Clock, Era, Instant, Measure, Quantity, Range, Series, Shape, TimeSpan, Unit, Value,
+};
 
 const NUMERIC: &[&str] = &["quantity", "series", "bundle"];
 const NUMERIC_OR_INSTANT: &[&str] = &["quantity", "series", "bundle", "instant"];
@@ -51,10 +53,18 @@ static PLUS: Entry = Entry {
         Fails { program: "1 W/m2 + 1 degC", code: "unit-mismatch", says: "measure different things" },
         Fails { program: "1850 CE + 21 ka", code: "wrong-argument", says: "two instants" },
     ],
-    ..operator("+", "The sum of two quantities or series; an instant moved by a duration.", &two(
-        Parameter::required("left", NUMERIC_OR_INSTANT, "what is added to"),
-        Parameter::required("right", NUMERIC_OR_INSTANT, "what is added; converted to the unit of the left side"),
-    ))
+    ..operator(
+        "+",
+        "The sum of two quantities or series; an instant moved by a duration.",
+        &two(
+            Parameter::required("left", NUMERIC_OR_INSTANT, "what is added to"),
+            Parameter::required(
+                "right",
+                NUMERIC_OR_INSTANT,
+                "what is added; converted to the unit of the left side",
+            ),
+        ),
+    )
 };
 
 static MINUS: Entry = Entry {
@@ -66,10 +76,18 @@ static MINUS: Entry = Entry {
     fails: &[Fails { program: "1 ppm - 1 W/m2", code: "unit-mismatch", says: "measure different things" }],
     shape: difference_shape,
     body: Body::PerMember(minus),
-    ..operator("-", "The difference of two quantities or series; the duration between two instants.", &two(
-        Parameter::required("left", NUMERIC_OR_INSTANT, "what is subtracted from"),
-        Parameter::required("right", NUMERIC_OR_INSTANT, "what is subtracted; converted to the unit of the left side"),
-    ))
+    ..operator(
+        "-",
+        "The difference of two quantities or series; the duration between two instants.",
+        &two(
+            Parameter::required("left", NUMERIC_OR_INSTANT, "what is subtracted from"),
+            Parameter::required(
+                "right",
+                NUMERIC_OR_INSTANT,
+                "what is subtracted; converted to the unit of the left side",
+            ),
+        ),
+    )
 };
 
 static TIMES: Entry = Entry {
@@ -78,10 +96,14 @@ static TIMES: Entry = Entry {
     fails: &[Fails { program: "2 * \"a\"", code: "wrong-argument", says: "it takes" }],
     shape: times_shape,
     body: Body::PerMember(times),
-    ..operator("*", "The product of two quantities or series.", &two(
-        Parameter::required("left", NUMERIC, "one factor"),
-        Parameter::required("right", NUMERIC, "the other factor"),
-    ))
+    ..operator(
+        "*",
+        "The product of two quantities or series.",
+        &two(
+            Parameter::required("left", NUMERIC, "one factor"),
+            Parameter::required("right", NUMERIC, "the other factor"),
+        ),
+    )
 };
 
 static OVER: Entry = Entry {
@@ -91,26 +113,31 @@ static OVER: Entry = Entry {
     fails: &[Fails { program: "1 / 1850 CE", code: "wrong-argument", says: "it takes" }],
     shape: over_shape,
     body: Body::PerMember(over),
-    ..operator("/", "The quotient of two quantities or series.", &two(
-        Parameter::required("left", NUMERIC, "what is divided"),
-        Parameter::required("right", NUMERIC, "what it is divided by"),
-    ))
+    ..operator(
+        "/",
+        "The quotient of two quantities or series.",
+        &two(
+            Parameter::required("left", NUMERIC, "what is divided"),
+            Parameter::required("right", NUMERIC, "what it is divided by"),
+        ),
+    )
 };
 
 static POWER: Entry = Entry {
     result: "in the power of the unit",
     gaps: "A gap stays a gap, and so does what has no real power.",
-    shows: &[
-        Shows { program: "(3 km)^2", gives: "9 km2" },
-        Shows { program: "-2^2", gives: "-4" },
-    ],
+    shows: &[Shows { program: "(3 km)^2", gives: "9 km2" }, Shows { program: "-2^2", gives: "-4" }],
     fails: &[Fails { program: "(3 km)^0.5", code: "fractional-power", says: "whole" }],
     shape: power_shape,
     body: Body::PerMember(power),
-    ..operator("^", "A quantity or series to a power.", &two(
-        Parameter::required("base", NUMERIC, "what is raised; with a unit, only to a whole power"),
-        Parameter::required("exponent", &["quantity"], "the power").in_unit("1"),
-    ))
+    ..operator(
+        "^",
+        "A quantity or series to a power.",
+        &two(
+            Parameter::required("base", NUMERIC, "what is raised; with a unit, only to a whole power"),
+            Parameter::required("exponent", &["quantity"], "the power").in_unit("1"),
+        ),
+    )
 };
 
 static NEGATE: Entry = Entry {
@@ -120,20 +147,21 @@ static NEGATE: Entry = Entry {
     shape: |call| Ok(numeric_shape(call.measure("value")?, &[call.shape("value")?])),
     body: Body::PerMember(|call| {
         Ok(match numeric(call, "value")? {
-            Numeric::Quantity(quantity) => {
-                Value::Quantity(Quantity { values: quantity.values.map(|value| -value), measure: quantity.measure })
-            }
+            Numeric::Quantity(quantity) => Value::Quantity(Quantity {
+                values: quantity.values.map(|value| -value),
+                measure: quantity.measure,
+            }),
             Numeric::Series(series) => {
                 Value::Series(series.with(series.values.map(|value| -value), series.measure.clone()))
             }
         })
     }),
     gaps: "A gap stays a gap.",
-    ..operator("negate", "The same with the other sign, written `-x`.", &[Parameter::required(
-        "value",
-        NUMERIC,
-        "what changes its sign",
-    )])
+    ..operator(
+        "negate",
+        "The same with the other sign, written `-x`.",
+        &[Parameter::required("value", NUMERIC, "what changes its sign")],
+    )
 };
 
 static PLUS_MINUS: Entry = Entry {
@@ -158,7 +186,11 @@ static PLUS_MINUS: Entry = Entry {
         "±",
         "A normal random variable, given by its centre and one standard deviation; each place in the text is a variable of its own.",
         &two(
-            Parameter::required("centre", &["quantity", "instant"], "the mean, which is also the nominal value"),
+            Parameter::required(
+                "centre",
+                &["quantity", "instant"],
+                "the mean, which is also the nominal value",
+            ),
             Parameter::required("spread", &["quantity"], "one standard deviation; a duration for an instant"),
         ),
     )
@@ -180,9 +212,12 @@ static TO: Entry = Entry {
             first.unit.factor_to(&last.unit)?;
             Ok(Shape::Range(first.unit))
         }
-        (first, last) => Err(Fault::new("wrong-argument", format!("found {} and {}", first.describe(), last.describe()))
-            .help("both ends need the same kind: two instants (1850..1900 CE) or two quantities (19..23 kyr)")
-            .into()),
+        (first, last) => Err(Fault::new(
+            "wrong-argument",
+            format!("found {} and {}", first.describe(), last.describe()),
+        )
+        .help("both ends need the same kind: two instants (1850..1900 CE) or two quantities (19..23 kyr)")
+        .into()),
     },
     body: Body::PerMember(|call| match (call.value("first")?.as_ref(), call.value("last")?.as_ref()) {
         (Value::Instant(first), Value::Instant(last)) => Ok(Value::Span(TimeSpan::between(first, last)?)),
@@ -194,10 +229,14 @@ static TO: Entry = Entry {
         }
         (first, _) => Err(wrong_kind("first", first).into()),
     }),
-    ..operator("..", "A span of time or a range, both ends in; a calendar year as an end counts whole.", &two(
-        Parameter::required("first", &["instant", "quantity"], "one end"),
-        Parameter::required("last", &["instant", "quantity"], "the other end"),
-    ))
+    ..operator(
+        "..",
+        "A span of time or a range, both ends in; a calendar year as an end counts whole.",
+        &two(
+            Parameter::required("first", &["instant", "quantity"], "one end"),
+            Parameter::required("last", &["instant", "quantity"], "the other end"),
+        ),
+    )
 };
 
 static BY: Entry = Entry {
@@ -216,21 +255,30 @@ static BY: Entry = Entry {
     reads_clock: ReadsClock::Never,
     shape: |_| Ok(Shape::Clock),
     body: Body::PerMember(|call| {
-        let Some(span) = call.span("span")? else { return Err(Fault::new("missing-argument", "no span").into()) };
+        let Some(span) = call.span("span")? else {
+            return Err(Fault::new("missing-argument", "no span").into());
+        };
         let step_years = call.certain("step")?;
         let step = call.value("step")?;
         let days = match step.as_ref() {
-            Value::Quantity(step) if step.measure.unit.to_string() == "day" && step.first().fract().abs() < 1e-9 => {
+            Value::Quantity(step)
+                if step.measure.unit.to_string() == "day" && step.first().fract().abs() < 1e-9 =>
+            {
                 Some(step.first() as i64)
             }
             _ => None,
         };
         Ok(Value::Clock(Arc::new(Clock::new(&span, step_years, days, None)?)))
     }),
-    ..operator("by", "A span divided into a clock.", &two(
-        Parameter::required("span", &["span"], "what is divided"),
-        Parameter::required("step", &["duration"], "the length of a step; it must divide the span").in_unit("yr"),
-    ))
+    ..operator(
+        "by",
+        "A span divided into a clock.",
+        &two(
+            Parameter::required("span", &["span"], "what is divided"),
+            Parameter::required("step", &["duration"], "the length of a step; it must divide the span")
+                .in_unit("yr"),
+        ),
+    )
 };
 
 static IN: Entry = Entry {
@@ -248,7 +296,8 @@ static IN: Entry = Entry {
         (Shape::Quantity(measure), Target::Unit(unit)) => Ok(Shape::Quantity(measure.convert(&unit)?.0)),
         (Shape::Series(measure), Target::Unit(unit)) => Ok(Shape::Series(measure.convert(&unit)?.0)),
         (Shape::Bundle(parts), Target::Unit(unit)) => {
-            let convert = |(label, measure): &(Arc<str>, Measure)| Ok((label.clone(), measure.convert(&unit)?.0));
+            let convert =
+                |(label, measure): &(Arc<str>, Measure)| Ok((label.clone(), measure.convert(&unit)?.0));
             Ok(Shape::Bundle(parts.iter().map(convert).collect::<Result<_, Fault>>()?))
         }
         (shape, _) => Err(Fault::new("wrong-argument", format!("{} is not shown in that", shape.describe()))
@@ -279,10 +328,14 @@ static IN: Entry = Entry {
             (other, _) => Err(wrong_kind("value", other).into()),
         }
     }),
-    ..operator("in", "Convert to another unit, or show an instant in another era.", &two(
-        Parameter::required("value", NUMERIC_OR_INSTANT, "what is converted"),
-        Parameter::required("unit", &["text"], "the unit or era, written without quotes"),
-    ))
+    ..operator(
+        "in",
+        "Convert to another unit, or show an instant in another era.",
+        &two(
+            Parameter::required("value", NUMERIC_OR_INSTANT, "what is converted"),
+            Parameter::required("unit", &["text"], "the unit or era, written without quotes"),
+        ),
+    )
 };
 
 pub(super) const FAMILY: &[&Entry] =
@@ -326,7 +379,9 @@ fn numeric_shape(measure: Measure, operands: &[Shape]) -> Shape {
 fn sum_shape(call: &Call<'_>) -> Result<Shape, Stop> {
     match (call.shape("left")?, call.shape("right")?) {
         (Shape::Instant(_), Shape::Instant(_)) => {
-            Err(Fault::new("wrong-argument", "two instants cannot be added").help("subtract them for a duration").into())
+            Err(Fault::new("wrong-argument", "two instants cannot be added")
+                .help("subtract them for a duration")
+                .into())
         }
         (Shape::Instant(era), other) | (other, Shape::Instant(era)) => {
             moved_instant(&other)?;
@@ -356,9 +411,12 @@ fn difference_shape(call: &Call<'_>) -> Result<Shape, Stop> {
 fn moved_instant(by: &Shape) -> Result<(), Stop> {
     match by {
         Shape::Quantity(measure) if measure.unit.is_time() => Ok(()),
-        other => Err(Fault::new("wrong-argument", format!("an instant moves by a duration, not by {}", other.describe()))
-            .help("write for instance `1850 CE + 30 yr`")
-            .into()),
+        other => Err(Fault::new(
+            "wrong-argument",
+            format!("an instant moves by a duration, not by {}", other.describe()),
+        )
+        .help("write for instance `1850 CE + 30 yr`")
+        .into()),
     }
 }
 
@@ -394,7 +452,8 @@ fn sum(call: &Call<'_>, sign: f64) -> Result<Value, Stop> {
             let factor = duration_unit(Era::Ce)?.factor_to(&unit)?;
             Ok(Value::Quantity(Quantity { values: years.times(factor), measure: Measure::of(unit) }))
         }
-        (Value::Instant(instant), Value::Quantity(duration)) | (Value::Quantity(duration), Value::Instant(instant)) => {
+        (Value::Instant(instant), Value::Quantity(duration))
+        | (Value::Quantity(duration), Value::Instant(instant)) => {
             let moved = instant.years.zip(&years_of(duration)?, |year, years| year + sign * years);
             Ok(Value::Instant(Instant::at(moved, instant.era, instant.width_years)))
         }
@@ -473,10 +532,13 @@ fn power_measure(call: &Call<'_>) -> Result<Measure, Stop> {
     let exponent = call.certain("exponent")?;
     let whole = exponent.round();
     if (exponent - whole).abs() > 1e-12 || whole.abs() > 20.0 {
-        return Err(Fault::new("fractional-power", format!("only a whole power can be taken of {}", base.unit))
-            .blame("exponent")
-            .help("divide by a quantity of the same unit first, so that a plain number is raised")
-            .into());
+        return Err(Fault::new(
+            "fractional-power",
+            format!("only a whole power can be taken of {}", base.unit),
+        )
+        .blame("exponent")
+        .help("divide by a quantity of the same unit first, so that a plain number is raised")
+        .into());
     }
     Ok(Measure::of(Unit::number().times(&base.unit, whole as i8)))
 }
@@ -493,7 +555,9 @@ fn power(call: &Call<'_>) -> Result<Value, Stop> {
         if power.is_finite() { power } else { f64::NAN }
     };
     Ok(match numeric(call, "base")? {
-        Numeric::Quantity(base) => Value::Quantity(Quantity { values: base.values.zip(&exponent, raise), measure }),
+        Numeric::Quantity(base) => {
+            Value::Quantity(Quantity { values: base.values.zip(&exponent, raise), measure })
+        }
         Numeric::Series(base) => Value::Series(base.with(base.values.zip(&exponent, raise), measure)),
     })
 }
@@ -502,11 +566,12 @@ fn spread_shape(call: &Call<'_>) -> Result<Shape, Stop> {
     let centre = call.shape("centre")?;
     let spread = call.measure("spread")?;
     match &centre {
-        Shape::Instant(_) if !spread.unit.is_time() => {
-            Err(Fault::new("wrong-argument", format!("the spread of an instant is a duration, not {}", call.shape("spread")?.describe()))
-                .blame("spread")
-                .into())
-        }
+        Shape::Instant(_) if !spread.unit.is_time() => Err(Fault::new(
+            "wrong-argument",
+            format!("the spread of an instant is a duration, not {}", call.shape("spread")?.describe()),
+        )
+        .blame("spread")
+        .into()),
         Shape::Quantity(measure) => {
             spread.unit.factor_to(&measure.unit)?;
             Ok(centre)
@@ -519,14 +584,18 @@ fn plus_minus(call: &Call<'_>) -> Result<Value, Stop> {
     let spread = call.value("spread")?;
     let Value::Quantity(spread) = spread.as_ref() else { return Err(wrong_kind("spread", &spread).into()) };
     if spread.values.data().iter().any(|value| *value < 0.0) {
-        return Err(Fault::new("negative-spread", "after ± stands a standard deviation, which is not negative")
-            .blame("spread")
-            .into());
+        return Err(Fault::new(
+            "negative-spread",
+            "after ± stands a standard deviation, which is not negative",
+        )
+        .blame("spread")
+        .into());
     }
     let drawn = |centre: &Block, spread: &Block| match call.context.path() {
         Path::Nominal => centre.clone(),
         Path::Block { .. } => {
-            let deviation = spread.zip(&Block::column(call.context.standard_normals()), |size, draw| size * draw);
+            let deviation =
+                spread.zip(&Block::column(call.context.standard_normals()), |size, draw| size * draw);
             centre.zip(&deviation, |centre, deviation| centre + deviation)
         }
     };

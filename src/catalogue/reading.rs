@@ -10,7 +10,8 @@ use crate::base::Fault;
 use crate::files::{self, AxisForm, FileFault, ReadEra, SeriesOptions};
 use crate::language::{Choice, Parameter, Signature};
 use crate::value::{
-    Axis, Block, Dimension, Era, Forcing, ForcingKind, Measure, Quantity, Reading, Series, Shape, Standing, Unit, Value,
+    Axis, Block, Dimension, Era, Forcing, ForcingKind, Measure, Quantity, Reading, Series, Shape, Standing,
+    Unit, Value,
 };
 
 static LOAD: Entry = Entry {
@@ -65,7 +66,9 @@ fn load(call: &Call<'_>) -> Result<Value, Stop> {
     let options = SeriesOptions {
         time: call.text("time")?.map(|text| text.to_string()),
         value: call.text("value")?.map(|text| text.to_string()),
-        form: call.choice("as").map(|(word, _)| if word == "steps" { AxisForm::Steps } else { AxisForm::Instants }),
+        form: call
+            .choice("as")
+            .map(|(word, _)| if word == "steps" { AxisForm::Steps } else { AxisForm::Instants }),
         missing: call.text("missing")?.into_iter().map(|text| text.to_string()).collect(),
         ..SeriesOptions::default()
     };
@@ -109,24 +112,31 @@ fn file_unit(call: &Call<'_>, in_file: Option<&str>, path: &str) -> Result<Unit,
             let fault = Fault::new("unknown-unit", format!("`{}` is no unit", fault.word)).blame("unit");
             match near {
                 Some(near) => fault.help(near),
-                None => fault.help("units are written such as \"W/m2\", \"ppm\", \"degC\"; \"1\" is a plain number"),
+                None => fault
+                    .help("units are written such as \"W/m2\", \"ppm\", \"degC\"; \"1\" is a plain number"),
             }
         })?;
-        if let Some(other) = in_file.and_then(|text| Unit::parse_header(text).ok()).filter(|other| *other != unit) {
+        if let Some(other) =
+            in_file.and_then(|text| Unit::parse_header(text).ok()).filter(|other| *other != unit)
+        {
             call.context.note(format!("{path}: the file says {other}; read as {unit}, as told"));
         }
         return Ok(unit);
     }
     match in_file {
         None => {
-            call.context.note(format!("{path}: no unit is given, so its values are plain numbers; `unit:` says it"));
+            call.context
+                .note(format!("{path}: no unit is given, so its values are plain numbers; `unit:` says it"));
             Ok(Unit::number())
         }
         Some(text) => Unit::parse_header(text).map_err(|_| {
-            Fault::new("unknown-unit", format!("{path} gives its unit as \"{text}\", which is no unit known here"))
-                .blame("file")
-                .help("say the unit: `load(…, unit: \"W/m2\")`")
-                .into()
+            Fault::new(
+                "unknown-unit",
+                format!("{path} gives its unit as \"{text}\", which is no unit known here"),
+            )
+            .blame("file")
+            .help("say the unit: `load(…, unit: \"W/m2\")`")
+            .into()
         }),
     }
 }
@@ -140,7 +150,8 @@ fn loaded_measure(unit: Unit) -> Measure {
 }
 
 fn made_measure(unit: Unit) -> Measure {
-    let forcing = (unit.to_string() == "W/m2").then_some(Forcing { kind: ForcingKind::Undeclared, reference: None });
+    let forcing =
+        (unit.to_string() == "W/m2").then_some(Forcing { kind: ForcingKind::Undeclared, reference: None });
     Measure { forcing, ..Measure::of(unit) }
 }
 
@@ -151,7 +162,11 @@ static SERIES: Entry = Entry {
     signature: Signature {
         parameters: &[
             Parameter::required("values", &["list"], "the values, all in one unit; each may carry its own ±"),
-            Parameter::optional("along", &["clock"], "the clock they stand on, as many steps as there are values"),
+            Parameter::optional(
+                "along",
+                &["clock"],
+                "the clock they stand on, as many steps as there are values",
+            ),
             Parameter::optional("at", &["list"], "the instants they stand at, instead of `along`"),
         ],
     },
@@ -174,7 +189,11 @@ static SERIES: Entry = Entry {
             code: "length-mismatch",
             says: "3 values",
         },
-        Fails { program: "series([1 ppm, 2 degC], at: [1 ka, 2 ka])", code: "unit-mismatch", says: "measure different" },
+        Fails {
+            program: "series([1 ppm, 2 degC], at: [1 ka, 2 ka])",
+            code: "unit-mismatch",
+            says: "measure different",
+        },
         Fails { program: "series([1, 2] ppm)", code: "missing-argument", says: "along" },
     ],
     citations: &[],
@@ -191,9 +210,12 @@ static SERIES: Entry = Entry {
         let mut unit: Option<Unit> = None;
         for item in &items {
             let Shape::Quantity(measure) = item else {
-                return Err(Fault::new("wrong-argument", format!("{} stands in the list of values", item.describe()))
-                    .blame("values")
-                    .into());
+                return Err(Fault::new(
+                    "wrong-argument",
+                    format!("{} stands in the list of values", item.describe()),
+                )
+                .blame("values")
+                .into());
             };
             match &unit {
                 None => unit = Some(measure.unit.clone()),
@@ -203,11 +225,15 @@ static SERIES: Entry = Entry {
             }
         }
         if call.slot("along").is_some() == call.slot("at").is_some() {
-            return Err(Fault::new("missing-argument", "say where the values stand: either `along:` a clock or `at:` a list of instants")
-                .help("for instance `series([1, 2] ppm, along: 1850..1851 CE by 1 yr)`")
-                .into());
+            return Err(Fault::new(
+                "missing-argument",
+                "say where the values stand: either `along:` a clock or `at:` a list of instants",
+            )
+            .help("for instance `series([1, 2] ppm, along: 1850..1851 CE by 1 yr)`")
+            .into());
         }
-        let unit = unit.ok_or_else(|| Fault::new("wrong-argument", "the list of values is empty").blame("values"))?;
+        let unit =
+            unit.ok_or_else(|| Fault::new("wrong-argument", "the list of values is empty").blame("values"))?;
         Ok(Shape::Series(made_measure(unit)))
     },
     body: Body::PerMember(series),
@@ -230,7 +256,9 @@ fn series(call: &Call<'_>) -> Result<Value, Stop> {
         order.sort_by(|left, right| f64::total_cmp(&years(&times, *left), &years(&times, *right)));
         let sorted: Vec<f64> = order.iter().map(|index| years(&times, *index)).collect();
         if sorted.iter().zip(sorted.iter().skip(1)).any(|(before, after)| before >= after) {
-            return Err(Fault::new("two-values-at-once", "the same instant stands twice in `at`").blame("at").into());
+            return Err(Fault::new("two-values-at-once", "the same instant stands twice in `at`")
+                .blame("at")
+                .into());
         }
         let era = times.first().map_or(Era::Ce, |(_, era)| *era);
         if times.len() != quantities.len() {
@@ -253,7 +281,8 @@ fn series(call: &Call<'_>) -> Result<Value, Stop> {
 }
 
 fn lengths(values: usize, places: String, parameter: &'static str) -> Fault {
-    Fault::new("length-mismatch", format!("there are {} for {places}", counted(values, "values"))).blame(parameter)
+    Fault::new("length-mismatch", format!("there are {} for {places}", counted(values, "values")))
+        .blame(parameter)
 }
 
 fn years(times: &[(f64, Era)], index: usize) -> f64 {
@@ -270,10 +299,17 @@ fn instants(call: &Call<'_>) -> Result<Vec<(f64, Era)>, Stop> {
                 // A whole calendar year stands at its middle, as in files.
                 Ok((instant.year() + 0.5 * instant.width_years, instant.era))
             }
-            Value::Instant(_) => Err(Fault::new("must-be-certain", "the instants of a series cannot be uncertain").blame("at").into()),
-            other => Err(Fault::new("wrong-argument", format!("{} stands in the list of instants", other.shape().describe()))
-                .blame("at")
-                .into()),
+            Value::Instant(_) => {
+                Err(Fault::new("must-be-certain", "the instants of a series cannot be uncertain")
+                    .blame("at")
+                    .into())
+            }
+            other => Err(Fault::new(
+                "wrong-argument",
+                format!("{} stands in the list of instants", other.shape().describe()),
+            )
+            .blame("at")
+            .into()),
         })
         .collect()
 }
@@ -306,8 +342,12 @@ static CONSTANT: Entry = Entry {
                 .into());
         };
         let value = call.value("value")?;
-        let Value::Quantity(quantity) = value.as_ref() else { return Err(wrong_kind("value", &value).into()) };
-        let values = quantity.values.map_rows(clock.axis.len(), |from, to| to.fill(from.first().copied().unwrap_or(f64::NAN)));
+        let Value::Quantity(quantity) = value.as_ref() else {
+            return Err(wrong_kind("value", &value).into());
+        };
+        let values = quantity
+            .values
+            .map_rows(clock.axis.len(), |from, to| to.fill(from.first().copied().unwrap_or(f64::NAN)));
         let measure = made_measure(quantity.measure.unit.clone());
         Ok(Value::Series(Series::new(clock.axis.clone(), values, measure, Standing::OnClock)))
     }),

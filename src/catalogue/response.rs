@@ -10,8 +10,8 @@ use super::time::{each_measure, series_or_bundle};
 use crate::base::Fault;
 use crate::language::{Choice, Parameter, Signature};
 use crate::science::two_layer::{
-    Propagator, State, TwoLayerError, TwoLayerParameters, respond_constant_over_steps, respond_linear_between_instants,
-    temperature_over_steps,
+    Propagator, State, TwoLayerError, TwoLayerParameters, respond_constant_over_steps,
+    respond_linear_between_instants, temperature_over_steps,
 };
 use crate::value::{AxisKind, Block, Measure, Model, Series, Shape, Standing, Unit, Value};
 
@@ -78,7 +78,9 @@ static TWO_LAYER: Entry = Entry {
             }
         }
         if out_of_range > 0 {
-            call.context.note(format!("{out_of_range} members of the model are out of range; what follows from them is a gap"));
+            call.context.note(format!(
+                "{out_of_range} members of the model are out of range; what follows from them is a gap"
+            ));
         }
         Ok(Value::Model(model))
     }),
@@ -103,7 +105,8 @@ fn rows(model: &Model) -> usize {
 }
 
 fn parameters(model: &Model, member: usize) -> TwoLayerParameters {
-    let Model::TwoLayer { heat_capacity, deep_heat_capacity, exchange, feedback, heat_uptake_efficacy } = model;
+    let Model::TwoLayer { heat_capacity, deep_heat_capacity, exchange, feedback, heat_uptake_efficacy } =
+        model;
     TwoLayerParameters {
         heat_capacity: heat_capacity.scalar(member),
         deep_heat_capacity: deep_heat_capacity.scalar(member),
@@ -121,15 +124,24 @@ static RESPOND: Entry = Entry {
         parameters: &[
             Parameter::required("forcing", &["series", "bundle"], "the forcing").in_unit("W/m2"),
             Parameter::required("model", &["model"], "the response model"),
-            Parameter::optional("within_step", &[], "how the forcing runs within a step; by default constant over steps, linear between instants")
-                .or_choices(&[
-                    Choice::plain("constant", "constant within each step; between instants, the later value holds"),
-                    Choice::plain("linear", "straight between instants"),
-                ]),
+            Parameter::optional(
+                "within_step",
+                &[],
+                "how the forcing runs within a step; by default constant over steps, linear between instants",
+            )
+            .or_choices(&[
+                Choice::plain(
+                    "constant",
+                    "constant within each step; between instants, the later value holds",
+                ),
+                Choice::plain("linear", "straight between instants"),
+            ]),
         ],
     },
     result: "the temperature change in degC: step means on a clock of steps, values at the instants on one of instants",
-    equation: Some(r"\mathbf{T}(t + h) = e^{hA}\,\mathbf{T}(t) + \int_0^h e^{(h-s)A}\,\mathbf{b}\,F(t+s)\,ds"),
+    equation: Some(
+        r"\mathbf{T}(t + h) = e^{hA}\,\mathbf{T}(t) + \int_0^h e^{(h-s)A}\,\mathbf{b}\,F(t+s)\,ds",
+    ),
     gaps: "The response begins in equilibrium at the first value; after a gap inside, everything is a gap. Data from before the clock's start are used where there are any.",
     shows: &[Shows {
         program: "clock = 1850..1950 CE by 1 yr\nrespond(constant(3.45 W/m2), two_layer())",
@@ -195,7 +207,9 @@ pub(super) fn respond(
             };
             let longer = if earlier == 0 { clock.axis.clone() } else { clock.extended_back(earlier).axis };
             if earlier > 0 && context.path() == Path::Nominal {
-                context.note(format!("{name}: the response begins with the data, {earlier} steps before the clock"));
+                context.note(format!(
+                    "{name}: the response begins with the data, {earlier} steps before the clock"
+                ));
             }
             let values = bring(context, forcing, name, &longer)?;
             (longer, values, earlier)
@@ -203,10 +217,13 @@ pub(super) fn respond(
     };
     let constant = match (within_step, axis.kind) {
         (Some("linear"), AxisKind::Steps) => {
-            return Err(Fault::new("wrong-argument", "a forcing is linear between instants, and this one is on steps")
-                .blame("within_step")
-                .help("leave `within_step` out, or put the forcing on a clock of instants: `on(instants(clock))`")
-                .into());
+            return Err(Fault::new(
+                "wrong-argument",
+                "a forcing is linear between instants, and this one is on steps",
+            )
+            .blame("within_step")
+            .help("leave `within_step` out, or put the forcing on a clock of instants: `on(instants(clock))`")
+            .into());
         }
         (Some("constant"), _) | (None, AxisKind::Steps) => true,
         _ => false,
@@ -233,13 +250,23 @@ pub(super) fn respond(
                 continue;
             }
             let response = if axis.kind == AxisKind::Steps {
-                respond_constant_over_steps(&parameters, lengths.get(first..).unwrap_or(&[]), row, State::default())
-                    .map(|response| response.temperature)
+                respond_constant_over_steps(
+                    &parameters,
+                    lengths.get(first..).unwrap_or(&[]),
+                    row,
+                    State::default(),
+                )
+                .map(|response| response.temperature)
             } else if constant {
                 held_between_instants(&parameters, axis.starts().get(first..).unwrap_or(&[]), row)
             } else {
-                respond_linear_between_instants(&parameters, axis.starts().get(first..).unwrap_or(&[]), row, State::default())
-                    .map(|response| response.temperature)
+                respond_linear_between_instants(
+                    &parameters,
+                    axis.starts().get(first..).unwrap_or(&[]),
+                    row,
+                    State::default(),
+                )
+                .map(|response| response.temperature)
             };
             if let Ok(response) = response {
                 out.copy_from_slice(&response);
@@ -258,7 +285,12 @@ pub(super) fn respond(
     })
 }
 
-fn forcing_series(forcing: &Series, axis: Arc<crate::value::Axis>, values: Block, measure: Measure) -> Series {
+fn forcing_series(
+    forcing: &Series,
+    axis: Arc<crate::value::Axis>,
+    values: Block,
+    measure: Measure,
+) -> Series {
     Series { axis, values, measure, standing: forcing.standing, longest_gap_years: forcing.longest_gap_years }
 }
 
@@ -290,13 +322,18 @@ fn note_gaps(context: &dyn Context, forcing: &Block, name: &str, axis: &crate::v
     }
     let row = forcing.member(0);
     let Some(first) = row.iter().position(|value| !value.is_nan()) else { return };
-    let place = |index: usize| axis.starts().get(index).map_or_else(String::new, |year| axis.era.format(*year));
+    let place =
+        |index: usize| axis.starts().get(index).map_or_else(String::new, |year| axis.era.format(*year));
     if first > 0 {
-        context.note(format!("{name}: the response begins in equilibrium with the first value, at {}", place(first)));
+        context.note(format!(
+            "{name}: the response begins in equilibrium with the first value, at {}",
+            place(first)
+        ));
     }
     let gap = row.iter().enumerate().skip(first).find(|(_, value)| value.is_nan());
     if let Some((index, _)) = gap {
-        context.note(format!("{name}: the forcing has a gap at {}, so the response ends there", place(index)));
+        context
+            .note(format!("{name}: the forcing has a gap at {}, so the response ends there", place(index)));
     }
 }
 

@@ -16,8 +16,16 @@ static TABLE: Entry = Entry {
     summary: "The numbers of a result in rows and columns.",
     signature: Signature {
         parameters: &[
-            Parameter::required("value", &["attribution", "series", "bundle", "model", "quantity"], "what to show"),
-            Parameter::optional("change", &["span"], "for an attribution: the later window of the change to explain"),
+            Parameter::required(
+                "value",
+                &["attribution", "series", "bundle", "model", "quantity"],
+                "what to show",
+            ),
+            Parameter::optional(
+                "change",
+                &["span"],
+                "for an attribution: the later window of the change to explain",
+            ),
             Parameter::optional("from", &["span"], "for an attribution: the earlier window"),
         ],
     },
@@ -46,10 +54,16 @@ static TABLE: Entry = Entry {
     shape: |call| {
         let windows = call.slot("change").is_some() || call.slot("from").is_some();
         if windows && call.shape("value")? != Shape::Attribution {
-            return Err(Fault::new("wrong-argument", "only the table of an attribution takes windows").blame("change").into());
+            return Err(Fault::new("wrong-argument", "only the table of an attribution takes windows")
+                .blame("change")
+                .into());
         }
         if call.slot("change").is_some() != call.slot("from").is_some() {
-            return Err(Fault::new("missing-argument", "a change needs both its windows, `change:` and `from:`").into());
+            return Err(Fault::new(
+                "missing-argument",
+                "a change needs both its windows, `change:` and `from:`",
+            )
+            .into());
         }
         Ok(Shape::Table)
     },
@@ -86,20 +100,30 @@ fn table(call: &Call<'_>) -> Result<Table, Stop> {
         Value::Quantity(quantity) => {
             let mut columns = vec![Column::in_unit("value", &quantity.measure.unit)];
             let mut row = vec![Cell::number(quantity.first())];
-            if let Some(spread) = call.slot("value").map(|slot| call.context.spread(slot)).transpose()?.flatten() {
-                for (name, values) in [("median", &spread.median), ("low", &spread.low), ("high", &spread.high)] {
+            if let Some(spread) =
+                call.slot("value").map(|slot| call.context.spread(slot)).transpose()?.flatten()
+            {
+                for (name, values) in
+                    [("median", &spread.median), ("low", &spread.low), ("high", &spread.high)]
+                {
                     columns.push(Column::in_unit(name, &quantity.measure.unit));
                     row.push(Cell::number(values.first().copied().unwrap_or(f64::NAN)));
                 }
             }
             Ok(Table { title: label.to_string(), columns, rows: vec![row], notes: Vec::new() })
         }
-        other => Err(Fault::new("wrong-argument", format!("found {}", other.shape().describe())).blame("value").into()),
+        other => Err(Fault::new("wrong-argument", format!("found {}", other.shape().describe()))
+            .blame("value")
+            .into()),
     }
 }
 
 fn time_column(series: &Series) -> Column {
-    if series.axis.era.is_age() { Column::in_unit("age", series.axis.era.symbol()) } else { Column::plain("year CE") }
+    if series.axis.era.is_age() {
+        Column::in_unit("age", series.axis.era.symbol())
+    } else {
+        Column::plain("year CE")
+    }
 }
 
 /// Calendar steps are named by the year they begin in, as they were written; ages by their number.
@@ -110,7 +134,8 @@ fn time_rows(series: &Series, values: &[Vec<f64>]) -> Vec<Vec<Cell>> {
         .iter()
         .enumerate()
         .map(|(row, start)| {
-            let numbers = values.iter().map(|column| Cell::number(column.get(row).copied().unwrap_or(f64::NAN)));
+            let numbers =
+                values.iter().map(|column| Cell::number(column.get(row).copied().unwrap_or(f64::NAN)));
             std::iter::once(Cell::number(named(start))).chain(numbers).collect()
         })
         .collect()

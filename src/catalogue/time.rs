@@ -16,7 +16,11 @@ static STEPS: Entry = Entry {
     room: Room::Time,
     summary: "The clock made of steps: each value is the mean over a step.",
     signature: Signature {
-        parameters: &[Parameter::required("clock", &["clock"], "a clock, most often of ages, whose default is instants")],
+        parameters: &[Parameter::required(
+            "clock",
+            &["clock"],
+            "a clock, most often of ages, whose default is instants",
+        )],
     },
     result: "a clock of steps; between n instants lie n − 1 steps",
     equation: None,
@@ -51,7 +55,11 @@ static INSTANTS: Entry = Entry {
     room: Room::Time,
     summary: "The clock made of instants: each value holds at a point in time.",
     signature: Signature {
-        parameters: &[Parameter::required("clock", &["clock"], "a clock, most often of the calendar, whose default is steps")],
+        parameters: &[Parameter::required(
+            "clock",
+            &["clock"],
+            "a clock, most often of the calendar, whose default is steps",
+        )],
     },
     result: "a clock of instants, at the beginning of each step",
     equation: None,
@@ -125,7 +133,11 @@ static WITHIN: Entry = Entry {
     signature: Signature {
         parameters: &[
             Parameter::required("series", SERIES, "a series or bundle"),
-            Parameter::required("span", &["span"], "the span, both ends in; steps count when they lie inside whole"),
+            Parameter::required(
+                "span",
+                &["span"],
+                "the span, both ends in; steps count when they lie inside whole",
+            ),
         ],
     },
     result: "the same, with the values outside left away",
@@ -149,7 +161,9 @@ static WITHIN: Entry = Entry {
     labels: false,
     shape: |call| call.shape("series"),
     body: Body::PerMember(|call| {
-        let Some(span) = call.span("span")? else { return Err(Fault::new("missing-argument", "no span").into()) };
+        let Some(span) = call.span("span")? else {
+            return Err(Fault::new("missing-argument", "no span").into());
+        };
         let name = call.label("series");
         series_or_bundle(&*call.value("series")?, &name, &mut |series, label| part(series, label, &span))
     }),
@@ -178,7 +192,12 @@ static LAG: Entry = Entry {
     signature: Signature {
         parameters: &[
             Parameter::required("series", SERIES, "a series or bundle"),
-            Parameter::required("by", &["duration"], "how much later; negative for earlier; any part of a step").in_unit("yr"),
+            Parameter::required(
+                "by",
+                &["duration"],
+                "how much later; negative for earlier; any part of a step",
+            )
+            .in_unit("yr"),
         ],
     },
     result: "the same, moved in time",

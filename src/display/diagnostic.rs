@@ -5,7 +5,11 @@ use crate::base::{Diagnostic, LineIndex, Mark, Source, SourceId};
 /// A diagnostic as text: the message, the source line with carets in the cell where the cause stands, and help.
 ///
 /// `sources` finds the text of a span; `colour` adds ANSI colours.
-pub fn diagnostic(diagnostic: &Diagnostic, sources: &dyn Fn(SourceId) -> Option<Source>, colour: bool) -> String {
+pub fn diagnostic(
+    diagnostic: &Diagnostic,
+    sources: &dyn Fn(SourceId) -> Option<Source>,
+    colour: bool,
+) -> String {
     let mut marks: Vec<(AnnotationKind, &Mark)> = vec![(AnnotationKind::Primary, &diagnostic.primary)];
     marks.extend(diagnostic.secondary.iter().map(|mark| (AnnotationKind::Context, mark)));
     let mut texts: Vec<Source> = Vec::new();
@@ -19,12 +23,13 @@ pub fn diagnostic(diagnostic: &Diagnostic, sources: &dyn Fn(SourceId) -> Option<
     let title = Level::ERROR.primary_title(&*diagnostic.message).id(diagnostic.code);
     let mut group = Group::with_title(title);
     for source in &texts {
-        let annotations = marks.iter().filter(|(_, mark)| mark.span.source == source.id).map(|(kind, mark)| {
-            let end = mark.span.end.min(source.text.len());
-            let range = mark.span.start.min(end)..end;
-            let annotation = kind.span(range);
-            if mark.label.is_empty() { annotation } else { annotation.label(&*mark.label) }
-        });
+        let annotations =
+            marks.iter().filter(|(_, mark)| mark.span.source == source.id).map(|(kind, mark)| {
+                let end = mark.span.end.min(source.text.len());
+                let range = mark.span.start.min(end)..end;
+                let annotation = kind.span(range);
+                if mark.label.is_empty() { annotation } else { annotation.label(&*mark.label) }
+            });
         group = group.element(Snippet::source(&*source.text).path(&*source.name).annotations(annotations));
     }
     for detail in &diagnostic.details {

@@ -45,7 +45,8 @@ pub fn text(shown: &Shown) -> String {
         Shown::Table(content) => table(content),
         Shown::Bundle { components, total } => {
             let width = components.iter().map(|(label, _)| label.chars().count()).max().unwrap_or(0).max(5);
-            let row = |label: &str, series: &ShownSeries| format!("{label:width$}  {}\n", series_line(series));
+            let row =
+                |label: &str, series: &ShownSeries| format!("{label:width$}  {}\n", series_line(series));
             let rows: String = components.iter().map(|(label, series)| row(label, series)).collect();
             rows + &row("total", total)
         }
@@ -97,8 +98,13 @@ fn instant(era: Era, nominal: f64, spread: Option<&Spread>) -> String {
 
 fn series_line(series: &ShownSeries) -> String {
     let unit = after(&series.measure.unit);
-    let known: Vec<usize> =
-        series.nominal.iter().enumerate().filter(|(_, value)| !value.is_nan()).map(|(index, _)| index).collect();
+    let known: Vec<usize> = series
+        .nominal
+        .iter()
+        .enumerate()
+        .filter(|(_, value)| !value.is_nan())
+        .map(|(index, _)| index)
+        .collect();
     let axis = series.axis.describe();
     let (Some(first), Some(last)) = (known.first(), known.last()) else { return format!("{axis}: all gaps") };
     let at = |index: &usize| series.nominal.get(*index).copied().unwrap_or(f64::NAN);
@@ -177,14 +183,18 @@ pub fn table(content: &Table) -> String {
         .columns
         .iter()
         .enumerate()
-        .filter(|(index, _)| content.rows.iter().any(|row| row.get(*index).is_some_and(|cell| *cell != Cell::Empty)))
+        .filter(|(index, _)| {
+            content.rows.iter().any(|row| row.get(*index).is_some_and(|cell| *cell != Cell::Empty))
+        })
         .map(|(index, column)| {
             let cells: Vec<&Cell> = shown.iter().filter_map(|row| row.get(index)).collect();
             std::iter::once(heading(column)).chain(aligned(&cells)).collect()
         })
         .collect();
-    let widths: Vec<usize> =
-        columns.iter().map(|cells| cells.iter().map(|cell| cell.chars().count()).max().unwrap_or(0)).collect();
+    let widths: Vec<usize> = columns
+        .iter()
+        .map(|cells| cells.iter().map(|cell| cell.chars().count()).max().unwrap_or(0))
+        .collect();
     let mut out = String::new();
     for line in 0..=shown.len() {
         let cells: Vec<String> = columns
@@ -236,7 +246,13 @@ fn aligned(cells: &[&Cell]) -> Vec<String> {
                 return text;
             }
             // Spaces stand for missing decimals, so that the points stand in one column.
-            let missing = if text.contains('.') { most - decimals(&text).min(most) } else if most > 0 { most + 1 } else { 0 };
+            let missing = if text.contains('.') {
+                most - decimals(&text).min(most)
+            } else if most > 0 {
+                most + 1
+            } else {
+                0
+            };
             text + &" ".repeat(missing)
         })
         .collect()

@@ -53,6 +53,12 @@ fn write_expression(out: &mut String, expression: &Expression) -> fmt::Result {
         ExpressionKind::Binary { operator, left, right } => {
             write_expression(out, left)?;
             match operator {
+                // `2 m ^ 3` is a power of 2 m, `2 m^3` a volume.
+                BinaryOperator::Power
+                    if matches!(left.kind, ExpressionKind::Number { unit: Some(_), .. }) =>
+                {
+                    out.push_str(" ^ ");
+                }
                 BinaryOperator::To | BinaryOperator::Power => out.push_str(operator.symbol()),
                 BinaryOperator::By
                 | BinaryOperator::Plus

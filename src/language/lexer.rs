@@ -34,9 +34,9 @@ pub(super) struct Token {
     pub(super) span: Span,
 }
 
-/// A fault of the lexer; `incomplete` where the text ended inside a token or a bracket.
+/// A fault of the lexer; `incomplete` where the text ended inside a token.
 pub(super) struct LexicalError {
-    pub(super) diagnostic: Diagnostic,
+    pub(super) diagnostic: Box<Diagnostic>,
     pub(super) incomplete: bool,
 }
 
@@ -49,11 +49,18 @@ enum Before {
     Other,
 }
 
-pub(super) fn tokens(text: &str, source: SourceId) -> Result<Vec<Token>, LexicalError> {
+/// The tokens of a text, and the innermost bracket that the text leaves open.
+pub(super) struct Lexed {
+    pub(super) tokens: Vec<Token>,
+    pub(super) unclosed: Option<(&'static str, Span)>,
+}
+
+pub(super) fn tokens(text: &str, source: SourceId) -> Result<Lexed, LexicalError> {
     let mut found: Vec<Token> = Vec::new();
     let mut open: Vec<(&'static str, Span)> = Vec::new();
     let mut before = Before::Other;
-    let mut at = 0;
+    // Some editors begin a file with a byte order mark.
+    let mut at = text.len() - text.trim_start_matches('\u{feff}').len();
     loop {
         let rest = text.get(at..).unwrap_or("");
         let (rest, skipped) = blank(rest);
@@ -73,14 +80,21 @@ pub(super) fn tokens(text: &str, source: SourceId) -> Result<Vec<Token>, Lexical
         let (kind, length) = token(rest, at, source)?;
         let span = Span::new(source, at, at + length);
         at += length;
+        if let TokenKind::Number(value) = kind
+            && !value.is_finite()
+        {
+            let fault = Fault::new("syntax", "this number is too large").help("the largest is about 1.8e308");
+            return Err(LexicalError { diagnostic: fault.at(span).into(), incomplete: false });
+        }
         if let TokenKind::Fixed(sign) = kind {
             match sign {
                 "(" | "[" => {
                     open.push((sign, span));
                     if open.len() > NESTING_LIMIT {
-                        let fault = Fault::new("nesting", format!("brackets nest deeper than {NESTING_LIMIT} here"))
-                            .help("give the inner parts names of their own");
-                        return Err(LexicalError { diagnostic: fault.at(span), incomplete: false });
+                        let fault =
+                            Fault::new("nesting", format!("brackets nest deeper than {NESTING_LIMIT} here"))
+                                .help("give the inner parts names of their own");
+                        return Err(LexicalError { diagnostic: fault.at(span).into(), incomplete: false });
                     }
                 }
                 ")" | "]" => {
@@ -89,16 +103,26 @@ pub(super) fn tokens(text: &str, source: SourceId) -> Result<Vec<Token>, Lexical
                         Some((opened, _)) if opened == expected => {}
                         Some((opened, place)) => {
                             let closing = if opened == "(" { ")" } else { "]" };
-                            let mut diagnostic = Fault::new("syntax", format!("found `{sign}` where `{opened}` is to be closed"))
-                                .label(format!("I was expecting `{closing}`"))
-                                .at(span);
-                            diagnostic.secondary.push(crate::base::Mark { span: place, label: "opened here".to_owned() });
-                            return Err(LexicalError { diagnostic, incomplete: false });
+                            let mut diagnostic = Fault::new(
+                                "syntax",
+                                format!("found `{sign}` where `{opened}` is to be closed"),
+                            )
+                            .label(format!("I was expecting `{closing}`"))
+                            .help(format!("close it with `{closing}` first"))
+                            .at(span);
+                            diagnostic
+                                .secondary
+                                .push(crate::base::Mark { span: place, label: "opened here".to_owned() });
+                            return Err(LexicalError { diagnostic: diagnostic.into(), incomplete: false });
                         }
                         None => {
-                            let fault = Fault::new("syntax", format!("found `{sign}`, but no bracket is open"))
-                                .help(format!("take the `{sign}` away, or open one before it"));
-                            return Err(LexicalError { diagnostic: fault.at(span), incomplete: false });
+                            let fault =
+                                Fault::new("syntax", format!("found `{sign}`, but no bracket is open"))
+                                    .help(format!("take the `{sign}` away, or open one before it"));
+                            return Err(LexicalError {
+                                diagnostic: fault.at(span).into(),
+                                incomplete: false,
+                            });
                         }
                     }
                 }
@@ -106,7 +130,10 @@ pub(super) fn tokens(text: &str, source: SourceId) -> Result<Vec<Token>, Lexical
             }
         }
         if kind == TokenKind::Newline && !open.is_empty() {
-            before = Before::Other;
+            // A unit stands on the line of its number; `[x for` and `e in xs]` may stand on two.
+            if before == Before::Quantity {
+                before = Before::Other;
+            }
             continue;
         }
         before = match (&kind, before) {
@@ -125,19 +152,18 @@ pub(super) fn tokens(text: &str, source: SourceId) -> Result<Vec<Token>, Lexical
         }
         found.push(Token { kind, span });
     }
-    if let Some((sign, span)) = open.pop() {
-        let closing = if sign == "(" { ")" } else { "]" };
-        let fault = Fault::new("syntax", format!("this `{sign}` is never closed")).help(format!("close it with `{closing}`"));
-        return Err(LexicalError { diagnostic: fault.at(span), incomplete: true });
-    }
-    Ok(found)
+    Ok(Lexed { tokens: found, unclosed: open.pop() })
+}
+
+fn is_space(letter: char) -> bool {
+    matches!(letter, ' ' | '\t' | '\u{a0}')
 }
 
 /// The rest after spaces and a comment, and how many bytes those took.
 fn blank(text: &str) -> (&str, usize) {
-    let mut rest = text.trim_start_matches([' ', '\t', '\u{a0}']);
+    let mut rest = text.trim_start_matches(is_space);
     if rest.starts_with('#') {
-        rest = rest.find('\n').and_then(|end| rest.get(end..)).unwrap_or("");
+        rest = rest.find(['\n', '\r']).and_then(|end| rest.get(end..)).unwrap_or("");
     }
     (rest, text.len() - rest.len())
 }
@@ -162,31 +188,78 @@ fn strange(rest: &str, at: usize, source: SourceId) -> LexicalError {
     let letter = rest.chars().next().unwrap_or(' ');
     let span = Span::new(source, at, at + letter.len_utf8());
     if letter == '"' {
-        let incomplete = !rest.contains('\n');
-        let fault = Fault::new("syntax", "this text is never closed").help("close it with `\"` on the same line");
-        return LexicalError { diagnostic: fault.at(span), incomplete };
+        return open_text(rest, at, source);
     }
+    let after = rest.chars().nth(1).unwrap_or(' ');
     let help = match letter {
-        '\'' | '“' | '”' | '‘' | '’' => "texts stand in straight double quotes: \"data/spots.csv\"",
+        '\'' | '“' | '”' | '„' | '‘' | '’' | '«' | '»' => {
+            "texts stand in straight double quotes: \"data/spots.csv\""
+        }
+        '.' if after.is_alphabetic() => "a value is handed on by `|>`: x |> scale(2)",
         '.' => "a number needs a digit on both sides of its point; a span is written with two: 1850..2020 CE",
+        '…' => "a span is written with two points: 1850..2020 CE",
         '{' | '}' => "lists stand in square brackets, arguments in round ones",
-        '×' | '·' => "to multiply, write `*`",
+        '×' | '·' | '⋅' => "to multiply, write `*`",
         '÷' => "to divide, write `/`",
         '–' | '—' => "for minus write `-`; for a span write two points: 1850..2020 CE",
         '%' => "write `percent` after a number",
+        '°' => "for degrees Celsius write `degC` after a number, for degrees of arc `deg`",
         '|' => "to hand a value on, write `|>`",
-        '>' | '<' | '!' | '&' => "the language has no comparisons: `within` takes a part of a series",
-        _ => "the language uses letters, digits, and the signs |> .. ± + - * / ^ = ( ) [ ] , : #",
+        '>' | '<' | '!' | '&' | '≤' | '≥' | '≠' => {
+            "the language has no comparisons: `within` takes a part of a series"
+        }
+        ';' => "statements stand on lines of their own",
+        '\\' => "a line goes on inside brackets, and where the next line begins with `|>`",
+        _ if is_superscript(letter) => "a power is written with `^`: x^2, 5 W/m^2",
+        _ => "the language uses letters, digits, and the signs |> .. ± + - * / ^ = ( ) [ ] , : # \"",
     };
-    let fault = Fault::new("syntax", format!("found `{letter}`, which means nothing here")).help(help);
-    LexicalError { diagnostic: fault.at(span), incomplete: false }
+    let invisible = letter.is_control()
+        || letter.is_whitespace()
+        || unicode_normalization::char::is_combining_mark(letter);
+    let fault = if invisible
+        || matches!(letter, '\u{200b}'..='\u{200f}' | '\u{2028}'..='\u{202e}' | '\u{2060}' | '\u{feff}')
+    {
+        Fault::new("syntax", format!("found the character U+{:04X}, which cannot be seen", u32::from(letter)))
+            .help("take it away, or type a space in its place")
+    } else {
+        Fault::new("syntax", format!("found `{letter}`, which means nothing here")).help(help)
+    };
+    LexicalError { diagnostic: fault.at(span).into(), incomplete: false }
+}
+
+/// Why a text that begins here is none: a backslash before another letter, or no quote at its end.
+fn open_text(rest: &str, at: usize, source: SourceId) -> LexicalError {
+    let mut letters = rest.char_indices().skip(1);
+    while let Some((place, letter)) = letters.next() {
+        if matches!(letter, '\n' | '\r') {
+            break;
+        }
+        if letter != '\\' {
+            continue;
+        }
+        match letters.next() {
+            Some((_, '\\' | '"')) => {}
+            None | Some((_, '\n' | '\r')) => break,
+            Some((_, escaped)) => {
+                let span = Span::new(source, at + place, at + place + 1 + escaped.len_utf8());
+                let fault = Fault::new("syntax", format!("found `\\{escaped}` in a text"))
+                    .help("folders are parted by `/`; a backslash is written `\\\\`, a quote `\\\"`");
+                return LexicalError { diagnostic: fault.at(span).into(), incomplete: false };
+            }
+        }
+    }
+    let fault = Fault::new("syntax", "this text is never closed").help("close it with `\"` on the same line");
+    let span = Span::new(source, at, at + 1);
+    LexicalError { diagnostic: fault.at(span).into(), incomplete: !rest.contains(['\n', '\r']) }
 }
 
 fn date(input: &str) -> IResult<&str, TokenKind> {
     let digits = |count: usize| verify(digit1, move |text: &str| text.len() == count);
-    let (rest, (year, _, month, _, day)) =
-        terminated((digits(4), char('-'), digits(2), char('-'), digits(2)), not(peek(one_of("-0123456789."))))
-            .parse(input)?;
+    let (rest, (year, _, month, _, day)) = terminated(
+        (digits(4), char('-'), digits(2), char('-'), digits(2)),
+        not(alt((recognize(char('-')), fraction))),
+    )
+    .parse(input)?;
     let kind = match (year.parse(), month.parse(), day.parse()) {
         (Ok(year), Ok(month), Ok(day)) => TokenKind::Date(year, month, day),
         _ => return Err(nom::Err::Error(nom::error::Error::new(input, nom::error::ErrorKind::Digit))),
@@ -194,10 +267,15 @@ fn date(input: &str) -> IResult<&str, TokenKind> {
     Ok((rest, kind))
 }
 
+/// A point and a digit: what goes on a number, where `..` begins a span.
+fn fraction(input: &str) -> IResult<&str, &str> {
+    recognize((char('.'), digit1)).parse(input)
+}
+
 fn number(input: &str) -> IResult<&str, f64> {
-    let exponent = (one_of("eE"), opt(one_of("+-")), digit1);
-    let (rest, text) = recognize((digit1, opt((char('.'), digit1)), opt(exponent))).parse(input)?;
-    match text.parse::<f64>() {
+    let exponent = (one_of("eE"), opt(one_of("+-−")), digit1);
+    let (rest, text) = recognize((digit1, opt(fraction), opt(exponent))).parse(input)?;
+    match text.replace('−', "-").parse::<f64>() {
         Ok(value) => Ok((rest, value)),
         Err(_) => Err(nom::Err::Error(nom::error::Error::new(input, nom::error::ErrorKind::Float))),
     }
@@ -220,58 +298,70 @@ fn fixed(input: &str) -> IResult<&str, TokenKind> {
     Err(nom::Err::Error(nom::error::Error::new(input, nom::error::ErrorKind::Tag)))
 }
 
+/// Combining marks are letters of a name that is not in NFC yet; `x²` would be taken for a power and is no name.
 fn is_name_letter(letter: char) -> bool {
-    letter.is_alphanumeric() || letter == '_'
+    (letter.is_alphanumeric() && !is_superscript(letter))
+        || letter == '_'
+        || unicode_normalization::char::is_combining_mark(letter)
+}
+
+fn is_superscript(letter: char) -> bool {
+    matches!(letter, '²' | '³' | '¹' | '⁰' | '⁴'..='⁹' | '⁻')
+}
+
+/// NFC, with both micro signs as one.
+fn normal(text: &str) -> String {
+    text.nfc().map(|letter| if letter == '\u{3bc}' { 'µ' } else { letter }).collect()
 }
 
 fn name(input: &str) -> IResult<&str, String> {
-    // Combining marks are letters of a name that is not in NFC yet.
-    let tail = |letter: char| is_name_letter(letter) || unicode_normalization::char::is_combining_mark(letter);
     let (rest, text) =
-        recognize((satisfy(|letter| letter.is_alphabetic() || letter == '_'), take_while(tail))).parse(input)?;
-    Ok((rest, text.nfc().map(|letter| if letter == '\u{3bc}' { 'µ' } else { letter }).collect()))
+        recognize((satisfy(|letter| letter.is_alphabetic() || letter == '_'), take_while(is_name_letter)))
+            .parse(input)?;
+    Ok((rest, normal(text)))
 }
 
 fn quoted(input: &str) -> IResult<&str, String> {
     let escaped = preceded(char('\\'), one_of("\\\""));
-    let plain = satisfy(|letter| !matches!(letter, '"' | '\\' | '\n'));
-    let (rest, inner) =
-        recognize((char('"'), many0_count(alt((escaped, plain))), char('"'))).parse(input)?;
+    let plain = satisfy(|letter| !matches!(letter, '"' | '\\' | '\n' | '\r'));
+    let (rest, inner) = recognize((char('"'), many0_count(alt((escaped, plain))), char('"'))).parse(input)?;
     let inner = inner.get(1..inner.len() - 1).unwrap_or("");
     Ok((rest, inner.replace("\\\"", "\"").replace("\\\\", "\\").nfc().collect()))
 }
 
 /// A unit or era: `W/m2`, `kg/m^2/s`, `W*yr/m2/K`, `1/yr`, `cal BP`. A tight `/` or `*` goes on only before a
-/// letter, so that `W/m2/4` divides.
+/// letter, so that `W/m2/4` divides. The reserved words are no units.
 fn unit_text(input: &str) -> IResult<&str, &str> {
     let letter = |letter: char| letter.is_alphabetic() || matches!(letter, '°' | '%' | '‰');
     let inner = |letter: char| is_name_letter(letter) || matches!(letter, '°' | '%' | '‰');
-    let power = || opt((char('^'), opt(char('-')), digit1));
-    let word = || recognize((satisfy(letter), take_while(inner), power()));
+    let power = || opt((char('^'), opt(one_of("-−")), digit1));
+    let reserved = |text: &&str| {
+        KEYWORDS.iter().any(|keyword| keyword.role == KeywordRole::Word && keyword.text == *text)
+    };
+    let symbol =
+        move || verify(recognize((satisfy(letter), take_while(inner))), move |text| !reserved(&text));
+    let word = || recognize((symbol(), power()));
     let more = recognize((one_of("/*"), word()));
     let reciprocal = recognize((tag("1/"), peek(satisfy(letter))));
     let product = recognize((opt(reciprocal), word(), many0_count(more)));
-    let calibrated = recognize((tag("cal"), take_while1(|letter| letter == ' '), tag("BP"), not(peek(satisfy(is_name_letter)))));
-    let (rest, text) = alt((calibrated, product)).parse(input)?;
-    let reserved = KEYWORDS.iter().any(|keyword| keyword.role == KeywordRole::Word && keyword.text == text);
-    if reserved {
-        return Err(nom::Err::Error(nom::error::Error::new(input, nom::error::ErrorKind::Tag)));
-    }
-    Ok((rest, text))
+    let calibrated =
+        recognize((tag("cal"), take_while1(is_space), tag("BP"), not(peek(satisfy(is_name_letter)))));
+    alt((calibrated, product)).parse(input)
 }
 
 fn tidy_unit(text: &str) -> String {
-    if text.starts_with("cal ") { "cal BP".to_owned() } else { text.nfc().collect() }
+    if text.contains(is_space) { "cal BP".to_owned() } else { normal(text).replace('−', "-") }
 }
 
 impl Token {
     /// How a message names the token.
     pub(super) fn describe(&self) -> String {
         match &self.kind {
-            TokenKind::Number(value) => format!("the number {value}"),
-            TokenKind::Unit(unit) => format!("the unit `{unit}`"),
+            TokenKind::Number(value) if (1e-6..1e16).contains(value) => format!("the number {value}"),
+            TokenKind::Number(value) => format!("the number {value:e}").replace("e0", ""),
+            TokenKind::Unit(unit) => format!("the unit `{}`", shortened(unit)),
             TokenKind::Date(year, month, day) => format!("the date {year:04}-{month:02}-{day:02}"),
-            TokenKind::Name(name) => format!("the name `{name}`"),
+            TokenKind::Name(name) => format!("the name `{}`", shortened(name)),
             TokenKind::Text(_) => "a text".to_owned(),
             TokenKind::Fixed(sign) => format!("`{sign}`"),
             TokenKind::Newline => "the end of the line".to_owned(),
@@ -288,5 +378,14 @@ impl Token {
             | TokenKind::Fixed(_)
             | TokenKind::Newline => None,
         }
+    }
+}
+
+/// Enough of a long name to know it by.
+pub(super) fn shortened(name: &str) -> String {
+    const MOST: usize = 40;
+    match name.char_indices().nth(MOST) {
+        Some((end, _)) => format!("{}…", name.get(..end).unwrap_or(name)),
+        None => name.to_owned(),
     }
 }

@@ -1,6 +1,7 @@
 //! From text to a syntax tree, and the signatures that say what a call may look like.
 
 mod canonical;
+mod explain;
 mod keywords;
 mod lexer;
 mod parser;
@@ -11,4 +12,6 @@ pub use canonical::canonical;
 pub use keywords::{KEYWORDS, Keyword, KeywordRole};
 pub use parser::{NESTING_LIMIT, SyntaxError, parse};
 pub use signature::{Choice, Parameter, Presence, Signature};
-pub use syntax::{Argument, BinaryOperator, Expression, ExpressionKind, Program, Statement, StatementKind, UnitText};
+pub use syntax::{
+    Argument, BinaryOperator, Expression, ExpressionKind, Program, Statement, StatementKind, UnitText,
+};

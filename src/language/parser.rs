@@ -3,16 +3,17 @@
 
 use nom::branch::alt;
 use nom::combinator::{cut, map, opt};
-use nom::multi::{many0, separated_list0};
+use nom::multi::separated_list0;
 use nom::sequence::{preceded, terminated};
 use nom::{Err as Stop, IResult, Input, Needed, Parser};
 
-use super::lexer::{LexicalError, Token, TokenKind, tokens};
+use super::explain::{LINES, Refusal, after_statement, explain};
 pub use super::lexer::NESTING_LIMIT;
+use super::lexer::{LexicalError, Token, TokenKind, shortened, tokens};
 use super::syntax::{
     Argument, BinaryOperator, Expression, ExpressionKind, Program, Statement, StatementKind, UnitText,
 };
-use crate::base::{Diagnostic, Fault, SourceId, Span};
+use crate::base::{Diagnostic, Fault, Mark, SourceId, Span};
 
 /// How deep an expression may be, chains of operators included; evaluation recurses over it.
 const DEPTH_LIMIT: u32 = 400;
@@ -31,20 +32,43 @@ pub struct SyntaxError {
 /// # Errors
 /// [`SyntaxError`] with a diagnostic for every statement that cannot be read.
 pub fn parse(text: &str, source: SourceId) -> Result<Program, SyntaxError> {
-    let lexed = tokens(text, source)
-        .map_err(|LexicalError { diagnostic, incomplete }| SyntaxError { diagnostics: vec![diagnostic], incomplete })?;
+    let lexed = tokens(text, source).map_err(|LexicalError { diagnostic, incomplete }| SyntaxError {
+        diagnostics: vec![*diagnostic],
+        incomplete,
+    })?;
     let end = Span::new(source, text.trim_end().len(), text.trim_end().len());
     let mut program = Program::default();
     let mut error = SyntaxError { diagnostics: Vec::new(), incomplete: false };
-    for line in lexed.split(|token| token.kind == TokenKind::Newline).filter(|line| !line.is_empty()) {
-        match statement(line, end) {
-            Ok(statement) => program.statements.push(statement),
-            Err((diagnostic, at_end)) => {
-                let last = line.last().map(|token| token.span) == lexed.last().map(|token| token.span);
-                error.incomplete = at_end && last;
-                error.diagnostics.push(diagnostic);
+    let last = lexed.tokens.last().map(|token| token.span);
+    for line in lexed.tokens.split(|token| token.kind == TokenKind::Newline).filter(|line| !line.is_empty()) {
+        let Refusal { mut diagnostic, ran_out } = match statement(line, end) {
+            Ok(statement) => {
+                program.statements.push(statement);
+                continue;
             }
+            Err(refusal) => refusal,
+        };
+        let is_last = line.last().map(|token| token.span) == last;
+        let open = lexed.unclosed.filter(|_| is_last);
+        if let Some((sign, place)) = open {
+            let never = format!("this `{sign}` is never closed");
+            if ran_out {
+                let closing = if sign == "(" { ")" } else { "]" };
+                diagnostic =
+                    Fault::new("syntax", never).help(format!("close it with `{closing}`")).at(place).into();
+            } else {
+                let before = text.get(..diagnostic.primary.span.start).unwrap_or("");
+                if before.trim_end_matches([' ', '\t']).ends_with(['\n', '\r']) {
+                    diagnostic.help = Some(format!("close the `{sign}` before this line"));
+                }
+                diagnostic.secondary.push(Mark { span: place, label: never });
+            }
+        } else if ran_out && !is_last {
+            diagnostic.help.get_or_insert_with(|| LINES.to_owned());
         }
+        // After a statement that is wrong no further text makes the whole right.
+        error.incomplete = ran_out && is_last && error.diagnostics.is_empty();
+        error.diagnostics.push(*diagnostic);
     }
     if error.diagnostics.is_empty() { Ok(program) } else { Err(error) }
 }
@@ -95,11 +119,11 @@ impl<'a> Input for Tokens<'a> {
 }
 
 /// A failure: how many tokens were left there, and what would have been right.
-struct Failure {
-    left: usize,
-    expected: Vec<&'static str>,
+pub(super) struct Failure {
+    pub(super) left: usize,
+    pub(super) expected: Vec<&'static str>,
     /// A more exact fault than "found this, expected that".
-    fault: Option<(Fault, Span)>,
+    pub(super) fault: Option<Box<(Fault, Span)>>,
 }
 
 impl Failure {
@@ -108,7 +132,11 @@ impl Failure {
     }
 
     fn because(input: Tokens<'_>, fault: Fault, span: Span) -> Stop<Self> {
-        Stop::Failure(Failure { left: input.0.len(), expected: Vec::new(), fault: Some((fault, span)) })
+        Stop::Failure(Failure {
+            left: input.0.len(),
+            expected: Vec::new(),
+            fault: Some(Box::new((fault, span))),
+        })
     }
 }
 
@@ -136,76 +164,39 @@ impl<'a> nom::error::ParseError<Tokens<'a>> for Failure {
 
 type Parsed<'a, T> = IResult<Tokens<'a>, T, Failure>;
 
-fn statement(line: &[Token], end: Span) -> Result<Statement, (Diagnostic, bool)> {
+fn statement(line: &[Token], end: Span) -> Result<Statement, Refusal> {
     let whole = line.first().zip(line.last()).map_or(end, |(first, last)| first.span.to(last.span));
-    let parsed = alt((function, definition, map(expression, StatementKind::Show))).parse(Tokens(line));
-    match parsed {
-        Ok((rest, kind)) => match rest.0.first() {
-            None => {
-                let expression = match &kind {
-                    StatementKind::Define { expression, .. }
-                    | StatementKind::Function { body: expression, .. }
-                    | StatementKind::Show(expression) => expression,
-                };
-                if expression.depth > DEPTH_LIMIT {
-                    let fault = Fault::new("nesting", "this expression has too many levels")
-                        .help(format!("the most is {DEPTH_LIMIT}: give parts of it names of their own"));
-                    return Err((fault.at(expression.span), false));
-                }
-                Ok(Statement { kind, span: whole })
+    let (rest, kind) =
+        match alt((function, definition, map(expression, StatementKind::Show))).parse(Tokens(line)) {
+            Ok(parsed) => parsed,
+            Err(Stop::Error(failure) | Stop::Failure(failure)) => return Err(explain(line, failure, end)),
+            Err(Stop::Incomplete(_)) => {
+                return Err(Refusal {
+                    diagnostic: Fault::new("syntax", "the text ends too early").at(end).into(),
+                    ran_out: true,
+                });
             }
-            Some(token) => Err((after_statement(token, line, rest.0.len()).at(token.span), false)),
-        },
-        Err(Stop::Error(failure) | Stop::Failure(failure)) => Err(explain(line, failure, end)),
-        Err(Stop::Incomplete(_)) => Err((Fault::new("syntax", "the text ends too early").at(end), true)),
+        };
+    if !rest.0.is_empty() {
+        return Err(after_statement(line, rest.0.len(), end));
     }
+    let (StatementKind::Define { expression, .. }
+    | StatementKind::Function { body: expression, .. }
+    | StatementKind::Show(expression)) = &kind;
+    if expression.depth > DEPTH_LIMIT {
+        return Err(Refusal { diagnostic: too_deep().at(expression.span).into(), ran_out: false });
+    }
+    Ok(Statement { kind, span: whole })
 }
 
-/// Why nothing may follow a finished expression but an operator.
-fn after_statement(token: &Token, line: &[Token], left: usize) -> Fault {
-    let previous = line.len().checked_sub(left + 1).and_then(|index| line.get(index));
-    let fault = Fault::new("syntax", format!("found {} after a finished expression", token.describe()))
-        .label("I was expecting an operator or the end of the line");
-    match (&token.kind, previous.map(|token| &token.kind)) {
-        (TokenKind::Fixed("="), _) => {
-            fault.help("only a name, or a name with parameters, can stand before `=`: `damped(x, tau) = …`")
-        }
-        (TokenKind::Number(_) | TokenKind::Name(_), Some(TokenKind::Number(_) | TokenKind::Name(_) | TokenKind::Unit(_))) => {
-            fault.help("to multiply, write `*` between them; statements stand on lines of their own")
-        }
-        (TokenKind::Name(_), Some(TokenKind::Fixed(")"))) => {
-            fault.help("a unit follows a number, a list or `in`: write `(…) * 1 W/m2`, or `… in W/m2` to convert")
-        }
-        (TokenKind::Unit(_), _) => fault.help("a unit follows one number or one list, on the same line"),
-        _ => fault,
-    }
+fn too_deep() -> Fault {
+    Fault::new("nesting", "this expression has too many levels")
+        .help(format!("the most is {DEPTH_LIMIT}: give parts of it names of their own"))
 }
 
-fn explain(line: &[Token], failure: Failure, end: Span) -> (Diagnostic, bool) {
-    if let Some((fault, span)) = failure.fault {
-        return (fault.at(span), false);
-    }
-    let mut expected = failure.expected;
-    expected.dedup();
-    let expected = match expected.as_slice() {
-        [] => "something else".to_owned(),
-        [one] => (*one).to_owned(),
-        [all @ .., last] => format!("{} or {last}", all.join(", ")),
-    };
-    let found = line.len().checked_sub(failure.left).and_then(|index| line.get(index));
-    match found {
-        Some(token) => {
-            let fault = Fault::new("syntax", format!("found {} where {expected} belongs", token.describe()))
-                .label(format!("I was expecting {expected} here"));
-            (fault.at(token.span), false)
-        }
-        None => {
-            let last = line.last().map_or(end, |token| Span { start: token.span.end, ..token.span });
-            let fault = Fault::new("syntax", format!("the line ends where {expected} belongs"))
-                .label(format!("I was expecting {expected} after this"));
-            (fault.at(last), true)
-        }
-    }
+/// Refuses a chain as it grows: a tree of 500,000 levels (`1+1+1+…`) would run out of stack when it is dropped.
+fn bounded<'a>(input: Tokens<'a>, whole: Expression) -> Result<Expression, Stop<Failure>> {
+    if whole.depth > DEPTH_LIMIT { Err(Failure::because(input, too_deep(), whole.span)) } else { Ok(whole) }
 }
 
 fn any_token<'a>(input: Tokens<'a>, expected: &'static str) -> Parsed<'a, &'a Token> {
@@ -218,7 +209,11 @@ fn any_token<'a>(input: Tokens<'a>, expected: &'static str) -> Parsed<'a, &'a To
 fn fixed<'a>(sign: &'static str, expected: &'static str) -> impl FnMut(Tokens<'a>) -> Parsed<'a, Span> {
     move |input| {
         let (rest, token) = any_token(input, expected)?;
-        if token.kind == TokenKind::Fixed(sign) { Ok((rest, token.span)) } else { Err(Failure::expecting(input, expected)) }
+        if token.kind == TokenKind::Fixed(sign) {
+            Ok((rest, token.span))
+        } else {
+            Err(Failure::expecting(input, expected))
+        }
     }
 }
 
@@ -250,34 +245,31 @@ fn function(input: Tokens<'_>) -> Parsed<'_, StatementKind> {
     Ok((rest, StatementKind::Function { name, name_span, parameters, body }))
 }
 
-enum Tail {
-    Pipe(Expression),
-    Unit(UnitText),
-}
-
 /// `span { "|>" call | "in" unit }`, the loosest of all.
 fn expression(input: Tokens<'_>) -> Parsed<'_, Expression> {
-    let (rest, first) = span(input)?;
-    let tail = alt((
-        map(preceded(fixed("|>", "`|>`"), cut(pipe_target)), Tail::Pipe),
-        map(preceded(fixed("in", "`in`"), cut(unit)), Tail::Unit),
-    ));
-    let (rest, tails) = many0(tail).parse(rest)?;
-    let whole = tails.into_iter().fold(first, |left, tail| match tail {
-        Tail::Unit(unit) => {
-            let span = left.span.to(unit.span);
-            Expression::new(ExpressionKind::Convert { value: Box::new(left), unit }, span)
-        }
-        Tail::Pipe(mut call) => {
-            let span = left.span.to(call.span);
+    let (mut rest, mut whole) = span(input)?;
+    loop {
+        if let Ok((after, _)) = fixed("|>", "`|>`")(rest) {
+            let (after, mut call) = cut(pipe_target).parse(after)?;
+            let span = whole.span.to(call.span);
             if let ExpressionKind::Call { arguments, piped, .. } = &mut call.kind {
-                arguments.insert(0, Argument { label: None, value: left });
+                arguments.insert(0, Argument { label: None, value: whole });
                 *piped = true;
             }
-            Expression::new(call.kind, span)
+            whole = bounded(input, Expression::new(call.kind, span))?;
+            rest = after;
+        } else if let Ok((after, _)) = fixed("in", "`in`")(rest) {
+            let (after, unit) = cut(unit).parse(after)?;
+            let span = whole.span.to(unit.span);
+            whole = bounded(
+                input,
+                Expression::new(ExpressionKind::Convert { value: Box::new(whole), unit }, span),
+            )?;
+            rest = after;
+        } else {
+            return Ok((rest, whole));
         }
-    });
-    Ok((rest, whole))
+    }
 }
 
 fn pipe_target(input: Tokens<'_>) -> Parsed<'_, Expression> {
@@ -287,8 +279,9 @@ fn pipe_target(input: Tokens<'_>) -> Parsed<'_, Expression> {
         Stop::Failure(_) | Stop::Incomplete(_) => stop,
     })?;
     if let ExpressionKind::Name(name) = &primary.kind {
-        let fault = Fault::new("syntax", format!("found the name `{name}` where {EXPECTED} belongs"))
-            .help(format!("a call has brackets, even empty ones: `|> {name}()`"));
+        let fault =
+            Fault::new("syntax", format!("found the name `{}` where {EXPECTED} belongs", shortened(name)))
+                .help(format!("a call has brackets, even empty ones: `|> {}()`", shortened(name)));
         return Err(Failure::because(input, fault, primary.span));
     }
     Ok((rest, primary))
@@ -327,7 +320,7 @@ fn chain<'a>(
         });
         let Some(operator) = operator else { return Ok((rest, whole)) };
         let (after, right) = cut(operand).parse(rest.take_from(1))?;
-        whole = binary(operator, whole, right);
+        whole = bounded(input, binary(operator, whole, right))?;
         rest = after;
     }
 }
@@ -364,40 +357,42 @@ fn signed(input: Tokens<'_>) -> Parsed<'_, Expression> {
     let committed = !signs.is_empty();
     let (rest, mut whole) = if committed { cut(power).parse(rest)? } else { power(rest)? };
     if signs.len() as u32 > DEPTH_LIMIT / 2 {
-        let fault = Fault::new("nesting", "too many minus signs in a row");
+        let fault = Fault::new("nesting", "too many minus signs in a row").help("two minus signs make none");
         return Err(Failure::because(input, fault, whole.span));
     }
     for sign in signs.into_iter().rev() {
-        let span = sign.to(whole.span);
-        let kind = match whole.kind {
-            ExpressionKind::Number { value, unit } => ExpressionKind::Number { value: -value, unit },
-            other => ExpressionKind::Negate(Box::new(Expression { kind: other, ..whole })),
-        };
-        whole = Expression::new(kind, span);
+        whole = bounded(input, negative(sign, whole))?;
     }
     Ok((rest, whole))
 }
 
-/// `primary { "^" ["-"] primary }`, right to left.
-fn power(input: Tokens<'_>) -> Parsed<'_, Expression> {
-    let (rest, base) = primary(input)?;
-    let exponent = |input| {
-        let (rest, sign) = opt(fixed("-", "`-`")).parse(input)?;
-        let (rest, whole) = primary(rest)?;
-        let Some(sign) = sign else { return Ok((rest, whole)) };
-        let span = sign.to(whole.span);
-        Ok((rest, Expression::new(ExpressionKind::Negate(Box::new(whole)), span)))
-    };
-    let (rest, mut tower) = many0(preceded(fixed("^", "`^`"), cut(exponent))).parse(rest)?;
-    tower.insert(0, base);
-    let mut whole = None;
-    while let Some(below) = tower.pop() {
-        whole = Some(match whole {
-            None => below,
-            Some(above) => binary(BinaryOperator::Power, below, above),
-        });
+fn negative(sign: Span, mut whole: Expression) -> Expression {
+    let span = sign.to(whole.span);
+    if let ExpressionKind::Number { value, .. } = &mut whole.kind {
+        *value = -*value;
+        return Expression { span, ..whole };
     }
-    whole.map(|whole| (rest, whole)).ok_or_else(|| Failure::expecting(input, "an expression"))
+    Expression::new(ExpressionKind::Negate(Box::new(whole)), span)
+}
+
+/// `primary ["^" ["-"] power]`: right to left, and `2^-3^2` is 2^(-9), as `-3^2` is -9.
+fn power(input: Tokens<'_>) -> Parsed<'_, Expression> {
+    let (mut rest, mut top) = primary(input)?;
+    let mut below = Vec::new();
+    while let Ok((after, _)) = fixed("^", "`^`")(rest) {
+        let (after, sign) = opt(fixed("-", "`-`")).parse(after)?;
+        let (after, next) = cut(primary).parse(after)?;
+        below.push((std::mem::replace(&mut top, next), sign));
+        rest = after;
+    }
+    for (base, sign) in below.into_iter().rev() {
+        let exponent = match sign {
+            Some(sign) => negative(sign, top),
+            None => top,
+        };
+        top = bounded(input, binary(BinaryOperator::Power, base, exponent))?;
+    }
+    Ok((rest, top))
 }
 
 fn primary(input: Tokens<'_>) -> Parsed<'_, Expression> {
@@ -420,10 +415,6 @@ fn primary(input: Tokens<'_>) -> Parsed<'_, Expression> {
             Ok((rest, Expression::new(ExpressionKind::Group(Box::new(inner)), token.span.to(close))))
         }
         TokenKind::Fixed("[") => list(rest, token.span),
-        TokenKind::Fixed("..") => {
-            let fault = Fault::new("syntax", "a span needs both its ends").help("write for instance 1850..2020 CE");
-            Err(Failure::because(input, fault, token.span))
-        }
         TokenKind::Fixed(_) | TokenKind::Unit(_) | TokenKind::Newline => {
             Err(Failure::expecting(input, "an expression"))
         }
@@ -431,7 +422,7 @@ fn primary(input: Tokens<'_>) -> Parsed<'_, Expression> {
 }
 
 fn list(rest: Tokens<'_>, open: Span) -> Parsed<'_, Expression> {
-    let (rest, mut items) = cut(separated_list0(fixed(",", "`,`"), list_item)).parse(rest)?;
+    let (rest, mut items) = items(rest, "]", expression)?;
     if let ([_], Ok((after, _))) = (items.as_slice(), fixed("for", "`for`")(rest)) {
         let (rest, (variable, variable_span)) = cut(name).parse(after)?;
         let (rest, _) = cut(fixed("in", "`in`")).parse(rest)?;
@@ -441,21 +432,41 @@ fn list(rest: Tokens<'_>, open: Span) -> Parsed<'_, Expression> {
         let kind = ExpressionKind::For { body, variable, variable_span, list: Box::new(list) };
         return Ok((rest, Expression::new(kind, open.to(close))));
     }
-    let (rest, _) = opt(fixed(",", "`,`")).parse(rest)?;
     let (rest, close) = cut(fixed("]", "`,` or `]`")).parse(rest)?;
     let (rest, unit) = opt(unit).parse(rest)?;
     if let Some(unit) = &unit {
         for item in &mut items {
-            give_unit(item, unit);
+            give_unit(item, unit).map_err(|span| {
+                let fault = Fault::new(
+                    "syntax",
+                    format!("the unit `{}` after the list cannot go to this item", unit.text),
+                )
+                .help("it goes to numbers; write the unit inside the other items, or leave it away");
+                Failure::because(rest, fault, span)
+            })?;
         }
     }
     let span = open.to(unit.map_or(close, |unit| unit.span));
     Ok((rest, Expression::new(ExpressionKind::List(items), span)))
 }
 
-/// An item of a list; a closing bracket right away is an empty list or a trailing comma.
-fn list_item(input: Tokens<'_>) -> Parsed<'_, Expression> {
-    if fixed("]", "`]`")(input).is_ok() { Err(Failure::expecting(input, "an expression")) } else { expression(input) }
+/// Items with a comma between two, and one after the last if one likes; stops before `closing`.
+fn items<'a, T>(
+    input: Tokens<'a>,
+    closing: &'static str,
+    item: fn(Tokens<'a>) -> Parsed<'a, T>,
+) -> Parsed<'a, Vec<T>> {
+    let mut found = Vec::new();
+    let mut rest = input;
+    while fixed(closing, closing)(rest).is_err() {
+        let (after, one) = cut(item).parse(rest)?;
+        found.push(one);
+        match fixed(",", "`,`")(after) {
+            Ok((after, _)) => rest = after,
+            Err(_) => return Ok((after, found)),
+        }
+    }
+    Ok((rest, found))
 }
 
 fn call_or_name(input: Tokens<'_>) -> Parsed<'_, Expression> {
@@ -463,17 +474,13 @@ fn call_or_name(input: Tokens<'_>) -> Parsed<'_, Expression> {
     let Ok((rest, _)) = fixed("(", "`(`")(rest) else {
         return Ok((rest, Expression::new(ExpressionKind::Name(name), name_span)));
     };
-    let (rest, arguments) = cut(separated_list0(fixed(",", "`,`"), argument)).parse(rest)?;
-    let (rest, _) = opt(fixed(",", "`,`")).parse(rest)?;
+    let (rest, arguments) = items(rest, ")", argument)?;
     let (rest, close) = cut(fixed(")", "`,` or `)`")).parse(rest)?;
     let kind = ExpressionKind::Call { name, name_span, arguments, piped: false };
     Ok((rest, Expression::new(kind, name_span.to(close))))
 }
 
 fn argument(input: Tokens<'_>) -> Parsed<'_, Argument> {
-    if fixed(")", "`)`")(input).is_ok() {
-        return Err(Failure::expecting(input, "an argument"));
-    }
     let (rest, label) = opt(terminated(name, fixed(":", "`:`"))).parse(input)?;
     let (rest, value) = if label.is_some() { cut(expression).parse(rest)? } else { expression(rest)? };
     Ok((rest, Argument { label, value }))
@@ -482,7 +489,8 @@ fn argument(input: Tokens<'_>) -> Parsed<'_, Argument> {
 /// Bare numbers across `±` and `..` take the unit that follows.
 fn lend_unit(bare: &mut Expression, from: &Expression) {
     if let Some(unit) = trailing_unit(from) {
-        give_unit(bare, &unit);
+        // What is no number keeps the unit that it has.
+        let _ = give_unit(bare, &unit);
     }
 }
 
@@ -496,17 +504,26 @@ fn trailing_unit(expression: &Expression) -> Option<UnitText> {
     None
 }
 
-fn give_unit(expression: &mut Expression, given: &UnitText) {
-    if let ExpressionKind::Number { unit: unit @ None, .. } = &mut expression.kind {
-        *unit = Some(given.clone());
-    } else if let ExpressionKind::Binary { operator: BinaryOperator::PlusMinus, left, right } = &mut expression.kind {
-        give_unit(left, given);
-        give_unit(right, given);
-    } else if let ExpressionKind::List(items) = &mut expression.kind {
-        for item in items {
-            give_unit(item, given);
-        }
+/// Every bare number takes the unit; fails with the place of the first part that is no number.
+fn give_unit(expression: &mut Expression, given: &UnitText) -> Result<(), Span> {
+    if let ExpressionKind::Number { unit, .. } = &mut expression.kind {
+        unit.get_or_insert_with(|| given.clone());
+        return Ok(());
     }
+    if let ExpressionKind::Binary { operator: BinaryOperator::PlusMinus | BinaryOperator::To, left, right } =
+        &mut expression.kind
+    {
+        let left = give_unit(left, given);
+        return left.and(give_unit(right, given));
+    }
+    if let ExpressionKind::List(items) = &mut expression.kind {
+        let mut first = Ok(());
+        for item in items {
+            first = first.and(give_unit(item, given));
+        }
+        return first;
+    }
+    Err(expression.span)
 }
 
 #[cfg(test)]
@@ -515,7 +532,8 @@ mod tests {
     use crate::language::canonical;
 
     fn shown(text: &str) -> String {
-        let program = parse(text, SourceId(0)).unwrap_or_else(|error| panic!("{text}: {:?}", error.diagnostics));
+        let program =
+            parse(text, SourceId(0)).unwrap_or_else(|error| panic!("{text}: {:?}", error.diagnostics));
         match &program.statements[0].kind {
             StatementKind::Show(expression) | StatementKind::Define { expression, .. } => grouped(expression),
             StatementKind::Function { body, .. } => grouped(body),
@@ -531,7 +549,13 @@ mod tests {
             ExpressionKind::Negate(inner) => format!("(-{})", grouped(inner)),
             ExpressionKind::Convert { value, unit } => format!("({} in {})", grouped(value), unit.text),
             ExpressionKind::Group(inner) => grouped(inner),
-            _ => canonical(expression),
+            ExpressionKind::Number { .. }
+            | ExpressionKind::Date { .. }
+            | ExpressionKind::Text(_)
+            | ExpressionKind::List(_)
+            | ExpressionKind::Name(_)
+            | ExpressionKind::Call { .. }
+            | ExpressionKind::For { .. } => canonical(expression),
         }
     }
 
@@ -543,6 +567,8 @@ mod tests {
     fn operators_bind_as_the_rules_say() {
         assert_eq!(shown("-2^2"), "(-(2 ^ 2))");
         assert_eq!(shown("2^3^2"), "(2 ^ (3 ^ 2))");
+        assert_eq!(shown("2^-3^2"), "(2 ^ (-(3 ^ 2)))");
+        assert_eq!(shown("2^-3"), "(2 ^ -3)");
         assert_eq!(shown("-20 ± 3 W/m2"), "(-20 W/m2 ± 3 W/m2)");
         assert_eq!(shown("1 - 2 * 3 ± 1 - 4"), "((1 - (2 * (3 ± 1))) - 4)");
         assert_eq!(shown("1750..2020 CE by 1 yr"), "((1750 CE .. 2020 CE) by 1 yr)");

@@ -53,12 +53,28 @@ pub struct Choice {
 
 impl Parameter {
     /// A required parameter of the given kinds.
-    pub const fn required(name: &'static str, accepts: &'static [&'static str], meaning: &'static str) -> Self {
-        Self { name, accepts, unit: None, meaning, presence: Presence::Required, choices: &[], groups_labels: false }
+    pub const fn required(
+        name: &'static str,
+        accepts: &'static [&'static str],
+        meaning: &'static str,
+    ) -> Self {
+        Self {
+            name,
+            accepts,
+            unit: None,
+            meaning,
+            presence: Presence::Required,
+            choices: &[],
+            groups_labels: false,
+        }
     }
 
     /// A parameter that may be left out.
-    pub const fn optional(name: &'static str, accepts: &'static [&'static str], meaning: &'static str) -> Self {
+    pub const fn optional(
+        name: &'static str,
+        accepts: &'static [&'static str],
+        meaning: &'static str,
+    ) -> Self {
         Self { presence: Presence::Optional, ..Self::required(name, accepts, meaning) }
     }
 

@@ -181,14 +181,17 @@ pub enum ExpressionKind {
 impl Expression {
     /// An expression whose depth follows from its parts.
     pub(crate) fn new(kind: ExpressionKind, span: Span) -> Self {
-        let deepest = |parts: &mut dyn Iterator<Item = &Expression>| parts.map(|part| part.depth).max().unwrap_or(0);
+        let deepest =
+            |parts: &mut dyn Iterator<Item = &Expression>| parts.map(|part| part.depth).max().unwrap_or(0);
         let below = match &kind {
             ExpressionKind::Number { .. }
             | ExpressionKind::Date { .. }
             | ExpressionKind::Text(_)
             | ExpressionKind::Name(_) => 0,
             ExpressionKind::List(items) => deepest(&mut items.iter()),
-            ExpressionKind::Call { arguments, .. } => deepest(&mut arguments.iter().map(|given| &given.value)),
+            ExpressionKind::Call { arguments, .. } => {
+                deepest(&mut arguments.iter().map(|given| &given.value))
+            }
             ExpressionKind::Negate(inner)
             | ExpressionKind::Group(inner)
             | ExpressionKind::Convert { value: inner, .. } => inner.depth,

@@ -39,7 +39,10 @@ fn output(session: &Session, output: &Output, cell: usize) -> Json {
             if let Some(unit) = rest.remove("unit") {
                 object.insert("unit".to_owned(), unit);
             }
-            object.insert("notes".to_owned(), json!(output.notes.iter().map(|note| &**note).collect::<Vec<_>>()));
+            object.insert(
+                "notes".to_owned(),
+                json!(output.notes.iter().map(|note| &**note).collect::<Vec<_>>()),
+            );
             object.append(&mut rest);
         }
     }
@@ -81,19 +84,24 @@ fn shown(shown: &Shown) -> Map<String, Json> {
         Shown::Quantity { measure, nominal, spread } => {
             scalar(*nominal, spread.as_deref(), vec![("unit", json!(measure.unit.to_string()))])
         }
-        Shown::Instant { nominal, spread, .. } => scalar(*nominal, spread.as_deref(), vec![("unit", json!("year CE"))]),
+        Shown::Instant { nominal, spread, .. } => {
+            scalar(*nominal, spread.as_deref(), vec![("unit", json!("year CE"))])
+        }
         Shown::Series(series) => self::series(series),
         Shown::Bundle { components, total } => {
-            let parts: Map<String, Json> =
-                components.iter().map(|(label, part)| (label.to_string(), Json::Object(self::series(part)))).collect();
+            let parts: Map<String, Json> = components
+                .iter()
+                .map(|(label, part)| (label.to_string(), Json::Object(self::series(part))))
+                .collect();
             let mut keys = object(vec![("unit", json!(total.measure.unit.to_string()))]);
             keys.insert("components".to_owned(), Json::Object(parts));
             keys.insert("total".to_owned(), Json::Object(self::series(total)));
             keys
         }
-        Shown::Span(span) => object(vec![
-            ("time", json!({"axis": "year CE", "kind": "steps", "values": [span.start], "ends": [span.end]})),
-        ]),
+        Shown::Span(span) => object(vec![(
+            "time",
+            json!({"axis": "year CE", "kind": "steps", "values": [span.start], "ends": [span.end]}),
+        )]),
         Shown::Range(range) => object(vec![
             ("unit", json!(range.unit.to_string())),
             ("low", number(range.low)),
@@ -167,16 +175,15 @@ fn table(content: &Table) -> Json {
         Cell::Number(value) => number(*value),
         Cell::Empty => Json::Null,
     };
-    let rows: Vec<Json> = content.rows.iter().map(|row| Json::Array(row.iter().map(cell).collect())).collect();
+    let rows: Vec<Json> =
+        content.rows.iter().map(|row| Json::Array(row.iter().map(cell).collect())).collect();
     json!({"columns": columns, "rows": rows, "notes": content.notes})
 }
 
 fn attribution(attribution: &Attribution) -> Map<String, Json> {
     let statistics = &attribution.statistics;
-    let mut keys = object(vec![
-        ("unit", json!(attribution.unit.to_string())),
-        ("table", table(&attribution.table())),
-    ]);
+    let mut keys =
+        object(vec![("unit", json!(attribution.unit.to_string())), ("table", table(&attribution.table()))]);
     let mut numbers = object(vec![
         ("n", json!(statistics.count)),
         ("r_squared", number(statistics.r_squared)),

@@ -70,7 +70,10 @@ impl Report {
             }
             Err(problem) if reply.problems.contains(problem) || reply.waiting.contains(problem) => {
                 let line = display::problem_line(problem, &sources);
-                self.text += &format!("{bold}{}{plain}\n  not shown, because of the error at {line}\n\n", output.expression);
+                self.text += &format!(
+                    "{bold}{}{plain}\n  not shown, because of the error at {line}\n\n",
+                    output.expression
+                );
             }
             Err(problem) => {
                 self.text += &display::diagnostic(problem, &sources, self.colour);

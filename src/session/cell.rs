@@ -1,7 +1,7 @@
 use std::collections::{BTreeMap, BTreeSet};
 use std::path::PathBuf;
-use std::sync::atomic::{AtomicU64, Ordering};
 use std::sync::Arc;
+use std::sync::atomic::{AtomicU64, Ordering};
 
 use super::definitions::{Definitions, Function};
 use super::environment::Environment;
@@ -12,7 +12,7 @@ use super::inputs::{FILE_LIMIT, Inputs};
 use super::memo::Memo;
 use super::node::Node;
 use super::resolve::resolve;
-use crate::base::{Cancellation, Diagnostic, Fault, Source, SourceId};
+use crate::base::{Cancellation, Diagnostic, Fault, Source, SourceId, Span};
 use crate::catalogue::{Path, Stop};
 use crate::language::{Expression, Program, Statement, StatementKind, canonical, parse};
 use crate::value::{Shown, Value};
@@ -37,7 +37,7 @@ pub struct Session {
     memo: Memo,
     cancellation: Cancellation,
     evaluations: AtomicU64,
-    threads: rayon::ThreadPool,
+    threads: Arc<rayon::ThreadPool>,
 }
 
 /// One shown expression, for as long as its cell shows it.
@@ -94,14 +94,19 @@ impl Session {
 
     /// A session on so many threads (all processors where none is given), which remembers so many bytes of values and
     /// reads files of up to `file_limit` bytes.
-    pub fn with_limits(folder: impl Into<PathBuf>, threads: Option<usize>, memory: usize, file_limit: u64) -> Self {
+    pub fn with_limits(
+        folder: impl Into<PathBuf>,
+        threads: Option<usize>,
+        memory: usize,
+        file_limit: u64,
+    ) -> Self {
         let builder = rayon::ThreadPoolBuilder::new().stack_size(STACK).num_threads(threads.unwrap_or(0));
         // Where the system gives no further threads, the calling one does the work.
-        let threads = builder.build().or_else(|_| {
-            rayon::ThreadPoolBuilder::new().num_threads(1).use_current_thread().build()
-        });
+        let threads = builder
+            .build()
+            .or_else(|_| rayon::ThreadPoolBuilder::new().num_threads(1).use_current_thread().build());
         let threads = match threads {
-            Ok(threads) => threads,
+            Ok(threads) => Arc::new(threads),
             Err(error) => unreachable!("a pool of the current thread alone: {error}"),
         };
         Self {
@@ -170,6 +175,17 @@ impl Session {
     ///
     /// A cell with a syntax error installs nothing. A name that the cell defined before and no longer does is removed.
     pub fn run_cell(&mut self, cell: &str, text: &str) -> CellReply {
+        // On a thread of the pool, whose stack is deep enough for everything that the caps let through.
+        let threads = self.threads.clone();
+        let run = std::panic::AssertUnwindSafe(|| threads.install(|| self.run_here(cell, text)));
+        std::panic::catch_unwind(run).unwrap_or_else(|_| {
+            let fault = super::evaluate::internal("this cell could not be run to its end");
+            let span = Span::new(SourceId(self.next_source.saturating_sub(1)), 0, text.len());
+            CellReply { problems: vec![fault.at(span)], ..CellReply::default() }
+        })
+    }
+
+    fn run_here(&mut self, cell: &str, text: &str) -> CellReply {
         let source = SourceId(self.next_source);
         self.next_source += 1;
         let name = cell.to_owned();
@@ -203,7 +219,14 @@ impl Session {
             let fingerprint = Parts::new("not evaluated").finish();
             let id = self.next_display;
             self.next_display += 1;
-            self.displays.push(Display { id, cell: cell.clone(), text: span_text, expression, node, fingerprint });
+            self.displays.push(Display {
+                id,
+                cell: cell.clone(),
+                text: span_text,
+                expression,
+                node,
+                fingerprint,
+            });
         }
         self.evaluate(&cell, &changed, &mut reply);
         self.forget_sources(&reply);
@@ -212,9 +235,11 @@ impl Session {
 
     /// Names with what they are bound to, to tell what a cell changed.
     fn bindings(&self) -> BTreeMap<String, String> {
-        let values = self.definitions.values.iter().map(|(name, definition)| {
-            (name.to_string(), canonical(&definition.expression))
-        });
+        let values = self
+            .definitions
+            .values
+            .iter()
+            .map(|(name, definition)| (name.to_string(), canonical(&definition.expression)));
         let functions = self.definitions.functions.iter().map(|(name, function)| {
             (format!("{name}({})", function.parameters.join(", ")), canonical(&function.body))
         });
@@ -232,7 +257,9 @@ impl Session {
         let (mut names, mut functions) = (BTreeSet::new(), BTreeSet::new());
         for statement in &program.statements {
             let (name, span, first) = match &statement.kind {
-                StatementKind::Define { name, name_span, .. } => (name, *name_span, names.insert(name.clone())),
+                StatementKind::Define { name, name_span, .. } => {
+                    (name, *name_span, names.insert(name.clone()))
+                }
                 StatementKind::Function { name, name_span, parameters, .. } => {
                     if let Err(problem) = Definitions::check_function(name, *name_span, parameters) {
                         problems.push(problem);
@@ -257,7 +284,10 @@ impl Session {
         for Statement { kind, span } in program.statements {
             match kind {
                 StatementKind::Show(expression) => {
-                    let text = self.sources.get(&span.source).and_then(|source| source.text.get(span.start..span.end));
+                    let text = self
+                        .sources
+                        .get(&span.source)
+                        .and_then(|source| source.text.get(span.start..span.end));
                     shown.push((expression, text.unwrap_or("").to_owned()));
                 }
                 StatementKind::Function { name, name_span, parameters, body } => {
@@ -269,7 +299,9 @@ impl Session {
                         reply.notices.push(taken_over(&format!("{name}(…)"), &old.cell));
                     }
                 }
-                StatementKind::Define { name, name_span, expression } => values.push((name, name_span, expression)),
+                StatementKind::Define { name, name_span, expression } => {
+                    values.push((name, name_span, expression))
+                }
             }
         }
         // Functions first: the order of lines in a cell is free.
@@ -288,7 +320,9 @@ impl Session {
     }
 
     fn function_texts(&self) -> Vec<(String, String)> {
-        let text = |function: &Function| format!("({}) = {}", function.parameters.join(", "), canonical(&function.body));
+        let text = |function: &Function| {
+            format!("({}) = {}", function.parameters.join(", "), canonical(&function.body))
+        };
         self.definitions.functions.iter().map(|(name, function)| (name.clone(), text(function))).collect()
     }
 
@@ -305,21 +339,20 @@ impl Session {
         };
         let (own, others): (Vec<&mut Display>, Vec<&mut Display>) =
             self.displays.iter_mut().partition(|display| display.cell == *cell);
-        self.threads.install(|| {
-            let environment = environment(&evaluator);
-            prepare(&evaluator, &environment);
-            check(&evaluator, cell, &environment, reply);
-            for display in own {
-                let output = show(&evaluator, display, &environment, &[]);
-                reply.outputs.push(output);
+        let environment = environment(&evaluator);
+        prepare(&evaluator, &environment);
+        check(&evaluator, cell, &environment, reply);
+        for display in own {
+            let output = show(&evaluator, display, &environment, &[]);
+            reply.outputs.push(output);
+        }
+        for display in others {
+            let print = print_of(&evaluator, display, &environment);
+            if print != display.fingerprint {
+                let by: Vec<String> = changed.iter().cloned().chain(self.inputs.changed()).collect();
+                reply.moved.push(show(&evaluator, display, &environment, &by));
             }
-            for display in others {
-                let print = print_of(&evaluator, display, &environment);
-                if print != display.fingerprint {
-                    reply.moved.push(show(&evaluator, display, &environment, changed));
-                }
-            }
-        });
+        }
     }
 
     /// Keep the texts that definitions, displays or the reply still point into.
@@ -363,10 +396,14 @@ fn environment(evaluator: &Evaluator<'_>) -> Environment {
             evaluator.value(node, &Environment::empty(), Path::Nominal).map(|(value, _)| value)
         }))
     };
-    if let Some(Ok(Value::Quantity(members))) = setting("members").map(|value| value.map(|value| Value::clone(&value))) {
+    if let Some(Ok(Value::Quantity(members))) =
+        setting("members").map(|value| value.map(|value| Value::clone(&value)))
+    {
         environment.members = (members.first().max(1.0) as u64).min(super::show::MEMBERS_LIMIT);
     }
-    if let Some(Ok(Value::Quantity(seed))) = setting("seed").map(|value| value.map(|value| Value::clone(&value))) {
+    if let Some(Ok(Value::Quantity(seed))) =
+        setting("seed").map(|value| value.map(|value| Value::clone(&value)))
+    {
         environment.seed = seed.first().max(0.0) as u64;
     }
     match setting("clock") {

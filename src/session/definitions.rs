@@ -55,14 +55,19 @@ impl Definitions {
         parameters: &[(String, Span)],
     ) -> Result<(), Diagnostic> {
         if catalogue::find(name).is_some() {
-            return Err(Fault::new("catalogue-name", format!("`{name}` is a function of the language already"))
-                .help("give yours another name; a plain name (without brackets) may be the same")
-                .at(name_span));
+            return Err(Fault::new(
+                "catalogue-name",
+                format!("`{name}` is a function of the language already"),
+            )
+            .help("give yours another name; a plain name (without brackets) may be the same")
+            .at(name_span));
         }
         for (index, (parameter, span)) in parameters.iter().enumerate() {
             check_local_name(parameter, *span)?;
             if parameters.iter().take(index).any(|(other, _)| other == parameter) {
-                return Err(Fault::new("argument-twice", format!("`{parameter}` is a parameter twice")).at(*span));
+                return Err(
+                    Fault::new("argument-twice", format!("`{parameter}` is a parameter twice")).at(*span)
+                );
             }
         }
         Ok(())
@@ -87,7 +92,8 @@ impl Definitions {
             }
         }
         let node = resolve(self, Some(name), &expression);
-        let definition = Definition { cell: cell.clone(), rivals, deleted: false, name_span, expression, node };
+        let definition =
+            Definition { cell: cell.clone(), rivals, deleted: false, name_span, expression, node };
         self.values.insert(Arc::from(name), definition);
         from
     }

@@ -106,7 +106,9 @@ impl Evaluator<'_> {
             },
             NodeKind::Call(call) => match call.entry.body {
                 Body::AcrossMembers(_) => false,
-                Body::PerMember(_) => call.entry.random || call.slots.iter().any(|slot| self.is_uncertain(slot)),
+                Body::PerMember(_) => {
+                    call.entry.random || call.slots.iter().any(|slot| self.is_uncertain(slot))
+                }
             },
             NodeKind::List(_) | NodeKind::Item { .. } | NodeKind::ForEach { .. } => {
                 node.children().into_iter().any(|child| self.is_uncertain(child))
@@ -131,7 +133,8 @@ impl Evaluator<'_> {
         match &node.kind {
             NodeKind::Constant(value) => Ok(value.shape()),
             NodeKind::List(items) => {
-                let shapes = items.iter().map(|item| self.shape(item, environment)).collect::<Result<Vec<_>, _>>()?;
+                let shapes =
+                    items.iter().map(|item| self.shape(item, environment)).collect::<Result<Vec<_>, _>>()?;
                 limited(Shape::List(shapes), node.span)
             }
             NodeKind::Reference(name) => {
@@ -139,12 +142,15 @@ impl Evaluator<'_> {
                 self.shape(&target, &environment)
             }
             NodeKind::Item { list, index } => match self.shape(list, environment)? {
-                Shape::List(items) => items.get(*index).cloned().ok_or_else(|| internal("an item is missing").into()),
+                Shape::List(items) => {
+                    items.get(*index).cloned().ok_or_else(|| internal("an item is missing").into())
+                }
                 _ => Err(internal("an item of no list").into()),
             },
             NodeKind::ForEach { .. } => {
                 let items = self.items(node, environment)?;
-                let shapes = items.iter().map(|item| self.shape(item, environment)).collect::<Result<Vec<_>, _>>()?;
+                let shapes =
+                    items.iter().map(|item| self.shape(item, environment)).collect::<Result<Vec<_>, _>>()?;
                 limited(Shape::List(shapes), node.span)
             }
             NodeKind::Variable(_) => Err(internal("a loop variable stands outside its loop").into()),
@@ -163,9 +169,12 @@ impl Evaluator<'_> {
         let NodeKind::ForEach { body, variable, list } = &node.kind else { return Ok(Vec::new()) };
         let shape = self.shape(list, environment)?;
         let Shape::List(shapes) = &shape else {
-            return Err(Fault::new("wrong-argument", format!("`for` goes over a list, not over {}", shape.describe()))
-                .at(list.span)
-                .into_stop());
+            return Err(Fault::new(
+                "wrong-argument",
+                format!("`for` goes over a list, not over {}", shape.describe()),
+            )
+            .at(list.span)
+            .into_stop());
         };
         let whole = self.caches.expanded.load(Ordering::Relaxed) + shapes.len() * body.size;
         if whole > 5 * SIZE_LIMIT {
@@ -254,7 +263,12 @@ impl Evaluator<'_> {
                     let context = NodeContext::new(self, node, call, environment, Path::Nominal);
                     let view = Call::new(call.entry.signature.parameters, &call.given, &context);
                     if let Ok(Some(path)) = view.text(parameter) {
-                        parts.text(&self.inputs.file(&path).map_or_else(|fault| fault.message, |file| file.sha256.clone()));
+                        parts.text(
+                            &self
+                                .inputs
+                                .file(&path)
+                                .map_or_else(|fault| fault.message, |file| file.sha256.clone()),
+                        );
                     }
                 }
                 parts.finish()
@@ -324,9 +338,10 @@ impl Evaluator<'_> {
         match call.entry.reads_clock {
             ReadsClock::Always => true,
             ReadsClock::Never => false,
-            ReadsClock::WithSeries => {
-                call.slots.iter().any(|slot| self.shape(slot, environment).is_ok_and(|shape| holds_series(&shape)))
-            }
+            ReadsClock::WithSeries => call
+                .slots
+                .iter()
+                .any(|slot| self.shape(slot, environment).is_ok_and(|shape| holds_series(&shape))),
         }
     }
 
@@ -352,7 +367,8 @@ impl Evaluator<'_> {
                 let (value, notes) = self.value(list, environment, path)?;
                 match value.as_ref() {
                     Value::List(items) => {
-                        let item = items.get(*index).cloned().ok_or_else(|| internal("an item is missing"))?;
+                        let item =
+                            items.get(*index).cloned().ok_or_else(|| internal("an item is missing"))?;
                         Ok((item, notes))
                     }
                     _ => Err(internal("an item of no list").into()),
@@ -363,7 +379,12 @@ impl Evaluator<'_> {
         }
     }
 
-    fn list_value(&self, items: &[Arc<Node>], environment: &Environment, path: Path) -> Result<Evaluated, Stop> {
+    fn list_value(
+        &self,
+        items: &[Arc<Node>],
+        environment: &Environment,
+        path: Path,
+    ) -> Result<Evaluated, Stop> {
         let mut values = Vec::with_capacity(items.len());
         let mut notes = Vec::new();
         for item in items {
@@ -575,7 +596,9 @@ impl<'e> NodeContext<'e> {
     }
 
     fn slot(&self, slot: usize) -> Result<&'e Arc<Node>, Stop> {
-        self.call.and_then(|call| call.slots.get(slot)).ok_or_else(|| internal("an argument is missing").into())
+        self.call
+            .and_then(|call| call.slots.get(slot))
+            .ok_or_else(|| internal("an argument is missing").into())
     }
 
     fn take(&self, (value, notes): Evaluated) -> Arc<Value> {
@@ -590,7 +613,9 @@ impl Context for NodeContext<'_> {
     }
 
     fn value(&self, slot: usize) -> Result<Arc<Value>, Stop> {
-        self.evaluator.value(self.slot(slot)?, self.environment, self.path).map(|evaluated| self.take(evaluated))
+        self.evaluator
+            .value(self.slot(slot)?, self.environment, self.path)
+            .map(|evaluated| self.take(evaluated))
     }
 
     fn value_under(&self, slot: usize, clock: Arc<Clock>) -> Result<Arc<Value>, Stop> {
@@ -609,7 +634,9 @@ impl Context for NodeContext<'_> {
         }
         let view = Call::new(call.entry.signature.parameters, &call.given, self);
         self.evaluator.evaluations.fetch_add(1, Ordering::Relaxed);
-        let Body::PerMember(body) = call.entry.body else { return Err(internal("no value of its own").into()) };
+        let Body::PerMember(body) = call.entry.body else {
+            return Err(internal("no value of its own").into());
+        };
         let value = Arc::new(body(&view)?);
         let notes = Arc::new(self.notes.borrow().clone());
         if !self.evaluator.is_uncertain(self.node) {
@@ -643,7 +670,9 @@ impl Context for NodeContext<'_> {
     }
 
     fn standard_normals(&self) -> Vec<f64> {
-        let (Path::Block { first, count }, Some(variable)) = (self.path, self.call.and_then(|call| call.variable)) else {
+        let (Path::Block { first, count }, Some(variable)) =
+            (self.path, self.call.and_then(|call| call.variable))
+        else {
             return vec![0.0];
         };
         let mut numbers = vec![0.0; count];

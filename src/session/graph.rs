@@ -85,14 +85,18 @@ impl Graph {
     fn report_circle(&mut self, circle: &[Arc<str>], definitions: &Definitions) {
         for (index, name) in circle.iter().enumerate() {
             let Some(definition) = definitions.values.get(name) else { continue };
-            let mut around: Vec<&str> = circle.iter().cycle().skip(index).take(circle.len()).map(|name| &**name).collect();
+            let mut around: Vec<&str> =
+                circle.iter().cycle().skip(index).take(circle.len()).map(|name| &**name).collect();
             around.push(name);
-            let fault = Fault::new("circle", format!("`{name}` is defined by itself: {}", around.join(" → ")))
-                .help("break the circle: a name means its definition, not an earlier value");
+            let fault =
+                Fault::new("circle", format!("`{name}` is defined by itself: {}", around.join(" → ")))
+                    .help("break the circle: a name means its definition, not an earlier value");
             let mut diagnostic = fault.at(definition.name_span);
             for other in circle.iter().filter(|other| *other != name) {
                 if let Some(definition) = definitions.values.get(other) {
-                    diagnostic.secondary.push(Mark { span: definition.name_span, label: "part of the circle".to_owned() });
+                    diagnostic
+                        .secondary
+                        .push(Mark { span: definition.name_span, label: "part of the circle".to_owned() });
                 }
             }
             self.problems.entry(name.clone()).or_insert(diagnostic);
@@ -103,11 +107,15 @@ impl Graph {
         let mut reach: BTreeMap<Arc<str>, usize> = BTreeMap::new();
         for name in &self.order {
             let Some(definition) = definitions.values.get(name) else { continue };
-            let below = references.get(name).into_iter().flatten().filter_map(|name| reach.get(name)).max().copied();
+            let below =
+                references.get(name).into_iter().flatten().filter_map(|name| reach.get(name)).max().copied();
             let own = definition.node.as_ref().map_or(0, |node| node.depth);
             let whole = below.unwrap_or(0) + own;
             if whole > CHAIN_LIMIT {
-                let fault = Fault::new("nesting", format!("`{name}` hangs on a chain of definitions with more than {CHAIN_LIMIT} levels"));
+                let fault = Fault::new(
+                    "nesting",
+                    format!("`{name}` hangs on a chain of definitions with more than {CHAIN_LIMIT} levels"),
+                );
                 self.problems.entry(name.clone()).or_insert_with(|| fault.at(definition.name_span));
             }
             reach.insert(name.clone(), whole);

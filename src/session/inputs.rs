@@ -17,6 +17,8 @@ pub(super) struct Inputs {
     folder: PathBuf,
     limit: u64,
     seen: Mutex<BTreeMap<String, Seen>>,
+    /// Files that were found changed during this execution.
+    changed: Mutex<Vec<String>>,
 }
 
 #[derive(Clone)]
@@ -30,7 +32,7 @@ struct Seen {
 
 impl Inputs {
     pub(super) fn new(folder: PathBuf, limit: u64) -> Self {
-        Self { folder, limit, seen: Mutex::default() }
+        Self { folder, limit, seen: Mutex::default(), changed: Mutex::default() }
     }
 
     /// Look at every file again when it is next asked for.
@@ -38,6 +40,12 @@ impl Inputs {
         for seen in self.seen.lock().unwrap_or_else(PoisonError::into_inner).values_mut() {
             seen.fresh = false;
         }
+        self.changed.lock().unwrap_or_else(PoisonError::into_inner).clear();
+    }
+
+    /// The files that were found changed since the execution began.
+    pub(super) fn changed(&self) -> Vec<String> {
+        self.changed.lock().unwrap_or_else(PoisonError::into_inner).clone()
     }
 
     /// Every file that was read, with its hash.
@@ -54,12 +62,16 @@ impl Inputs {
         let place = self.place(path)?;
         let metadata = place.metadata().map_err(|error| unreadable(path, &error))?;
         if !metadata.is_file() {
-            return Err(Fault::new("file-kind", format!("\"{path}\" is no regular file")).help("name a file, not a folder or a device"));
+            return Err(Fault::new("file-kind", format!("\"{path}\" is no regular file"))
+                .help("name a file, not a folder or a device"));
         }
         if metadata.len() > self.limit {
             let size = metadata.len() / (1024 * 1024);
-            return Err(Fault::new("file-size", format!("\"{path}\" has {size} MiB; the most is {} MiB", self.limit / (1024 * 1024)))
-                .help("raise the limit with `--file-limit`, or take the columns that are needed"));
+            return Err(Fault::new(
+                "file-size",
+                format!("\"{path}\" has {size} MiB; the most is {} MiB", self.limit / (1024 * 1024)),
+            )
+            .help("raise the limit with `--file-limit`, or take the columns that are needed"));
         }
         let modified = metadata.modified().ok();
         if let Some(found) = seen.get_mut(path)
@@ -74,7 +86,13 @@ impl Inputs {
         let digest: [u8; 32] = Sha256::digest(&bytes).into();
         let sha256 = digest.iter().map(|byte| format!("{byte:02x}")).collect();
         let file = Arc::new(InputFile { path: path.to_owned(), bytes, sha256 });
-        seen.insert(path.to_owned(), Seen { modified, length: metadata.len(), fresh: true, file: file.clone() });
+        if seen.get(path).is_some_and(|old| old.file.sha256 != file.sha256) {
+            self.changed.lock().unwrap_or_else(PoisonError::into_inner).push(path.to_owned());
+        }
+        seen.insert(
+            path.to_owned(),
+            Seen { modified, length: metadata.len(), fresh: true, file: file.clone() },
+        );
         Ok(file)
     }
 
@@ -85,7 +103,8 @@ impl Inputs {
                 .help("a notebook reads only its own folder and those below: copy the file there")
         };
         let relative = Path::new(path);
-        let plain = relative.components().all(|part| matches!(part, Component::Normal(_) | Component::CurDir));
+        let plain =
+            relative.components().all(|part| matches!(part, Component::Normal(_) | Component::CurDir));
         if !plain {
             return Err(outside());
         }
@@ -93,7 +112,9 @@ impl Inputs {
         let folder = self.folder.canonicalize().map_err(|error| unreadable(path, &error))?;
         let real = match whole.canonicalize() {
             Ok(real) => real,
-            Err(error) if error.kind() == std::io::ErrorKind::NotFound => return Err(self.missing(path, &whole)),
+            Err(error) if error.kind() == std::io::ErrorKind::NotFound => {
+                return Err(self.missing(path, &whole));
+            }
             Err(error) => return Err(unreadable(path, &error)),
         };
         if real.starts_with(&folder) { Ok(real) } else { Err(outside()) }
@@ -101,13 +122,15 @@ impl Inputs {
 
     fn missing(&self, path: &str, whole: &Path) -> Fault {
         let fault = Fault::new("file-missing", format!("there is no file \"{path}\""));
-        let (Some(parent), Some(name)) = (whole.parent(), whole.file_name().and_then(|name| name.to_str())) else {
+        let (Some(parent), Some(name)) = (whole.parent(), whole.file_name().and_then(|name| name.to_str()))
+        else {
             return fault;
         };
         let Ok(entries) = parent.read_dir() else {
             return fault.help("its folder does not exist either: paths begin at the notebook's folder");
         };
-        let mut names: Vec<String> = entries.flatten().filter_map(|entry| entry.file_name().into_string().ok()).collect();
+        let mut names: Vec<String> =
+            entries.flatten().filter_map(|entry| entry.file_name().into_string().ok()).collect();
         names.sort();
         match nearest(name, names.iter().map(String::as_str)) {
             Some(near) => {

@@ -9,12 +9,16 @@ use super::node::{CallNode, Node, NodeKind};
 use crate::base::{Diagnostic, Fault, SourceId, Span};
 use crate::catalogue::{self, Entry, Given, What};
 use crate::language::{
-    Argument, BinaryOperator, Expression, ExpressionKind, Parameter, Presence, StatementKind, UnitText, canonical, parse,
+    Argument, BinaryOperator, Expression, ExpressionKind, Parameter, Presence, StatementKind, UnitText,
+    canonical, parse,
 };
 use crate::value::{Block, Era, Instant, Measure, Quantity, Unit, Value, instant_of_date};
 
 /// The most nodes that one expression may have after its functions are put in.
 pub(super) const SIZE_LIMIT: usize = 200_000;
+
+/// The most levels that it may have then.
+const DEPTH_LIMIT: usize = 2_000;
 
 /// Looks functions of the user's up.
 pub(super) trait Functions {
@@ -65,9 +69,10 @@ impl Resolver<'_> {
         match &expression.kind {
             ExpressionKind::Group(inner) => self.expression(inner, scope),
             ExpressionKind::Number { value, unit } => number(*value, unit.as_ref(), span).map(constant),
-            ExpressionKind::Date { year, month, day } => {
-                instant_of_date(*year, *month, *day).map(Value::Instant).map(constant).map_err(|fault| fault.at(span))
-            }
+            ExpressionKind::Date { year, month, day } => instant_of_date(*year, *month, *day)
+                .map(Value::Instant)
+                .map(constant)
+                .map_err(|fault| fault.at(span)),
             ExpressionKind::Text(text) => Ok(constant(Value::Text(Arc::from(text.as_str())))),
             ExpressionKind::Name(name) => {
                 if let Some((_, node)) = scope.locals.iter().rev().find(|(local, _)| local == name) {
@@ -77,7 +82,8 @@ impl Resolver<'_> {
                 Ok(Node::new(NodeKind::Reference(name.clone()), span, name))
             }
             ExpressionKind::List(items) => {
-                let items = items.iter().map(|item| self.expression(item, scope)).collect::<Result<Vec<_>, _>>()?;
+                let items =
+                    items.iter().map(|item| self.expression(item, scope)).collect::<Result<Vec<_>, _>>()?;
                 self.sized(Node::new(NodeKind::List(items), span, label()))
             }
             ExpressionKind::For { body, variable, variable_span, list } => {
@@ -85,11 +91,16 @@ impl Resolver<'_> {
                 let list = self.expression(list, scope)?;
                 self.loops += 1;
                 let number = self.loops;
-                let item = Node::new(NodeKind::Variable(number), *variable_span, Arc::from(variable.as_str()));
+                let item =
+                    Node::new(NodeKind::Variable(number), *variable_span, Arc::from(variable.as_str()));
                 scope.locals.push((variable.clone(), item));
                 let body = self.expression(body, scope);
                 scope.locals.pop();
-                self.sized(Node::new(NodeKind::ForEach { body: body?, variable: number, list }, span, label()))
+                self.sized(Node::new(
+                    NodeKind::ForEach { body: body?, variable: number, list },
+                    span,
+                    label(),
+                ))
             }
             ExpressionKind::Negate(inner) => {
                 let inner = self.expression(inner, scope)?;
@@ -126,7 +137,7 @@ impl Resolver<'_> {
     }
 
     fn sized(&self, node: Arc<Node>) -> Result<Arc<Node>, Diagnostic> {
-        if node.size > SIZE_LIMIT { Err(too_large(node.span)) } else { Ok(node) }
+        if node.size > SIZE_LIMIT || node.depth > DEPTH_LIMIT { Err(too_large(node.span)) } else { Ok(node) }
     }
 
     fn unknown_function(&self, name: &str, span: Span) -> Diagnostic {
@@ -137,7 +148,9 @@ impl Resolver<'_> {
         let fault = Fault::new("unknown-function", format!("there is no function `{name}`"));
         match near {
             Some(near) => fault.help(format!("did you mean `{near}`?")),
-            None => fault.help("define it as `name(parameters) = expression`, or see the reference for those there are"),
+            None => fault.help(
+                "define it as `name(parameters) = expression`, or see the reference for those there are",
+            ),
         }
         .at(span)
     }
@@ -153,7 +166,9 @@ impl Resolver<'_> {
         let Some(entry) = catalogue::find(symbol) else {
             return Err(Fault::new("internal", format!("the operator {symbol} has no entry")).at(span));
         };
-        let given = (0..slots.len()).map(|slot| Given { parameter: slot, label: None, what: What::Value(slot) }).collect();
+        let given = (0..slots.len())
+            .map(|slot| Given { parameter: slot, label: None, what: What::Value(slot) })
+            .collect();
         let variable = entry.random.then(|| scope.next_variable());
         self.sized(Node::new(NodeKind::Call(CallNode { entry, given, slots, variable }), span, label))
     }
@@ -193,10 +208,13 @@ impl Resolver<'_> {
             match bound.get_mut(index) {
                 Some(slot @ None) => *slot = Some(node),
                 Some(Some(_)) => {
-                    return Err(Fault::new("argument-twice", "this argument is given twice").at(argument.value.span));
+                    return Err(
+                        Fault::new("argument-twice", "this argument is given twice").at(argument.value.span)
+                    );
                 }
                 None => {
-                    let fault = Fault::new("too-many-arguments", format!("`{name}` takes {} arguments", bound.len()));
+                    let fault =
+                        Fault::new("too-many-arguments", format!("`{name}` takes {} arguments", bound.len()));
                     return Err(fault.at(argument.value.span));
                 }
             }
@@ -265,9 +283,12 @@ impl Resolver<'_> {
                 Presence::Optional => {}
                 Presence::Required | Presence::Repeated { .. } => {
                     let names: Vec<&str> = parameters.iter().map(|parameter| parameter.name).collect();
-                    return Err(Fault::new("missing-argument", format!("`{owner}` needs `{}`: {}", parameter.name, parameter.meaning))
-                        .help(format!("its parameters are {}", names.join(", ")))
-                        .at(span));
+                    return Err(Fault::new(
+                        "missing-argument",
+                        format!("`{owner}` needs `{}`: {}", parameter.name, parameter.meaning),
+                    )
+                    .help(format!("its parameters are {}", names.join(", ")))
+                    .at(span));
                 }
                 Presence::Default(text) => {
                     let what = self.default(owner, parameter, text, span, slots)?;
@@ -290,8 +311,11 @@ impl Resolver<'_> {
             let Some(parameter) = parameters.get(number) else {
                 let most = parameters.len();
                 let word = if most == 1 { "argument" } else { "arguments" };
-                return Err(Fault::new("too-many-arguments", format!("`{owner}` takes at most {most} {word}"))
-                    .at(argument.value.span));
+                return Err(Fault::new(
+                    "too-many-arguments",
+                    format!("`{owner}` takes at most {most} {word}"),
+                )
+                .at(argument.value.span));
             };
             if !matches!(parameter.presence, Presence::Repeated { .. }) {
                 *next += 1;
@@ -303,7 +327,8 @@ impl Resolver<'_> {
         }) {
             return Ok((number, None));
         }
-        let free = parameters.iter().position(|parameter| parameter.presence == Presence::Repeated { labels: true });
+        let free =
+            parameters.iter().position(|parameter| parameter.presence == Presence::Repeated { labels: true });
         if let Some(number) = free {
             return Ok((number, Some(Arc::from(label.as_str()))));
         }
@@ -375,9 +400,14 @@ impl Resolver<'_> {
         slots: &mut Vec<Arc<Node>>,
     ) -> Result<What, Diagnostic> {
         let program = parse(text, SourceId::default());
-        let statement = program.ok().and_then(|mut program| program.statements.pop()).map(|statement| statement.kind);
+        let statement =
+            program.ok().and_then(|mut program| program.statements.pop()).map(|statement| statement.kind);
         let Some(StatementKind::Show(mut expression)) = statement else {
-            return Err(Fault::new("internal", format!("the default of `{}` cannot be read", parameter.name)).at(span));
+            return Err(Fault::new(
+                "internal",
+                format!("the default of `{}` cannot be read", parameter.name),
+            )
+            .at(span));
         };
         move_to(&mut expression, span);
         let mut place = Sha256::new();
@@ -399,7 +429,8 @@ impl Scope {
 
 /// A function is called by a word; operators have entries too, which no call reaches.
 fn is_word(name: &str) -> bool {
-    name.chars().all(|letter| letter.is_alphanumeric() || letter == '_') && !matches!(name, "in" | "by" | "negate")
+    name.chars().all(|letter| letter.is_alphanumeric() || letter == '_')
+        && !matches!(name, "in" | "by" | "negate")
 }
 
 fn wrong_choice(parameter: &Parameter, word: &str) -> Fault {
@@ -423,9 +454,12 @@ pub(super) const SETTINGS: [&str; 3] = ["clock", "members", "seed"];
 /// A parameter or a loop name cannot be a setting.
 pub(super) fn check_local_name(name: &str, span: Span) -> Result<(), Diagnostic> {
     if SETTINGS.contains(&name) {
-        return Err(Fault::new("setting-name", format!("`{name}` is a setting of the notebook, and cannot be a local name"))
-            .help("take another name")
-            .at(span));
+        return Err(Fault::new(
+            "setting-name",
+            format!("`{name}` is a setting of the notebook, and cannot be a local name"),
+        )
+        .help("take another name")
+        .at(span));
     }
     Ok(())
 }
@@ -438,7 +472,8 @@ fn number(value: f64, unit: Option<&UnitText>, span: Span) -> Result<Value, Diag
     if let Some(era) = Era::parse(&written.text) {
         return Instant::new(value, era).map(Value::Instant).map_err(|fault| fault.at(span));
     }
-    let unit = Unit::parse(&written.text).map_err(|fault| unit_fault(&fault, written, Some(value)).at(written.span))?;
+    let unit = Unit::parse(&written.text)
+        .map_err(|fault| unit_fault(&fault, written, Some(value)).at(written.span))?;
     Ok(Value::Quantity(Quantity { values: Block::single(value), measure: Measure::of(unit) }))
 }
 
@@ -453,8 +488,12 @@ fn unit_fault(fault: &crate::value::UnitFault, written: &UnitText, value: Option
         format!("`{}` in `{}` is no unit", fault.word, written.text)
     };
     let eras: Vec<&str> = Era::ALL.iter().map(|era| era.symbol()).collect();
-    let near_era = eras.iter().find(|era| era.eq_ignore_ascii_case(&written.text)).map(|era| (*era).to_owned());
-    let near = near_era.or_else(|| fault.near.clone()).map(|near| format!("did you mean `{near}`? ")).unwrap_or_default();
+    let near_era =
+        eras.iter().find(|era| era.eq_ignore_ascii_case(&written.text)).map(|era| (*era).to_owned());
+    let near = near_era
+        .or_else(|| fault.near.clone())
+        .map(|near| format!("did you mean `{near}`? "))
+        .unwrap_or_default();
     let multiply = match value {
         Some(value) if written.text.chars().all(|letter| letter.is_alphanumeric() || letter == '_') => {
             format!("to multiply, write `{value} * {}`", written.text)
@@ -527,7 +566,9 @@ fn move_to(expression: &mut Expression, span: Span) {
         ExpressionKind::Call { arguments, .. } => {
             arguments.iter_mut().for_each(|argument| move_to(&mut argument.value, span));
         }
-        ExpressionKind::Negate(inner) | ExpressionKind::Group(inner) | ExpressionKind::Convert { value: inner, .. } => {
+        ExpressionKind::Negate(inner)
+        | ExpressionKind::Group(inner)
+        | ExpressionKind::Convert { value: inner, .. } => {
             move_to(inner, span);
         }
         ExpressionKind::Binary { left, right, .. } => {

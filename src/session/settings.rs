@@ -31,7 +31,11 @@ pub(super) fn check(evaluator: &Evaluator<'_>, name: &str, node: &Arc<Node>) -> 
         Err(Stop::Fault(fault)) => return Some(fault.at(node.span)),
     };
     let wrong = |found: String| {
-        Some(Fault::new("setting", format!("`{name}` is {found}")).help(format!("it takes {expected}")).at(node.span))
+        Some(
+            Fault::new("setting", format!("`{name}` is {found}"))
+                .help(format!("it takes {expected}"))
+                .at(node.span),
+        )
     };
     match (name, value.as_ref()) {
         ("clock", Value::Clock(_)) => None,

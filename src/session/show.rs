@@ -11,7 +11,7 @@ use super::node::Node;
 use crate::base::Fault;
 use crate::catalogue::{Context, Path, Stop, onto_clock, total};
 use crate::science::reduce;
-use crate::value::{Block, Bundle, Component, Content, Shown, ShownSeries, Series, Spread, Value};
+use crate::value::{Block, Bundle, Component, Content, Series, Shown, ShownSeries, Spread, Value};
 
 /// Members are computed in blocks of this many, folded in order: the same bits for any number of threads.
 const BLOCK: u64 = 1024;
@@ -110,7 +110,8 @@ fn ready(context: &dyn Context, value: &Value) -> Result<Value, Stop> {
             Ok(Value::Bundle(Bundle { components }))
         }
         Value::List(items) => {
-            let items = items.iter().map(|item| Ok(Arc::new(ready(context, item)?))).collect::<Result<_, Stop>>()?;
+            let items =
+                items.iter().map(|item| Ok(Arc::new(ready(context, item)?))).collect::<Result<_, Stop>>()?;
             Ok(Value::List(items))
         }
         other => Ok(other.clone()),
@@ -124,14 +125,22 @@ fn shown(nominal: &Value, members: &[&Value]) -> Result<Shown, Stop> {
                 Value::Quantity(quantity) => Some(&quantity.values),
                 _ => None,
             });
-            Shown::Quantity { measure: quantity.measure.clone(), nominal: quantity.first(), spread: spread(&blocks) }
+            Shown::Quantity {
+                measure: quantity.measure.clone(),
+                nominal: quantity.first(),
+                spread: spread(&blocks),
+            }
         }
         Value::Instant(instant) => {
-            let blocks = blocks(members, &|value| if let Value::Instant(instant) = value { Some(&instant.years) } else { None });
+            let blocks = blocks(members, &|value| {
+                if let Value::Instant(instant) = value { Some(&instant.years) } else { None }
+            });
             Shown::Instant { era: instant.era, nominal: instant.year(), spread: spread(&blocks) }
         }
         Value::Series(series) => {
-            let blocks = blocks(members, &|value| if let Value::Series(series) = value { Some(&series.values) } else { None });
+            let blocks = blocks(members, &|value| {
+                if let Value::Series(series) = value { Some(&series.values) } else { None }
+            });
             Shown::Series(shown_series(series, &blocks))
         }
         Value::Bundle(bundle) => {
@@ -147,7 +156,9 @@ fn shown(nominal: &Value, members: &[&Value]) -> Result<Shown, Stop> {
                 });
                 components.push((part.label.clone(), shown_series(series, &blocks)));
             }
-            let Some((_, total)) = components.pop() else { return Err(internal("a bundle without sum").into()) };
+            let Some((_, total)) = components.pop() else {
+                return Err(internal("a bundle without sum").into());
+            };
             Shown::Bundle { components, total }
         }
         Value::Model(model) => {
@@ -215,7 +226,10 @@ fn spread(blocks: &[&Block]) -> Option<Arc<Spread>> {
             |(values, workspace), column| {
                 values.clear();
                 for block in blocks {
-                    values.extend((0..block.rows()).map(|row| block.member(row).get(column).copied().unwrap_or(f64::NAN)));
+                    values.extend(
+                        (0..block.rows())
+                            .map(|row| block.member(row).get(column).copied().unwrap_or(f64::NAN)),
+                    );
                 }
                 let mut out = [f64::NAN; 3];
                 reduce::quantiles(values, &PROBABILITIES, workspace, &mut out);
@@ -223,6 +237,7 @@ fn spread(blocks: &[&Block]) -> Option<Arc<Spread>> {
             },
         )
         .collect();
-    let pick = |index: usize| quantiles.iter().map(|out| out.get(index).copied().unwrap_or(f64::NAN)).collect();
+    let pick =
+        |index: usize| quantiles.iter().map(|out| out.get(index).copied().unwrap_or(f64::NAN)).collect();
     Some(Arc::new(Spread { low: pick(0), median: pick(1), high: pick(2), members: members as u64 }))
 }

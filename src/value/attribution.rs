@@ -84,7 +84,7 @@ pub struct FitStatistics {
 impl Attribution {
     /// The table of an attribution, as it is shown and as JSON gives it.
     pub fn table(&self) -> Table {
-            let attribution = self;
+        let attribution = self;
         let columns = vec![
             Column::plain("driver"),
             Column::plain("coefficient"),
@@ -119,7 +119,12 @@ impl Attribution {
             attribution.method, attribution.noise
         )];
         if let (Some((later, earlier)), Some(change)) = (&attribution.windows, attribution.observed_change) {
-            let explained: f64 = attribution.drivers.iter().filter_map(|driver| driver.contribution).map(|(value, _)| value).sum();
+            let explained: f64 = attribution
+                .drivers
+                .iter()
+                .filter_map(|driver| driver.contribution)
+                .map(|(value, _)| value)
+                .sum();
             notes.push(format!(
                 "contribution: to the change from {earlier} to {later}; observed {change:.3} {unit}, explained {explained:.3}, unexplained {:.3}",
                 change - explained,
@@ -139,5 +144,4 @@ impl Attribution {
 }
 
 /// The line beneath every attribution.
-pub const CAUTION: &str =
-    "a regression shows what goes together, under its assumptions; for assessed findings see the assessment reports";
+pub const CAUTION: &str = "a regression shows what goes together, under its assumptions; for assessed findings see the assessment reports";

@@ -117,8 +117,15 @@ impl Instant {
         if calendar && number < 1.0 {
             let other = if era == Era::Ce { Era::Bce } else { Era::Ce };
             let years = if number > -1.0 { 1.0 } else { -number };
-            return Err(Fault::new("no-such-year", format!("there is no year {} {}", trimmed(number), era.symbol()))
-                .help(format!("1 BCE is followed by 1 CE: write {} {}", trimmed(years), other.symbol())));
+            return Err(Fault::new(
+                "no-such-year",
+                format!("there is no year {} {}", trimmed(number), era.symbol()),
+            )
+            .help(format!(
+                "1 BCE is followed by 1 CE: write {} {}",
+                trimmed(years),
+                other.symbol()
+            )));
         }
         let whole = calendar && number.fract().abs() < f64::EPSILON;
         Ok(Self::at(Block::single(era.to_year(number)), era, if whole { 1.0 } else { 0.0 }))
@@ -173,7 +180,9 @@ pub fn instant_of_date(year: i64, month: u32, day: u32) -> Result<Instant, Fault
     let lengths = month_lengths(year);
     let length = usize::try_from(month).ok().and_then(|month| lengths.get(month.wrapping_sub(1)));
     let Some(length) = length else {
-        return Err(Fault::new("no-such-date", format!("there is no month {month}")).help("months run from 01 to 12"));
+        return Err(
+            Fault::new("no-such-date", format!("there is no month {month}")).help("months run from 01 to 12")
+        );
     };
     if day == 0 || day > *length {
         return Err(Fault::new("no-such-date", format!("month {month} of {year} has no day {day}"))

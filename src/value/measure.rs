@@ -135,9 +135,15 @@ impl Forcing {
             (mine, theirs) => {
                 return Err(Fault::new(
                     "forcing-kinds",
-                    format!("{} and {} forcing are two kinds of forcing and do not add", article(mine), article(theirs)),
+                    format!(
+                        "{} and {} forcing are two kinds of forcing and do not add",
+                        article(mine),
+                        article(theirs)
+                    ),
                 )
-                .help("compute both by formulas of one kind; `explain` of each formula says which it gives"));
+                .help(
+                    "compute both by formulas of one kind; `explain` of each formula says which it gives",
+                ));
             }
         };
         let reference = if self.reference == other.reference { self.reference.clone() } else { None };
@@ -166,7 +172,8 @@ mod tests {
 
     #[test]
     fn two_kinds_of_forcing_do_not_add_and_an_undeclared_one_goes_with_both() {
-        let (effective, adjusted) = (forcing(ForcingKind::Effective), forcing(ForcingKind::StratosphereAdjusted));
+        let (effective, adjusted) =
+            (forcing(ForcingKind::Effective), forcing(ForcingKind::StratosphereAdjusted));
         assert_eq!(effective.sum(&adjusted, false).unwrap_err().code, "forcing-kinds");
         let (sum, _) = forcing(ForcingKind::Undeclared).sum(&effective, false).unwrap();
         assert_eq!(sum, effective);

@@ -25,7 +25,13 @@ impl Model {
     /// Names, units and values of the parameters.
     pub fn parameters(&self) -> Vec<(&'static str, &'static str, &Block)> {
         match self {
-            Model::TwoLayer { heat_capacity, deep_heat_capacity, exchange, feedback, heat_uptake_efficacy } => vec![
+            Model::TwoLayer {
+                heat_capacity,
+                deep_heat_capacity,
+                exchange,
+                feedback,
+                heat_uptake_efficacy,
+            } => vec![
                 ("heat_capacity", "W*yr/m2/K", heat_capacity),
                 ("deep_heat_capacity", "W*yr/m2/K", deep_heat_capacity),
                 ("exchange", "W/m2/K", exchange),
@@ -37,14 +43,14 @@ impl Model {
 
     /// Names, nominal values and units as a table.
     pub fn table(&self) -> Table {
-    let rows = self
-        .parameters()
-        .into_iter()
-        .map(|(name, unit, values)| {
-            vec![Cell::Text(Arc::from(name)), Cell::number(values.first()), Cell::Text(Arc::from(unit))]
-        })
-        .collect();
-    let columns = vec![Column::plain("parameter"), Column::plain("value"), Column::plain("unit")];
-    Table { title: "two-layer model".to_owned(), columns, rows, notes: Vec::new() }
-}
+        let rows = self
+            .parameters()
+            .into_iter()
+            .map(|(name, unit, values)| {
+                vec![Cell::Text(Arc::from(name)), Cell::number(values.first()), Cell::Text(Arc::from(unit))]
+            })
+            .collect();
+        let columns = vec![Column::plain("parameter"), Column::plain("value"), Column::plain("unit")];
+        Table { title: "two-layer model".to_owned(), columns, rows, notes: Vec::new() }
+    }
 }

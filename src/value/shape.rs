@@ -61,7 +61,9 @@ impl Shape {
             Shape::Quantity(measure) | Shape::Series(measure) if measure.unit.is_bare() => {
                 format!("{article} {kind} without unit")
             }
-            Shape::Quantity(measure) | Shape::Series(measure) => format!("{article} {kind} in {}", measure.unit),
+            Shape::Quantity(measure) | Shape::Series(measure) => {
+                format!("{article} {kind} in {}", measure.unit)
+            }
             Shape::Range(unit) => format!("a range in {unit}"),
             Shape::Instant(_)
             | Shape::Span

@@ -103,13 +103,15 @@ impl Unit {
     }
 
     fn atom(symbol: &str) -> Result<Self, UnitFault> {
-        let folded: String = symbol.chars().map(|letter| if letter == 'µ' || letter == 'μ' { 'u' } else { letter }).collect();
+        let folded: String =
+            symbol.chars().map(|letter| if letter == 'µ' || letter == 'μ' { 'u' } else { letter }).collect();
         let folded = if folded == "°C" { "degC".to_owned() } else { folded };
         let exact = UNITS.iter().find(|entry| entry.symbol == folded).map(|entry| (entry, 0));
         let prefixed = || {
             PREFIXES.iter().find_map(|(prefix, power)| {
                 let rest = folded.strip_prefix(prefix)?;
-                let entry = UNITS.iter().find(|entry| entry.symbol == rest && entry.prefixes.contains(prefix))?;
+                let entry =
+                    UNITS.iter().find(|entry| entry.symbol == rest && entry.prefixes.contains(prefix))?;
                 Some((entry, *power))
             })
         };
@@ -189,13 +191,15 @@ impl Unit {
         let sunspots = [Dimension::SPOTS_V1, Dimension::SPOTS_V2];
         let names = [self.to_string(), target.to_string()];
         let width = names.iter().map(|name| name.chars().count()).max().unwrap_or(0);
-        let mut fault = Fault::new("unit-mismatch", format!("{} and {} measure different things", names[0], names[1]));
+        let mut fault =
+            Fault::new("unit-mismatch", format!("{} and {} measure different things", names[0], names[1]));
         for (name, dimension) in names.iter().zip([self.dimension, target.dimension]) {
             let padding = " ".repeat(width - name.chars().count());
             fault = fault.detail(format!("{name}{padding}  is  {dimension}"));
         }
         if sunspots.contains(&self.dimension) && sunspots.contains(&target.dimension) {
-            fault = fault.help("no constant converts the old sunspot scale into the new one: load both on one scale");
+            fault = fault
+                .help("no constant converts the old sunspot scale into the new one: load both on one scale");
         }
         fault
     }
@@ -218,7 +222,11 @@ fn split_exponent(word: &str) -> (&str, Option<i8>) {
             word.split_at(letters.len())
         }
     };
-    if digits.is_empty() { (symbol, Some(1)) } else { (symbol, digits.parse().ok().filter(|power| *power != 0)) }
+    if digits.is_empty() {
+        (symbol, Some(1))
+    } else {
+        (symbol, digits.parse().ok().filter(|power| *power != 0))
+    }
 }
 
 fn nearest(word: &str) -> Option<String> {

@@ -31,7 +31,9 @@ fn every_example_gives_what_it_says() {
         for example in entry.shows {
             match outcome(example.program) {
                 Ok(line) if line == example.gives => {}
-                Ok(line) => complaints.push(format!("{}\n  says  {}\n  gives {line}", example.program, example.gives)),
+                Ok(line) => {
+                    complaints.push(format!("{}\n  says  {}\n  gives {line}", example.program, example.gives))
+                }
                 Err((code, said)) => complaints.push(format!("{}\n  fails: {code}\n{said}", example.program)),
             }
         }
@@ -51,7 +53,8 @@ fn every_example_that_must_fail_fails_so() {
                     "{}\n  should be {} and say `{}`, is {code}:\n{said}",
                     example.program, example.code, example.says
                 )),
-                Ok(line) => complaints.push(format!("{}\n  should be {}, gives {line}", example.program, example.code)),
+                Ok(line) => complaints
+                    .push(format!("{}\n  should be {}, gives {line}", example.program, example.code)),
             }
         }
     }

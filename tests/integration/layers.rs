@@ -8,8 +8,12 @@ const LAYERS: [&str; 9] =
     ["base", "science", "value", "files", "display", "language", "catalogue", "session", "notebook"];
 
 /// Crates that only one layer may use.
-const KEPT_INSIDE: [(&str, &str); 4] =
-    [("nom::", "language"), ("annotate_snippets::", "display"), ("csv::", "files"), ("serde_json::", "notebook")];
+const KEPT_INSIDE: [(&str, &str); 4] = [
+    ("nom::", "language"),
+    ("annotate_snippets::", "display"),
+    ("csv::", "files"),
+    ("serde_json::", "notebook"),
+];
 
 fn rust_files(folder: &Path, found: &mut Vec<PathBuf>) {
     for entry in fs::read_dir(folder).unwrap() {
@@ -27,7 +31,8 @@ fn complaint(layer: &str, line: &str) -> Option<String> {
     let code = line.split("//").next().unwrap_or("");
     let own = LAYERS.iter().position(|name| *name == layer)?;
     for part in code.split("crate::").skip(1) {
-        let target: String = part.chars().take_while(|letter| letter.is_alphanumeric() || *letter == '_').collect();
+        let target: String =
+            part.chars().take_while(|letter| letter.is_alphanumeric() || *letter == '_').collect();
         match LAYERS.iter().position(|name| *name == target) {
             Some(position) if position <= own => {}
             Some(_) => return Some(format!("{layer} uses {target}, which stands after it")),

@@ -1,6 +1,15 @@
 //! One binary for all tests that use the crate from outside.
+#![allow(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    clippy::panic,
+    clippy::float_cmp,
+    clippy::wildcard_enum_match_arm,
+    reason = "what a test does not expect, it fails on loudly"
+)]
 
 mod catalogue_examples;
 mod certified_science;
+mod grammar;
 mod layers;
 mod suite;

@@ -76,7 +76,8 @@ fn run(name: &str, text: &str) -> String {
     let folder = empty_folder(name, section);
     let session = Session::new(&folder);
     let lines = text.lines().peekable();
-    let mut page = Page { lines, out: String::new(), folder, session, report: Report::new(false, false), cells: 0 };
+    let mut page =
+        Page { lines, out: String::new(), folder, session, report: Report::new(false, false), cells: 0 };
     while let Some(line) = page.lines.next() {
         if line.starts_with("## ") {
             section += 1;
