@@ -133,6 +133,7 @@ static ATTRIBUTE: Entry = Entry {
     ],
     revision: 1,
     reads_clock: ReadsClock::Always,
+    under: None,
     reads_file: None,
     random: false,
     labels: true,

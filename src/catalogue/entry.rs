@@ -30,6 +30,8 @@ pub struct Entry {
     pub revision: u32,
     /// When the result depends on the clock in force.
     pub reads_clock: ReadsClock,
+    /// The parameter that holds the clock under which the first argument is evaluated instead of the one in force.
+    pub under: Option<&'static str>,
     /// The parameter that names an input file.
     pub reads_file: Option<&'static str>,
     /// Whether each call is a random variable of its own.

@@ -34,10 +34,10 @@ static CO2_FORCING: Entry = Entry {
     equation: Some(r"F = 5.35\,\mathrm{W\,m^{-2}} \ln\frac{C}{C_0}"),
     gaps: "A gap stays a gap, and an amount that is not above zero is one.",
     shows: &[
-        Shows { program: "co2_forcing(556 ppm)", gives: "3.70834 W/m2" },
+        Shows { program: "co2_forcing(556 ppm)", gives: "3.70834 W/m2, stratosphere-adjusted change from 278 ppm CO2" },
         Shows {
             program: "co2 = series([278, 417] ppm, along: 1850..1851 CE by 1 yr)\nco2_forcing(co2)",
-            gives: "2 steps, 1850 CE to 1851 CE: 0 to 2.16924 W/m2",
+            gives: "2 steps, 1850 CE to 1851 CE: 0 to 2.16924 W/m2, stratosphere-adjusted change from 278 ppm CO2",
         },
     ],
     fails: &[
@@ -53,11 +53,12 @@ static CO2_FORCING: Entry = Entry {
     search: &["carbon dioxide", "greenhouse", "radiative forcing"],
     revision: 1,
     reads_clock: ReadsClock::WithSeries,
+    under: None,
     reads_file: None,
     random: false,
     labels: false,
     shape: |call| {
-        let measure = forcing_measure("")?;
+        let measure = forcing_measure(call)?;
         Ok(match call.shape("co2")? {
             Shape::Quantity(_) => Shape::Quantity(measure),
             _ => Shape::Series(measure),
@@ -66,12 +67,12 @@ static CO2_FORCING: Entry = Entry {
     body: Body::PerMember(co2_forcing),
 };
 
-/// The forcing's measure; the reference stands in it once the numbers are known.
-fn forcing_measure(reference: &str) -> Result<Measure, Stop> {
+/// The forcing's measure: its kind, and what it is a change from.
+fn forcing_measure(call: &Call<'_>) -> Result<Measure, Stop> {
     let unit = Unit::parse("W/m2").map_err(|_| Fault::new("internal", "a unit of the table is missing"))?;
-    let reference = (!reference.is_empty()).then(|| Arc::from(reference));
-    let forcing = Some(Forcing { kind: ForcingKind::StratosphereAdjusted, reference });
-    Ok(Measure { forcing, ..Measure::of(unit) })
+    let reference = format!("{} ppm CO2", call.numbers("reference")?.first());
+    let forcing = Forcing { kind: ForcingKind::StratosphereAdjusted, reference: Some(Arc::from(reference)) };
+    Ok(Measure { forcing: Some(forcing), ..Measure::of(unit) })
 }
 
 fn co2_forcing(call: &Call<'_>) -> Result<Value, Stop> {
@@ -82,10 +83,7 @@ fn co2_forcing(call: &Call<'_>) -> Result<Value, Stop> {
             .into());
     }
     let ppm = Unit::parse("ppm").map_err(|_| Fault::new("internal", "a unit of the table is missing"))?;
-    let measure = forcing_measure("")?;
-    let words =
-        format!("the forcing is a change from {} ppm of CO2, stratosphere-adjusted", reference.first());
-    call.context.note(words);
+    let measure = forcing_measure(call)?;
     match numeric(call, "co2")? {
         Numeric::Quantity(co2) => {
             let values = co2.values.times(co2.measure.unit.factor_to(&ppm)?);

@@ -35,6 +35,7 @@ const fn operator(name: &'static str, summary: &'static str, parameters: &'stati
         search: &[],
         revision: 1,
         reads_clock: ReadsClock::WithSeries,
+        under: None,
         reads_file: None,
         random: false,
         labels: false,

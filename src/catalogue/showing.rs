@@ -48,6 +48,7 @@ static TABLE: Entry = Entry {
     search: &["show", "print", "numbers", "rows"],
     revision: 1,
     reads_clock: ReadsClock::WithSeries,
+    under: None,
     reads_file: None,
     random: false,
     labels: true,

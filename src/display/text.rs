@@ -1,5 +1,7 @@
 use super::number::{plain, with_range};
-use crate::value::{Attribution, Axis, Cell, Era, Measure, Shown, ShownSeries, Spread, Table, Unit};
+use crate::value::{
+    Attribution, Axis, Cell, Era, ForcingKind, Measure, Shown, ShownSeries, Spread, Table, Unit,
+};
 
 /// The one line of text under an output: the numbers a person wants first.
 pub fn line(shown: &Shown) -> String {
@@ -62,6 +64,14 @@ pub fn text(shown: &Shown) -> String {
     }
 }
 
+/// What kind of forcing a number is, where that is declared.
+fn kind(measure: &Measure) -> String {
+    match &measure.forcing {
+        Some(forcing) if forcing.kind != ForcingKind::Undeclared => format!(", {forcing}"),
+        _ => String::new(),
+    }
+}
+
 fn after(unit: &Unit) -> String {
     if unit.is_bare() { String::new() } else { format!(" {unit}") }
 }
@@ -75,9 +85,10 @@ fn ranged(nominal: f64, spread: Option<&Spread>, column: usize) -> String {
 fn quantity(nominal: f64, spread: Option<&Spread>, measure: &Measure) -> String {
     let number = ranged(nominal, spread, 0);
     let unit = after(&measure.unit);
+    let kind = kind(measure);
     match number.split_once(" [") {
-        Some((value, range)) => format!("{value}{unit} [{range}"),
-        None => number + &unit,
+        Some((value, range)) => format!("{value}{unit} [{range}{kind}"),
+        None => number + &unit + &kind,
     }
 }
 
@@ -116,6 +127,7 @@ fn series_line(series: &ShownSeries) -> String {
         }
     };
     let gaps = series.nominal.len() - known.len();
+    words += &kind(&series.measure);
     if gaps > 0 {
         words += &format!("; {gaps} {}", if gaps == 1 { "gap" } else { "gaps" });
     }

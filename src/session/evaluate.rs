@@ -250,7 +250,8 @@ impl Evaluator<'_> {
                 let mut parts = Parts::new("call");
                 parts.text(call.entry.name);
                 parts.number(u64::from(call.entry.revision));
-                self.given_parts(&mut parts, &call.given, call, environment);
+                let under = self.environment_of_first(node, call, environment);
+                self.given_parts(&mut parts, &call.given, call, environment, &under);
                 if let Some(variable) = call.variable {
                     parts.bytes(&variable);
                     parts.number(environment.members);
@@ -284,7 +285,30 @@ impl Evaluator<'_> {
         parts.finish()
     }
 
-    fn given_parts(&self, parts: &mut Parts, given: &[Given], call: &CallNode, environment: &Environment) {
+    /// The environment of the first argument: another clock, where the entry says that it is evaluated under one.
+    fn environment_of_first(
+        &self,
+        node: &Arc<Node>,
+        call: &CallNode,
+        environment: &Environment,
+    ) -> Environment {
+        let context = NodeContext::new(self, node, call, environment, Path::Nominal);
+        let view = Call::new(call.entry.signature.parameters, &call.given, &context);
+        let clock = call.entry.under.and_then(|parameter| view.value(parameter).ok());
+        match clock.as_deref() {
+            Some(Value::Clock(clock)) => environment.with_clock(clock.clone()),
+            _ => environment.clone(),
+        }
+    }
+
+    fn given_parts(
+        &self,
+        parts: &mut Parts,
+        given: &[Given],
+        call: &CallNode,
+        environment: &Environment,
+        of_first: &Environment,
+    ) {
         parts.number(given.len() as u64);
         // The order of named arguments is no part of what a call means.
         let mut order: Vec<&Given> = given.iter().collect();
@@ -295,6 +319,7 @@ impl Evaluator<'_> {
             match &given.what {
                 What::Value(slot) => {
                     let Some(slot) = call.slots.get(*slot) else { continue };
+                    let environment = if given.parameter == 0 { of_first } else { environment };
                     parts.print(self.fingerprint(slot, environment));
                     if call.entry.labels {
                         parts.text(&slot.label);
@@ -305,7 +330,7 @@ impl Evaluator<'_> {
                 }
                 What::Choice { choice, given } => {
                     parts.number(*choice as u64);
-                    self.given_parts(parts, given, call, environment);
+                    self.given_parts(parts, given, call, environment, environment);
                 }
                 What::Groups(groups) => {
                     for group in groups {
@@ -409,7 +434,7 @@ impl Evaluator<'_> {
             return remembered.map_err(|fault| placed(Stop::Fault(fault), node, call));
         }
         self.cancellation.check()?;
-        self.shape(node, environment)?;
+        let shape = self.shape(node, environment)?;
         if let Some(problem) = &environment.clock_problem
             && self.reads_clock(call, environment)
         {
@@ -424,6 +449,7 @@ impl Evaluator<'_> {
         let notes = Arc::new(context.notes.into_inner());
         match result {
             Ok(value) => {
+                debug_assert!(path != Path::Nominal || value.shape() == shape, "{} is not {shape:?}", call.entry.name);
                 let evaluated = (Arc::new(value), notes);
                 self.memo.insert(print, path, Ok(evaluated.clone()));
                 Ok(evaluated)

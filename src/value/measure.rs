@@ -126,6 +126,15 @@ impl Measure {
     }
 }
 
+impl fmt::Display for Forcing {
+    fn fmt(&self, formatter: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match &self.reference {
+            Some(reference) => write!(formatter, "{} change from {reference}", self.kind),
+            None => write!(formatter, "{}", self.kind),
+        }
+    }
+}
+
 impl Forcing {
     /// The forcing of a sum: kinds must agree, an undeclared one goes with any.
     fn with(&self, other: &Self) -> Result<Self, Fault> {
