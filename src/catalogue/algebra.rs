@@ -46,13 +46,8 @@ static COMPOSE: Entry = Entry {
             says: "measure different things",
         },
     ],
-    citations: &[],
     search: &["sum", "combine", "add", "together", "total"],
-    revision: 1,
     reads_clock: ReadsClock::WithSeries,
-    under: None,
-    reads_file: None,
-    random: false,
     labels: true,
     shape: |call| {
         let mut parts: Vec<(Arc<str>, Measure)> = Vec::new();
@@ -98,6 +93,7 @@ static COMPOSE: Entry = Entry {
         }
         Ok(Value::Bundle(bundle))
     }),
+    ..Entry::PLAIN
 };
 
 /// What to say where a forcing of undeclared kind goes with a declared one.
@@ -137,7 +133,6 @@ static WITHOUT: Entry = Entry {
         ],
     },
     result: "a bundle of the other components",
-    equation: None,
     gaps: "Gaps stay as they are.",
     shows: &[Shows {
         program: "clock = 1850..1851 CE by 1 yr\nsun = constant(0.1 W/m2)\nhaze = constant(-0.5 W/m2)\ncompose(sun, haze) |> without([haze])",
@@ -148,14 +143,7 @@ static WITHOUT: Entry = Entry {
         code: "unknown-component",
         says: "gases",
     }],
-    citations: &[],
     search: &["drop", "exclude", "remove", "leave out"],
-    revision: 1,
-    reads_clock: ReadsClock::Never,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |call| {
         let Shape::Bundle(parts) = call.shape("bundle")? else {
             return Err(Fault::new("wrong-argument", "only a bundle has components to leave out")
@@ -175,6 +163,7 @@ static WITHOUT: Entry = Entry {
             bundle.components.iter().filter(|part| !out.contains(&part.label)).cloned().collect();
         Ok(Value::Bundle(Bundle { components }))
     }),
+    ..Entry::PLAIN
 };
 
 fn labels_left_out(call: &Call<'_>, labels: &[Arc<str>]) -> Result<Vec<Arc<str>>, Stop> {
@@ -217,7 +206,6 @@ static SCALE: Entry = Entry {
     },
     result: "in the product of the units; a plain factor keeps unit and kind of forcing",
     equation: Some(r"y(t) = a\,x(t)"),
-    gaps: "A gap stays a gap.",
     shows: &[Shows {
         program: "x = series([1, 2] W/m2, along: 1850..1851 CE by 1 yr)\nx |> scale(0.5)",
         gives: "2 steps, 1850 CE to 1851 CE: 0.5 to 1 W/m2",
@@ -227,14 +215,7 @@ static SCALE: Entry = Entry {
         code: "wrong-argument",
         says: "a quantity",
     }],
-    citations: &[],
     search: &["multiply", "factor", "rescale", "efficacy"],
-    revision: 1,
-    reads_clock: ReadsClock::Never,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |call| {
         let factor = call.measure("factor")?;
         each_measure(call.shape("series")?, |measure| Ok(measure.product(&factor, 1)))
@@ -249,6 +230,7 @@ static SCALE: Entry = Entry {
             Ok(series.with(values, series.measure.product(&factor.measure, 1)))
         })
     }),
+    ..Entry::PLAIN
 };
 
 static ANOMALY: Entry = Entry {
@@ -273,14 +255,7 @@ static ANOMALY: Entry = Entry {
         code: "baseline",
         says: "two thirds",
     }],
-    citations: &[],
     search: &["baseline", "reference period", "departure"],
-    revision: 1,
-    reads_clock: ReadsClock::Never,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |call| {
         each_measure(call.shape("series")?, |measure| {
             Ok(Measure { reading: Reading::Difference, ..measure.clone() })
@@ -297,6 +272,7 @@ static ANOMALY: Entry = Entry {
             Ok(series.with(values, Measure { reading: Reading::Difference, ..series.measure.clone() }))
         })
     }),
+    ..Entry::PLAIN
 };
 
 /// The mean of every member over a window, of which two thirds must have values.
@@ -340,7 +316,6 @@ static SPLICE: Entry = Entry {
         ],
     },
     result: "a series of instants (steps stand at their middles), in the unit of the early one; nothing is adjusted in the overlap",
-    equation: None,
     gaps: "A gap stays a gap; the stretch between the two is one, unless `longest_gap` bridges it.",
     shows: &[Shows {
         program: "ice = series([280, 282] ppm, at: [1800 CE, 1850 CE])\nair = series([315, 316] ppm, along: 1958..1959 CE by 1 yr)\nsplice(ice, air, at: 1900 CE)",
@@ -351,20 +326,14 @@ static SPLICE: Entry = Entry {
         code: "no-overlap",
         says: "before",
     }],
-    citations: &[],
     search: &["join", "merge", "concatenate", "two sources"],
-    revision: 1,
-    reads_clock: ReadsClock::Never,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |call| {
         let early = call.measure("early")?;
         call.measure("late")?.unit.factor_to(&early.unit)?;
         Ok(Shape::Series(early))
     },
     body: Body::PerMember(splice),
+    ..Entry::PLAIN
 };
 
 fn splice(call: &Call<'_>) -> Result<Value, Stop> {

@@ -131,14 +131,11 @@ static ATTRIBUTE: Entry = Entry {
         "least squares",
         "multiple linear",
     ],
-    revision: 1,
     reads_clock: ReadsClock::Always,
-    under: None,
-    reads_file: None,
-    random: false,
     labels: true,
     shape: check,
     body: Body::AcrossMembers(attribute),
+    ..Entry::PLAIN
 };
 
 pub(super) const FAMILY: &[&Entry] = &[&ATTRIBUTE];

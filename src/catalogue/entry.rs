@@ -1,4 +1,5 @@
 use super::call::{Call, Stop};
+use crate::base::Fault;
 use crate::language::Signature;
 use crate::value::{Shape, Value};
 
@@ -42,6 +43,31 @@ pub struct Entry {
     pub shape: fn(&Call<'_>) -> Result<Shape, Stop>,
     /// The computation.
     pub body: Body,
+}
+
+impl Entry {
+    /// What most entries are: each writes only where it differs. An entry without name is no entry.
+    pub(super) const PLAIN: Entry = Entry {
+        name: "",
+        room: Room::Algebra,
+        summary: "",
+        signature: Signature { parameters: &[] },
+        result: "",
+        equation: None,
+        gaps: "A gap stays a gap.",
+        shows: &[],
+        fails: &[],
+        citations: &[],
+        search: &[],
+        revision: 1,
+        reads_clock: ReadsClock::Never,
+        under: None,
+        reads_file: None,
+        random: false,
+        labels: false,
+        shape: |call| Ok(call.context.own_value()?.shape()),
+        body: Body::PerMember(|_| Err(Fault::new("internal", "an entry without a body").into())),
+    };
 }
 
 /// How a body sees the members.

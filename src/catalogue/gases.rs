@@ -34,7 +34,10 @@ static CO2_FORCING: Entry = Entry {
     equation: Some(r"F = 5.35\,\mathrm{W\,m^{-2}} \ln\frac{C}{C_0}"),
     gaps: "A gap stays a gap, and an amount that is not above zero is one.",
     shows: &[
-        Shows { program: "co2_forcing(556 ppm)", gives: "3.70834 W/m2, stratosphere-adjusted change from 278 ppm CO2" },
+        Shows {
+            program: "co2_forcing(556 ppm)",
+            gives: "3.70834 W/m2, stratosphere-adjusted change from 278 ppm CO2",
+        },
         Shows {
             program: "co2 = series([278, 417] ppm, along: 1850..1851 CE by 1 yr)\nco2_forcing(co2)",
             gives: "2 steps, 1850 CE to 1851 CE: 0 to 2.16924 W/m2, stratosphere-adjusted change from 278 ppm CO2",
@@ -51,12 +54,7 @@ static CO2_FORCING: Entry = Entry {
     ],
     citations: &[&MYHRE_1998],
     search: &["carbon dioxide", "greenhouse", "radiative forcing"],
-    revision: 1,
     reads_clock: ReadsClock::WithSeries,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |call| {
         let measure = forcing_measure(call)?;
         Ok(match call.shape("co2")? {
@@ -65,6 +63,7 @@ static CO2_FORCING: Entry = Entry {
         })
     },
     body: Body::PerMember(co2_forcing),
+    ..Entry::PLAIN
 };
 
 /// The forcing's measure: its kind, and what it is a change from.

@@ -14,11 +14,14 @@ mod call;
 mod citations;
 mod entry;
 mod explain;
+mod filters;
 mod gases;
 mod onto;
 mod operators;
 mod reading;
+mod reductions;
 mod response;
+mod shapes;
 mod showing;
 mod time;
 
@@ -31,7 +34,10 @@ const FAMILIES: &[&[&Entry]] = &[
     operators::FAMILY,
     time::FAMILY,
     reading::FAMILY,
+    shapes::FAMILY,
     algebra::FAMILY,
+    filters::FAMILY,
+    reductions::FAMILY,
     gases::FAMILY,
     response::FAMILY,
     attribution::FAMILY,

@@ -26,21 +26,11 @@ const fn operator(name: &'static str, summary: &'static str, parameters: &'stati
         room: Room::Operators,
         summary,
         signature: Signature { parameters },
-        result: "",
-        equation: None,
         gaps: "A gap on either side is a gap in the result.",
-        shows: &[],
-        fails: &[],
-        citations: &[],
-        search: &[],
-        revision: 1,
         reads_clock: ReadsClock::WithSeries,
-        under: None,
-        reads_file: None,
-        random: false,
-        labels: false,
         shape: sum_shape,
         body: Body::PerMember(plus),
+        ..Entry::PLAIN
     }
 }
 

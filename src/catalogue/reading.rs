@@ -3,7 +3,7 @@
 use std::sync::Arc;
 
 use super::call::{Call, Stop, wrong_kind};
-use super::entry::{Body, Entry, Fails, ReadsClock, Room, Shows};
+use super::entry::{Body, Entry, Fails, Room, Shows};
 use super::onto::counted;
 use super::time::clock_argument;
 use crate::base::Fault;
@@ -35,7 +35,6 @@ static LOAD: Entry = Entry {
         ],
     },
     result: "a series on the file's own axis, in the file's unit",
-    equation: None,
     gaps: "Empty cells, NaN and infinities are gaps and are counted in a note; other oddities are errors with line and column.",
     shows: &[
         Shows { program: "load(\"spots.csv\")", gives: "6 steps, 1850 CE to 1855 CE: 66 to 7 spots_v2" },
@@ -49,16 +48,11 @@ static LOAD: Entry = Entry {
         Fails { program: "load(\"../spots.csv\")", code: "file-outside", says: "folder" },
         Fails { program: "load(\"core.csv\", value: \"ch4\")", code: "file-no-such-column", says: "ch4" },
     ],
-    citations: &[],
     search: &["read", "open", "csv", "file", "data", "import"],
-    revision: 1,
-    reads_clock: ReadsClock::Never,
-    under: None,
     reads_file: Some("file"),
-    random: false,
-    labels: false,
     shape: |call| Ok(call.context.own_value()?.shape()),
     body: Body::PerMember(load),
+    ..Entry::PLAIN
 };
 
 fn load(call: &Call<'_>) -> Result<Value, Stop> {
@@ -150,7 +144,7 @@ fn loaded_measure(unit: Unit) -> Measure {
     Measure { reading, ..made_measure(unit) }
 }
 
-fn made_measure(unit: Unit) -> Measure {
+pub(super) fn made_measure(unit: Unit) -> Measure {
     let forcing =
         (unit.to_string() == "W/m2").then_some(Forcing { kind: ForcingKind::Undeclared, reference: None });
     Measure { forcing, ..Measure::of(unit) }
@@ -172,7 +166,6 @@ static SERIES: Entry = Entry {
         ],
     },
     result: "a series on an axis of its own, in the unit of the values",
-    equation: None,
     gaps: "A list has none; leave the instant out.",
     shows: &[
         Shows {
@@ -197,14 +190,7 @@ static SERIES: Entry = Entry {
         },
         Fails { program: "series([1, 2] ppm)", code: "missing-argument", says: "along" },
     ],
-    citations: &[],
     search: &["list", "vector", "by hand"],
-    revision: 1,
-    reads_clock: ReadsClock::Never,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |call| {
         let Shape::List(items) = call.shape("values")? else {
             return Err(Fault::new("wrong-argument", "the values are no list").blame("values").into());
@@ -239,6 +225,7 @@ static SERIES: Entry = Entry {
         Ok(Shape::Series(made_measure(unit)))
     },
     body: Body::PerMember(series),
+    ..Entry::PLAIN
 };
 
 fn series(call: &Call<'_>) -> Result<Value, Stop> {
@@ -316,44 +303,4 @@ fn instants(call: &Call<'_>) -> Result<Vec<(f64, Era)>, Stop> {
         .collect()
 }
 
-static CONSTANT: Entry = Entry {
-    name: "constant",
-    room: Room::Shapes,
-    summary: "The same value at every time of the clock.",
-    signature: Signature { parameters: &[Parameter::required("value", &["quantity"], "the value")] },
-    result: "a series in the unit of the value",
-    equation: Some(r"x(t) = x_0"),
-    gaps: "It has none.",
-    shows: &[Shows {
-        program: "clock = 1850..1852 CE by 1 yr\nconstant(0.3 ± 0.1 W/m2)",
-        gives: "3 steps, 1850 CE to 1852 CE: 0.30 [0.13, 0.46] to 0.30 [0.13, 0.46] W/m2",
-    }],
-    fails: &[Fails { program: "constant(0.3 W/m2)", code: "no-clock", says: "clock" }],
-    citations: &[],
-    search: &["flat", "uniform"],
-    revision: 1,
-    reads_clock: ReadsClock::Always,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
-    shape: |call| Ok(Shape::Series(made_measure(call.measure("value")?.unit))),
-    body: Body::PerMember(|call| {
-        let Some(clock) = call.context.clock() else {
-            return Err(Fault::new("no-clock", "a formula needs a clock to be evaluated on")
-                .help("define one, such as `clock = 1850..2020 CE by 1 yr`")
-                .into());
-        };
-        let value = call.value("value")?;
-        let Value::Quantity(quantity) = value.as_ref() else {
-            return Err(wrong_kind("value", &value).into());
-        };
-        let values = quantity
-            .values
-            .map_rows(clock.axis.len(), |from, to| to.fill(from.first().copied().unwrap_or(f64::NAN)));
-        let measure = made_measure(quantity.measure.unit.clone());
-        Ok(Value::Series(Series::new(clock.axis.clone(), values, measure, Standing::OnClock)))
-    }),
-};
-
-pub(super) const FAMILY: &[&Entry] = &[&LOAD, &SERIES, &CONSTANT];
+pub(super) const FAMILY: &[&Entry] = &[&LOAD, &SERIES];

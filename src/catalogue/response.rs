@@ -53,12 +53,6 @@ static TWO_LAYER: Entry = Entry {
     ],
     citations: &[&GEOFFROY_2013A, &GEOFFROY_2013B],
     search: &["energy balance", "climate model", "box model", "ocean heat", "ecs", "feedback"],
-    revision: 1,
-    reads_clock: ReadsClock::Never,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |_| Ok(Shape::Model),
     body: Body::PerMember(|call| {
         let model = Model::TwoLayer {
@@ -85,6 +79,7 @@ static TWO_LAYER: Entry = Entry {
         }
         Ok(Value::Model(model))
     }),
+    ..Entry::PLAIN
 };
 
 fn out_of_range_fault(error: &TwoLayerError) -> Fault {
@@ -162,12 +157,7 @@ static RESPOND: Entry = Entry {
     ],
     citations: &[&GEOFFROY_2013A, &GEOFFROY_2013B],
     search: &["temperature", "warming", "simulate", "run", "convolve"],
-    revision: 1,
     reads_clock: ReadsClock::WithSeries,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |call| {
         let measure = temperature()?;
         each_measure(call.shape("forcing")?, |_| Ok(measure.clone()))
@@ -181,6 +171,7 @@ static RESPOND: Entry = Entry {
             respond(call.context, series, name, model, within_step)
         })
     }),
+    ..Entry::PLAIN
 };
 
 fn temperature() -> Result<Measure, Fault> {

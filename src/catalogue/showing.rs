@@ -30,7 +30,6 @@ static TABLE: Entry = Entry {
         ],
     },
     result: "a table; values of an uncertain series with median and 5–95 % range",
-    equation: None,
     gaps: "A gap is an empty cell.",
     shows: &[Shows {
         program: "table(series([1, 2] ppm, along: 1850..1851 CE by 1 yr))",
@@ -44,13 +43,8 @@ static TABLE: Entry = Entry {
             says: "attribution",
         },
     ],
-    citations: &[],
     search: &["show", "print", "numbers", "rows"],
-    revision: 1,
     reads_clock: ReadsClock::WithSeries,
-    under: None,
-    reads_file: None,
-    random: false,
     labels: true,
     shape: |call| {
         let windows = call.slot("change").is_some() || call.slot("from").is_some();
@@ -69,6 +63,7 @@ static TABLE: Entry = Entry {
         Ok(Shape::Table)
     },
     body: Body::AcrossMembers(|call| Ok(Value::Table(Arc::new(table(call)?)))),
+    ..Entry::PLAIN
 };
 
 pub(super) const FAMILY: &[&Entry] = &[&TABLE];

@@ -23,18 +23,10 @@ static STEPS: Entry = Entry {
         )],
     },
     result: "a clock of steps; between n instants lie n − 1 steps",
-    equation: None,
     gaps: "It meets none.",
     shows: &[Shows { program: "steps(800..0 ka by 1 kyr)", gives: "800 steps, 800 ka to 0 ka" }],
     fails: &[Fails { program: "steps(800..0 ka)", code: "wrong-argument", says: "a clock" }],
-    citations: &[],
     search: &["mean", "interval"],
-    revision: 1,
-    reads_clock: ReadsClock::Never,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |_| Ok(Shape::Clock),
     body: Body::PerMember(|call| {
         let clock = clock_argument(call, "clock")?;
@@ -49,6 +41,7 @@ static STEPS: Entry = Entry {
         let axis = Axis::steps(starts.to_vec(), ends.to_vec(), axis.era);
         Ok(Value::Clock(Arc::new(Clock { axis: axis.into(), step_years: clock.step_years })))
     }),
+    ..Entry::PLAIN
 };
 
 static INSTANTS: Entry = Entry {
@@ -63,24 +56,17 @@ static INSTANTS: Entry = Entry {
         )],
     },
     result: "a clock of instants, at the beginning of each step",
-    equation: None,
     gaps: "It meets none.",
     shows: &[Shows { program: "instants(1850..1900 CE by 1 yr)", gives: "51 instants, 1850 CE to 1900 CE" }],
     fails: &[Fails { program: "instants(1850 CE)", code: "wrong-argument", says: "a clock" }],
-    citations: &[],
     search: &["point"],
-    revision: 1,
-    reads_clock: ReadsClock::Never,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |_| Ok(Shape::Clock),
     body: Body::PerMember(|call| {
         let clock = clock_argument(call, "clock")?;
         let axis = Axis::instants(clock.axis.starts().to_vec(), clock.axis.era);
         Ok(Value::Clock(Arc::new(Clock { axis: axis.into(), step_years: clock.step_years })))
     }),
+    ..Entry::PLAIN
 };
 
 static ON: Entry = Entry {
@@ -94,7 +80,6 @@ static ON: Entry = Entry {
         ],
     },
     result: "the same on that clock; it meets no series on another axis",
-    equation: None,
     gaps: "A step is the mean of its data if two thirds of it are covered, else a gap; gaps longer than `longest_gap` are not bridged.",
     shows: &[Shows {
         program: "x = series([1, 2, 3, 4] ppm, along: 1850..1853 CE by 1 yr)\nx |> on(1850..1853 CE by 2 yr)",
@@ -105,14 +90,8 @@ static ON: Entry = Entry {
         code: "no-overlap",
         says: "no value inside",
     }],
-    citations: &[],
     search: &["resample", "interpolate", "average", "regrid"],
-    revision: 1,
-    reads_clock: ReadsClock::Never,
     under: Some("clock"),
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |call| call.shape("series"),
     body: Body::PerMember(|call| {
         let clock = clock_argument(call, "clock")?;
@@ -127,6 +106,7 @@ static ON: Entry = Entry {
         };
         series_or_bundle(&value, &name, &mut |series, label| pin(series, label))
     }),
+    ..Entry::PLAIN
 };
 
 static WITHIN: Entry = Entry {
@@ -144,7 +124,6 @@ static WITHIN: Entry = Entry {
         ],
     },
     result: "the same, with the values outside left away",
-    equation: None,
     gaps: "A gap inside stays a gap.",
     shows: &[Shows {
         program: "x = series([1, 2, 3, 4] ppm, along: 1850..1853 CE by 1 yr)\nx |> within(1851..1852 CE)",
@@ -155,14 +134,7 @@ static WITHIN: Entry = Entry {
         code: "no-overlap",
         says: "nothing of",
     }],
-    citations: &[],
     search: &["window", "select", "subset", "crop", "between"],
-    revision: 1,
-    reads_clock: ReadsClock::Never,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |call| call.shape("series"),
     body: Body::PerMember(|call| {
         let Some(span) = call.span("span")? else {
@@ -171,6 +143,7 @@ static WITHIN: Entry = Entry {
         let name = call.label("series");
         series_or_bundle(&*call.value("series")?, &name, &mut |series, label| part(series, label, &span))
     }),
+    ..Entry::PLAIN
 };
 
 fn part(series: &Series, name: &str, span: &TimeSpan) -> Result<Series, Stop> {
@@ -222,14 +195,8 @@ static LAG: Entry = Entry {
         code: "wrong-argument",
         says: "a duration",
     }],
-    citations: &[],
     search: &["delay", "shift", "lead"],
-    revision: 1,
     reads_clock: ReadsClock::WithSeries,
-    under: None,
-    reads_file: None,
-    random: false,
-    labels: false,
     shape: |call| call.shape("series"),
     body: Body::PerMember(|call| {
         let years = call.certain("by")?;
@@ -247,6 +214,7 @@ static LAG: Entry = Entry {
             Ok(Series { axis, ..series.clone() })
         })
     }),
+    ..Entry::PLAIN
 };
 
 pub(super) const FAMILY: &[&Entry] = &[&STEPS, &INSTANTS, &ON, &WITHIN, &LAG];

@@ -8,5 +8,6 @@ mod matrix_functions;
 pub mod reduce;
 pub mod regression;
 pub mod resample;
+pub mod smoothing;
 pub mod student;
 pub mod two_layer;

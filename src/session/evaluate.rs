@@ -449,7 +449,11 @@ impl Evaluator<'_> {
         let notes = Arc::new(context.notes.into_inner());
         match result {
             Ok(value) => {
-                debug_assert!(path != Path::Nominal || value.shape() == shape, "{} is not {shape:?}", call.entry.name);
+                debug_assert!(
+                    path != Path::Nominal || value.shape() == shape,
+                    "{} is not {shape:?}",
+                    call.entry.name
+                );
                 let evaluated = (Arc::new(value), notes);
                 self.memo.insert(print, path, Ok(evaluated.clone()));
                 Ok(evaluated)
