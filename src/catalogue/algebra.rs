@@ -71,6 +71,7 @@ static COMPOSE: Entry = Entry {
     },
     body: Body::PerMember(|call| {
         let mut components = Vec::new();
+        let mut leaves = 0;
         for (label, slot) in call.repeated("components") {
             let label = label.unwrap_or_else(|| call.context.label(slot));
             let content = match call.context.value(slot)?.as_ref() {
@@ -78,6 +79,13 @@ static COMPOSE: Entry = Entry {
                 Value::Bundle(bundle) => Content::Bundle(bundle.clone()),
                 other => return Err(wrong_kind("components", other).into()),
             };
+            leaves += match &content {
+                Content::Series(_) => 1,
+                Content::Bundle(bundle) => bundle.leaves().len(),
+            };
+            if leaves > COMPONENTS_LIMIT {
+                return Err(Fault::new("too-large", format!("this bundle has more than {COMPONENTS_LIMIT} components")).into());
+            }
             components.push(Component { label, content });
         }
         let bundle = Bundle { components };
@@ -95,6 +103,9 @@ static COMPOSE: Entry = Entry {
     }),
     ..Entry::PLAIN
 };
+
+/// The most components that a bundle may have, those of bundles inside it included: bundles of bundles double.
+const COMPONENTS_LIMIT: usize = 1_000;
 
 /// What to say where a forcing of undeclared kind goes with a declared one.
 fn mixed_kinds(bundle: &Bundle) -> Option<String> {

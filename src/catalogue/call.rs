@@ -138,6 +138,13 @@ pub enum What {
     },
     /// Sums of labels.
     Groups(Vec<Vec<Arc<str>>>),
+    /// A range of months, counted from 0 for January; it may run over the turn of the year.
+    Months {
+        /// The first month.
+        first: usize,
+        /// The last month.
+        last: usize,
+    },
 }
 
 /// A call as its body sees it: arguments by the names of their parameters.
@@ -169,7 +176,7 @@ impl<'a> Call<'a> {
     pub fn slot(&self, name: &str) -> Option<usize> {
         self.first(name).and_then(|given| match &given.what {
             What::Value(slot) => Some(*slot),
-            What::Choice { .. } | What::Groups(_) => None,
+            What::Choice { .. } | What::Groups(_) | What::Months { .. } => None,
         })
     }
 
@@ -178,7 +185,7 @@ impl<'a> Call<'a> {
         self.all(name)
             .filter_map(|given| match &given.what {
                 What::Value(slot) => Some((given.label.clone(), *slot)),
-                What::Choice { .. } | What::Groups(_) => None,
+                What::Choice { .. } | What::Groups(_) | What::Months { .. } => None,
             })
             .collect()
     }
@@ -191,11 +198,19 @@ impl<'a> Call<'a> {
         Some((choice.name, Call { parameters: choice.parameters, given: inner, context: self.context }))
     }
 
+    /// The months given for a parameter, first and last, from 0 for January.
+    pub fn months(&self, name: &str) -> Option<(usize, usize)> {
+        match &self.first(name)?.what {
+            What::Months { first, last } => Some((*first, *last)),
+            What::Value(_) | What::Choice { .. } | What::Groups(_) => None,
+        }
+    }
+
     /// The sums of labels given for a parameter.
     pub fn groups(&self, name: &str) -> Option<&'a [Vec<Arc<str>>]> {
         match &self.first(name)?.what {
             What::Groups(groups) => Some(groups),
-            What::Value(_) | What::Choice { .. } => None,
+            What::Value(_) | What::Choice { .. } | What::Months { .. } => None,
         }
     }
 
@@ -325,7 +340,7 @@ pub fn check_arguments(call: &Call<'_>) -> Result<(), Stop> {
     for given in call.given {
         let Some(parameter) = call.parameters.get(given.parameter) else { continue };
         match &given.what {
-            What::Groups(_) => {}
+            What::Groups(_) | What::Months { .. } => {}
             What::Choice { choice, given } => {
                 if let Some(choice) = parameter.choices.get(*choice) {
                     check_arguments(&Call::new(choice.parameters, given, call.context))?;

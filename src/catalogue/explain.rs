@@ -2,7 +2,7 @@
 
 use super::entries;
 use super::entry::Entry;
-use crate::language::{Parameter, Presence};
+use crate::language::{Parameter, Presence, Words};
 
 /// `name(first, second: …)`, or how an operator is written.
 fn usage(entry: &Entry) -> String {
@@ -31,8 +31,10 @@ fn is_function(name: &str) -> bool {
 fn takes(parameter: &Parameter) -> String {
     let mut words: Vec<String> = parameter.accepts.iter().map(|kind| (*kind).to_owned()).collect();
     words.extend(parameter.choices.iter().map(|choice| format!("`{}`", choice.name)));
-    if parameter.groups_labels {
-        words = vec!["labels in a list".to_owned()];
+    match parameter.words {
+        Words::None => {}
+        Words::Groups => words = vec!["labels in a list".to_owned()],
+        Words::Months => words = vec!["a month, or months such as `December..February`".to_owned()],
     }
     let unit =
         parameter.unit.filter(|unit| *unit != "1").map(|unit| format!(" in {unit}")).unwrap_or_default();

@@ -174,6 +174,9 @@ static RESPOND: Entry = Entry {
     ..Entry::PLAIN
 };
 
+/// The most steps that a response takes, those before the clock included.
+const LEAD_LIMIT: usize = 5_000_000;
+
 fn temperature() -> Result<Measure, Fault> {
     Unit::parse("degC").map(Measure::of).map_err(|_| Fault::new("internal", "a unit of the table is missing"))
 }
@@ -198,6 +201,15 @@ pub(super) fn respond(
                 }
                 _ => 0,
             };
+            if earlier.saturating_add(clock.axis.len()) > LEAD_LIMIT {
+                return Err(Fault::new(
+                    "clock-size",
+                    format!("`{name}` begins {earlier} steps of the clock before the clock"),
+                )
+                .blame("forcing")
+                .help("take a part of it with `within`, or a clock with longer steps")
+                .into());
+            }
             let longer = if earlier == 0 { clock.axis.clone() } else { clock.extended_back(earlier).axis };
             if earlier > 0 && context.path() == Path::Nominal {
                 context.note(format!(

@@ -11,7 +11,7 @@ mod syntax;
 pub use canonical::canonical;
 pub use keywords::{KEYWORDS, Keyword, KeywordRole};
 pub use parser::{NESTING_LIMIT, SyntaxError, parse};
-pub use signature::{Choice, Parameter, Presence, Signature};
+pub use signature::{Choice, MONTHS, Parameter, Presence, Signature, Words};
 pub use syntax::{
     Argument, BinaryOperator, Expression, ExpressionKind, Program, Statement, StatementKind, UnitText,
 };

@@ -20,9 +20,36 @@ pub struct Parameter {
     pub presence: Presence,
     /// The choices that it can be given by name.
     pub choices: &'static [Choice],
-    /// Whether its argument is a list of sums of component labels, which are never looked up as names.
-    pub groups_labels: bool,
+    /// Whether its argument is made of words that are never looked up as names.
+    pub words: Words,
 }
+
+/// Arguments that are made of words, resolved by the signature.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Words {
+    /// An ordinary argument.
+    None,
+    /// A list of sums of component labels: `[sun + sulfate, gases]`.
+    Groups,
+    /// A month or a range of months: `December..February`.
+    Months,
+}
+
+/// The months, as they are written.
+pub const MONTHS: [&str; 12] = [
+    "January",
+    "February",
+    "March",
+    "April",
+    "May",
+    "June",
+    "July",
+    "August",
+    "September",
+    "October",
+    "November",
+    "December",
+];
 
 /// Whether an argument may be left out.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -65,7 +92,7 @@ impl Parameter {
             meaning,
             presence: Presence::Required,
             choices: &[],
-            groups_labels: false,
+            words: Words::None,
         }
     }
 
@@ -108,9 +135,14 @@ impl Parameter {
         Self { presence: Presence::Repeated { labels }, ..self }
     }
 
+    /// The same, as a month or a range of months.
+    pub const fn as_months(self) -> Self {
+        Self { words: Words::Months, ..self }
+    }
+
     /// The same, as a list of sums of labels.
     pub const fn as_groups(self) -> Self {
-        Self { groups_labels: true, ..self }
+        Self { words: Words::Groups, ..self }
     }
 }
 

@@ -11,7 +11,7 @@ use super::graph::Graph;
 use super::inputs::{FILE_LIMIT, Inputs};
 use super::memo::Memo;
 use super::node::Node;
-use super::resolve::resolve;
+use super::resolve::{SIZE_LIMIT, resolve};
 use crate::base::{Cancellation, Diagnostic, Fault, Source, SourceId, Span};
 use crate::catalogue::{Path, Stop};
 use crate::language::{Expression, Program, Statement, StatementKind, canonical, parse};
@@ -215,7 +215,7 @@ impl Session {
         let changed = changed(&before, &self.bindings());
         self.displays.retain(|display| display.cell != cell);
         for (expression, span_text) in shown {
-            let node = resolve(&self.definitions, None, &expression);
+            let node = resolve(&self.definitions, None, &expression, SIZE_LIMIT);
             let fingerprint = Parts::new("not evaluated").finish();
             let id = self.next_display;
             self.next_display += 1;
@@ -313,7 +313,7 @@ impl Session {
         if self.function_texts() != functions_before {
             self.definitions.resolve_again();
             for display in &mut self.displays {
-                display.node = resolve(&self.definitions, None, &display.expression);
+                display.node = resolve(&self.definitions, None, &display.expression, SIZE_LIMIT);
             }
         }
         Ok(shown)

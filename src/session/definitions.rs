@@ -7,6 +7,9 @@ use crate::base::{Diagnostic, Fault, SourceId, Span};
 use crate::catalogue;
 use crate::language::Expression;
 
+/// The most nodes that all definitions may have together.
+const SESSION_LIMIT: usize = 600_000;
+
 /// The definitions in force, by name.
 #[derive(Default)]
 pub(super) struct Definitions {
@@ -91,7 +94,8 @@ impl Definitions {
                 from = Some(old.cell.clone());
             }
         }
-        let node = resolve(self, Some(name), &expression);
+        self.values.remove(name);
+        let node = resolve(self, Some(name), &expression, self.room());
         let definition =
             Definition { cell: cell.clone(), rivals, deleted: false, name_span, expression, node };
         self.values.insert(Arc::from(name), definition);
@@ -102,10 +106,9 @@ impl Definitions {
     pub(super) fn resolve_again(&mut self) {
         let names: Vec<Arc<str>> = self.values.keys().cloned().collect();
         for name in names {
-            let node = self.values.get(&name).map(|found| resolve(&*self, Some(&name), &found.expression));
-            if let (Some(definition), Some(node)) = (self.values.get_mut(&name), node) {
-                definition.node = node;
-            }
+            let Some(mut definition) = self.values.remove(&name) else { continue };
+            definition.node = resolve(&*self, Some(&name), &definition.expression, self.room());
+            self.values.insert(name, definition);
         }
     }
 
@@ -131,6 +134,13 @@ impl Definitions {
         }
         self.functions.retain(|name, function| &*function.cell != cell || kept_functions.contains(name));
         gone.iter().map(|name| name.to_string()).collect()
+    }
+
+    /// How many nodes a further definition may have.
+    fn room(&self) -> usize {
+        let sizes =
+            self.values.values().map(|definition| definition.node.as_ref().map_or(0, |node| node.size));
+        SESSION_LIMIT.saturating_sub(sizes.sum())
     }
 
     /// The texts that spans of definitions point into.

@@ -23,6 +23,12 @@ use crate::value::{Clock, Instant, Quantity, Shape, Spread, TimeSpan, Unit, Valu
 /// A value with the notes made on the way to it.
 pub(super) type Evaluated = (Arc<Value>, Notes);
 
+/// The most clocks that the arguments of one execution may be evaluated under.
+const CLOCKS_LIMIT: usize = 2_000;
+
+/// The most bytes that a value may take for one block of members.
+const BLOCK_BYTES_LIMIT: f64 = 1e9;
+
 /// The most values that a list may hold in all, lists inside it included.
 const LIST_LIMIT: usize = 10_000;
 
@@ -41,10 +47,16 @@ pub(super) struct Evaluator<'s> {
 #[derive(Default)]
 pub(super) struct Caches {
     shapes: Mutex<HashMap<(usize, u64), Result<Shape, Stop>>>,
-    prints: Mutex<HashMap<(usize, u64), Fingerprint>>,
+    prints: Mutex<HashMap<(usize, u64, Names), Fingerprint>>,
     uncertain: Mutex<HashMap<usize, bool>>,
     items: Mutex<HashMap<(usize, usize), Arc<Node>>>,
     expanded: AtomicUsize,
+    /// The clocks that arguments were evaluated under.
+    clocks: Mutex<HashSet<u64>>,
+    /// The settings where nobody sets them.
+    defaults: Mutex<HashMap<&'static str, Arc<Node>>>,
+    /// Nodes made on the way: they must outlive what is remembered by their place.
+    kept: Mutex<Vec<Arc<Node>>>,
 }
 
 fn lock<T>(mutex: &Mutex<T>) -> std::sync::MutexGuard<'_, T> {
@@ -53,6 +65,16 @@ fn lock<T>(mutex: &Mutex<T>) -> std::sync::MutexGuard<'_, T> {
 
 fn address(node: &Arc<Node>) -> usize {
     Arc::as_ptr(node) as usize
+}
+
+/// Whether a hash tells apart what things are called.
+///
+/// The fingerprint of a result does not: it is the same whatever its parts are called. What is remembered does,
+/// since notes and faults name things as the user does.
+#[derive(Clone, Copy, PartialEq, Eq, Hash)]
+enum Names {
+    Ignored,
+    Counted,
 }
 
 impl Evaluator<'_> {
@@ -74,11 +96,19 @@ impl Evaluator<'_> {
                 Err(problem) => Err(Stop::Placed(Box::new(problem.clone()))),
             },
             None => match &**name {
-                "members" => Ok((default_setting(DEFAULT_MEMBERS, span), environment)),
-                "seed" => Ok((default_setting(DEFAULT_SEED, span), environment)),
+                "members" => Ok((self.default_setting("members", DEFAULT_MEMBERS), environment)),
+                "seed" => Ok((self.default_setting("seed", DEFAULT_SEED), environment)),
                 _ => Err(Stop::Placed(Box::new(self.not_defined(name).at(span)))),
             },
         }
+    }
+
+    fn default_setting(&self, name: &'static str, value: u64) -> Arc<Node> {
+        let make = || {
+            let value = Value::Quantity(Quantity::certain(value as f64, Unit::number()));
+            Node::new(NodeKind::Constant(Arc::new(value)), Span::default(), Arc::from(name))
+        };
+        lock(&self.caches.defaults).entry(name).or_insert_with(make).clone()
     }
 
     fn not_defined(&self, name: &str) -> Fault {
@@ -198,6 +228,7 @@ impl Evaluator<'_> {
                 Node::new(NodeKind::Item { list: list.clone(), index }, list.span, label)
             });
             let made = body.with_item(*variable, &item);
+            lock(&self.caches.kept).push(item);
             lock(&self.caches.items).insert(key, made.clone());
             made
         });
@@ -206,29 +237,33 @@ impl Evaluator<'_> {
 
     /// The fingerprint of a node in an environment.
     pub(super) fn fingerprint(&self, node: &Arc<Node>, environment: &Environment) -> Fingerprint {
-        let key = (address(node), environment.key);
+        self.print(node, environment, Names::Ignored)
+    }
+
+    fn print(&self, node: &Arc<Node>, environment: &Environment, names: Names) -> Fingerprint {
+        let key = (address(node), environment.key, names);
         if let Some(known) = lock(&self.caches.prints).get(&key) {
             return *known;
         }
-        let print = self.find_fingerprint(node, environment);
+        let print = self.find_print(node, environment, names);
         lock(&self.caches.prints).insert(key, print);
         print
     }
 
-    fn find_fingerprint(&self, node: &Arc<Node>, environment: &Environment) -> Fingerprint {
+    fn find_print(&self, node: &Arc<Node>, environment: &Environment, names: Names) -> Fingerprint {
         match &node.kind {
             NodeKind::Constant(value) => {
                 let mut parts = Parts::new("constant");
                 constant(&mut parts, value);
                 parts.finish()
             }
-            NodeKind::List(items) => self.list_fingerprint(items, environment),
+            NodeKind::List(items) => self.list_print(items, environment, names),
             NodeKind::ForEach { .. } => match self.items(node, environment) {
-                Ok(items) => self.list_fingerprint(&items, environment),
+                Ok(items) => self.list_print(&items, environment, names),
                 Err(_) => Parts::new("broken loop").finish(),
             },
             NodeKind::Reference(name) => match self.definition(name, node.span, environment) {
-                Ok((target, environment)) => self.fingerprint(&target, &environment),
+                Ok((target, environment)) => self.print(&target, &environment, names),
                 Err(_) => {
                     let mut parts = Parts::new("missing");
                     parts.text(name);
@@ -237,7 +272,7 @@ impl Evaluator<'_> {
             },
             NodeKind::Item { list, index } => {
                 let mut parts = Parts::new("item");
-                parts.print(self.fingerprint(list, environment));
+                parts.print(self.print(list, environment, names));
                 parts.number(*index as u64);
                 parts.finish()
             }
@@ -251,7 +286,7 @@ impl Evaluator<'_> {
                 parts.text(call.entry.name);
                 parts.number(u64::from(call.entry.revision));
                 let under = self.environment_of_first(node, call, environment);
-                self.given_parts(&mut parts, &call.given, call, environment, &under);
+                self.given_parts(&mut parts, &call.given, call, environment, &under, names);
                 if let Some(variable) = call.variable {
                     parts.bytes(&variable);
                     parts.number(environment.members);
@@ -277,10 +312,10 @@ impl Evaluator<'_> {
         }
     }
 
-    fn list_fingerprint(&self, items: &[Arc<Node>], environment: &Environment) -> Fingerprint {
+    fn list_print(&self, items: &[Arc<Node>], environment: &Environment, names: Names) -> Fingerprint {
         let mut parts = Parts::new("list");
         for item in items {
-            parts.print(self.fingerprint(item, environment));
+            parts.print(self.print(item, environment, names));
         }
         parts.finish()
     }
@@ -308,6 +343,7 @@ impl Evaluator<'_> {
         call: &CallNode,
         environment: &Environment,
         of_first: &Environment,
+        names: Names,
     ) {
         parts.number(given.len() as u64);
         // The order of named arguments is no part of what a call means.
@@ -320,8 +356,8 @@ impl Evaluator<'_> {
                 What::Value(slot) => {
                     let Some(slot) = call.slots.get(*slot) else { continue };
                     let environment = if given.parameter == 0 { of_first } else { environment };
-                    parts.print(self.fingerprint(slot, environment));
-                    if call.entry.labels {
+                    parts.print(self.print(slot, environment, names));
+                    if call.entry.labels || names == Names::Counted {
                         parts.text(&slot.label);
                         for label in self.item_labels(slot, environment) {
                             parts.text(&label);
@@ -330,7 +366,11 @@ impl Evaluator<'_> {
                 }
                 What::Choice { choice, given } => {
                     parts.number(*choice as u64);
-                    self.given_parts(parts, given, call, environment, environment);
+                    self.given_parts(parts, given, call, environment, environment, names);
+                }
+                What::Months { first, last } => {
+                    parts.number(*first as u64);
+                    parts.number(*last as u64);
                 }
                 What::Groups(groups) => {
                     for group in groups {
@@ -429,12 +469,25 @@ impl Evaluator<'_> {
     ) -> Result<Evaluated, Stop> {
         // What is certain is the same for all members, and is computed once.
         let path = if self.is_uncertain(node) { path } else { Path::Nominal };
-        let print = self.fingerprint(node, environment);
+        let print = self.print(node, environment, Names::Counted);
         if let Some(remembered) = self.memo.get(print, path) {
             return remembered.map_err(|fault| placed(Stop::Fault(fault), node, call));
         }
         self.cancellation.check()?;
         let shape = self.shape(node, environment)?;
+        if let Path::Block { count, .. } = path {
+            let (nominal, _) = self.value(node, environment, Path::Nominal)?;
+            let bytes = nominal.bytes() as f64 * count as f64;
+            if bytes > BLOCK_BYTES_LIMIT {
+                return Err(Fault::new(
+                    "too-large",
+                    format!("{count} members of this would take {:.1} GB", bytes / 1e9),
+                )
+                .help("take fewer `members`, or a clock with fewer steps")
+                .at(node.span)
+                .into_stop());
+            }
+        }
         if let Some(problem) = &environment.clock_problem
             && self.reads_clock(call, environment)
         {
@@ -471,11 +524,6 @@ impl Evaluator<'_> {
     }
 }
 
-fn default_setting(value: u64, span: Span) -> Arc<Node> {
-    let value = Value::Quantity(Quantity::certain(value as f64, Unit::number()));
-    Node::new(NodeKind::Constant(Arc::new(value)), span, Arc::from("default"))
-}
-
 pub(super) fn internal(message: &str) -> Fault {
     Fault::new("internal", format!("{message}: this is a mistake of the program, please report it"))
 }
@@ -499,7 +547,7 @@ fn placed(stop: Stop, node: &Node, call: &CallNode) -> Stop {
     let parameters = call.entry.signature.parameters;
     let slot_of = |given: &Given| match &given.what {
         What::Value(slot) => call.slots.get(*slot),
-        What::Choice { .. } | What::Groups(_) => None,
+        What::Choice { .. } | What::Groups(_) | What::Months { .. } => None,
     };
     let place = match &fault.blame {
         Blame::Call => None,
@@ -524,7 +572,7 @@ fn placed(stop: Stop, node: &Node, call: &CallNode) -> Stop {
 fn limited(shape: Shape, span: Span) -> Result<Shape, Stop> {
     fn leaves(shape: &Shape) -> usize {
         match shape {
-            Shape::List(items) => items.iter().map(leaves).sum(),
+            Shape::List(items) => 1 + items.iter().map(leaves).sum::<usize>(),
             Shape::Bundle(parts) => parts.len(),
             _ => 1,
         }
@@ -651,6 +699,19 @@ impl Context for NodeContext<'_> {
     fn value_under(&self, slot: usize, clock: Arc<Clock>) -> Result<Arc<Value>, Stop> {
         let environment = self.environment.with_clock(clock);
         let node = self.slot(slot)?;
+        let mut clocks = lock(&self.evaluator.caches.clocks);
+        clocks.insert(environment.key);
+        if clocks.len() > CLOCKS_LIMIT {
+            return Err(Fault::new(
+                "too-large",
+                format!("this cell asks for more than {CLOCKS_LIMIT} different clocks"),
+            )
+            .help(
+                "lags of lags make a clock for each combination: bring parts onto the clock with `on` first",
+            )
+            .into());
+        }
+        drop(clocks);
         self.evaluator.shape(node, &environment)?;
         self.evaluator.value(node, &environment, self.path).map(|evaluated| self.take(evaluated))
     }
@@ -658,7 +719,7 @@ impl Context for NodeContext<'_> {
     fn own_value(&self) -> Result<Arc<Value>, Stop> {
         let call = self.call.ok_or_else(|| internal("no call"))?;
         // The shape is being asked for, so the body must not ask for it again.
-        let print = self.evaluator.fingerprint(self.node, self.environment);
+        let print = self.evaluator.print(self.node, self.environment, Names::Counted);
         if let Some(remembered) = self.evaluator.memo.get(print, Path::Nominal) {
             return Ok(remembered?.0);
         }

@@ -9,8 +9,8 @@ use super::node::{CallNode, Node, NodeKind};
 use crate::base::{Diagnostic, Fault, SourceId, Span};
 use crate::catalogue::{self, Entry, Given, What};
 use crate::language::{
-    Argument, BinaryOperator, Expression, ExpressionKind, Parameter, Presence, StatementKind, UnitText,
-    canonical, parse,
+    Argument, BinaryOperator, Expression, ExpressionKind, MONTHS, Parameter, Presence, StatementKind,
+    UnitText, Words, canonical, parse,
 };
 use crate::value::{Block, Era, Instant, Measure, Quantity, Unit, Value, instant_of_date};
 
@@ -42,11 +42,13 @@ pub(super) struct Resolver<'a> {
     loops: u32,
 }
 
-/// Resolve the expression of a definition called `name`, or of a bare expression by its canonical text.
+/// Resolve the expression of a definition called `name`, or of a bare expression by its canonical text, into at most
+/// `room` nodes.
 pub(super) fn resolve(
     functions: &dyn Functions,
     name: Option<&str>,
     expression: &Expression,
+    room: usize,
 ) -> Result<Arc<Node>, Diagnostic> {
     let mut place = Sha256::new();
     match name {
@@ -54,7 +56,7 @@ pub(super) fn resolve(
         None => place.update(format!("shown\0{}\0", canonical(expression))),
     }
     let mut scope = Scope { place, random: 0, calls: 0, locals: Vec::new(), functions: Vec::new() };
-    Resolver { functions, budget: SIZE_LIMIT, loops: 0 }.expression(expression, &mut scope)
+    Resolver { functions, budget: room.min(SIZE_LIMIT), loops: 0 }.expression(expression, &mut scope)
 }
 
 impl Resolver<'_> {
@@ -349,8 +351,10 @@ impl Resolver<'_> {
         slots: &mut Vec<Arc<Node>>,
         scope: &mut Scope,
     ) -> Result<What, Diagnostic> {
-        if parameter.groups_labels {
-            return groups(value).map(What::Groups);
+        match parameter.words {
+            Words::None => {}
+            Words::Groups => return groups(value).map(What::Groups),
+            Words::Months => return months(value).map(|(first, last)| What::Months { first, last }),
         }
         if !parameter.choices.is_empty()
             && let Some(what) = self.chosen(parameter, value, slots, scope)?
@@ -527,6 +531,29 @@ fn groups(value: &Expression) -> Result<Vec<Vec<Arc<str>>>, Diagnostic> {
             .at(value.span));
     };
     items.iter().map(group).collect()
+}
+
+/// `December..February`, or one month.
+fn months(value: &Expression) -> Result<(usize, usize), Diagnostic> {
+    let month = |part: &Expression| -> Result<usize, Diagnostic> {
+        let word = canonical(part);
+        MONTHS.iter().position(|month| *month == word).ok_or_else(|| {
+            let fault = Fault::new("unknown-choice", format!("`{word}` is no month"));
+            let help = catalogue::nearest(&word, MONTHS.iter().copied())
+                .or_else(|| MONTHS.iter().copied().find(|month| word.len() > 2 && month.starts_with(&word)));
+            match help {
+                Some(near) => fault.help(format!("did you mean `{near}`?")),
+                None => fault.help("months are written out, such as `December..February`"),
+            }
+            .at(part.span)
+        })
+    };
+    match &value.kind {
+        ExpressionKind::Binary { operator: BinaryOperator::To, left, right } => {
+            Ok((month(left)?, month(right)?))
+        }
+        _ => month(value).map(|only| (only, only)),
+    }
 }
 
 fn group(item: &Expression) -> Result<Vec<Arc<str>>, Diagnostic> {
