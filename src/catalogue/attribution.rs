@@ -25,7 +25,7 @@ static ATTRIBUTE: Entry = Entry {
             Parameter::required(
                 "record",
                 &["series"],
-                "the record; it is never refined, and n counts its own values",
+                "the record; it is never refined, and n counts its own values; `within` takes a part of it",
             ),
             Parameter::required(
                 "to",
@@ -333,11 +333,6 @@ fn record_axis(call: &Call<'_>, record: &Series) -> Result<Arc<Axis>, Stop> {
     if inside.len() == record.axis.len() {
         return Ok(record.axis.clone());
     }
-    call.context.note(format!(
-        "the record is used inside the clock's span: {} of its {} values",
-        inside.len(),
-        record.axis.len()
-    ));
     Ok(Arc::new(record.axis.part(inside)))
 }
 

@@ -53,27 +53,39 @@ pub(super) fn bring(
             .help("check the era of both, and whether one is an age (ka, cal BP) and the other a year (CE)")
             .into());
     }
-    if context.path() == Path::Nominal {
-        context.note(words(series, name, axis, &plan, gaps));
+    if context.path() == Path::Nominal
+        && let Some(words) = words(series, name, axis, &plan, gaps)
+    {
+        context.note(words);
     }
     Ok(Block::new(series.values.rows(), axis.len(), out))
 }
 
-fn words(series: &Series, name: &str, axis: &Axis, plan: &Plan, gaps: usize) -> String {
+/// What was done, in words; nothing where values were only taken as they are, all of them.
+fn words(series: &Series, name: &str, axis: &Axis, plan: &Plan, gaps: usize) -> Option<String> {
+    let partly = plan.partly_covered();
+    let taken = axis.len() - gaps;
+    if partly == 0 && (0..axis.len()).all(|index| plan.entries(index).count() <= 1) {
+        let kind = series.axis.kind.word();
+        let mut words = format!("{name}: {taken} of its {} {kind} taken as they are", series.axis.len());
+        if gaps > 0 {
+            words += &format!("; {} left as gaps", counted(gaps, axis.kind.word()));
+        }
+        return Some(words).filter(|_| gaps > 0 || taken < series.axis.len());
+    }
     let how = if axis.median_step() >= 0.9 * series.axis.median_step() {
         "averaged"
     } else {
         "interpolated linearly"
     };
     let mut words = format!("{name}: {} {how} onto {}", series.axis.describe(), axis.describe());
-    let partly = plan.partly_covered();
     if partly > 0 {
         words += &format!("; {} covered in part", counted(partly, axis.kind.word()));
     }
     if gaps > 0 {
         words += &format!("; {} left as gaps", counted(gaps, axis.kind.word()));
     }
-    words
+    Some(words)
 }
 
 /// `1 step`, `3 steps`.

@@ -5,7 +5,7 @@ pub fn plain(value: f64) -> String {
     significant(value, 6)
 }
 
-fn significant(value: f64, digits: i32) -> String {
+pub(super) fn significant(value: f64, digits: i32) -> String {
     if value.is_nan() {
         return "gap".to_owned();
     }
@@ -46,14 +46,15 @@ pub fn with_range(value: f64, low: f64, high: f64) -> String {
     if decimals > 12 || value.abs().max(half) >= 1e15 {
         return format!("{} [{}, {}]", significant(value, 3), significant(low, 3), significant(high, 3));
     }
+    format!("{} [{}, {}]", rounded(value, decimals), rounded(low, decimals), rounded(high, decimals))
+}
+
+/// A number with so many decimals; negative: rounded to tens, hundreds. Minus nothing is nothing.
+pub(super) fn rounded(value: f64, decimals: i32) -> String {
     let scale = 10f64.powi(decimals);
-    let round = |number: f64| {
-        let rounded = (number * scale).round() / scale;
-        let decimals = decimals.max(0) as usize;
-        // Minus nothing is nothing.
-        format!("{:.decimals$}", if rounded.abs() < 0.5 / scale { 0.0 } else { rounded })
-    };
-    format!("{} [{}, {}]", round(value), round(low), round(high))
+    let rounded = (value * scale).round() / scale;
+    let decimals = decimals.clamp(0, 15) as usize;
+    format!("{:.decimals$}", if rounded.abs() < 0.5 / scale { 0.0 } else { rounded })
 }
 
 #[cfg(test)]

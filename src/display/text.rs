@@ -1,4 +1,4 @@
-use super::number::{plain, with_range};
+use super::number::{plain, rounded, significant, with_range};
 use crate::value::{
     Attribution, Axis, Cell, Era, ForcingKind, Measure, Shown, ShownSeries, Spread, Table, Unit,
 };
@@ -238,11 +238,13 @@ fn aligned(cells: &[&Cell]) -> Vec<String> {
         .map(|cell| match cell {
             Cell::Text(text) => text.to_string(),
             Cell::Number(value) => compact(*value),
+            Cell::Rounded(value, decimals) => rounded(*value, *decimals),
             Cell::Empty => String::new(),
         })
         .collect();
     let decimals = |text: &str| text.split_once('.').map_or(0, |(_, decimals)| decimals.len());
-    let numbers: Vec<bool> = cells.iter().map(|cell| matches!(cell, Cell::Number(_))).collect();
+    let numbers: Vec<bool> =
+        cells.iter().map(|cell| matches!(cell, Cell::Number(_) | Cell::Rounded(..))).collect();
     let most = texts
         .iter()
         .zip(&numbers)
@@ -276,5 +278,5 @@ fn compact(value: f64) -> String {
         return format!("{}", value.round());
     }
     let digits = 4 - 1 - value.abs().log10().floor() as i32;
-    if !(0..8).contains(&digits) { plain(value) } else { format!("{value:.*}", digits as usize) }
+    if (0..8).contains(&digits) { format!("{value:.*}", digits as usize) } else { significant(value, 4) }
 }

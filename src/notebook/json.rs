@@ -168,11 +168,14 @@ fn table(content: &Table) -> Json {
     let columns: Vec<Json> = content
         .columns
         .iter()
-        .map(|column| json!({"name": column.name, "unit": column.unit.as_deref().unwrap_or("1")}))
+        .map(|column| match &column.unit {
+            Some(unit) => json!({"name": column.name, "unit": unit}),
+            None => json!({"name": column.name}),
+        })
         .collect();
     let cell = |cell: &Cell| match cell {
         Cell::Text(text) => json!(&**text),
-        Cell::Number(value) => number(*value),
+        Cell::Number(value) | Cell::Rounded(value, _) => number(*value),
         Cell::Empty => Json::Null,
     };
     let rows: Vec<Json> =

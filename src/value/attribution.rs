@@ -102,14 +102,14 @@ impl Attribution {
             let reach = attribution.t_quantile * error;
             vec![
                 Cell::Text(entry.label.clone()),
-                Cell::number(entry.value),
-                Cell::number(entry.standard_error),
-                Cell::number(entry.t),
-                Cell::number(entry.low),
-                Cell::number(entry.high),
-                Cell::number(contribution),
-                Cell::number(contribution - reach),
-                Cell::number(contribution + reach),
+                Cell::to_uncertainty(entry.value, entry.standard_error),
+                Cell::to_uncertainty(entry.standard_error, entry.standard_error),
+                Cell::to_uncertainty(entry.t, 0.1),
+                Cell::to_uncertainty(entry.low, entry.standard_error),
+                Cell::to_uncertainty(entry.high, entry.standard_error),
+                Cell::to_uncertainty(contribution, error),
+                Cell::to_uncertainty(contribution - reach, error),
+                Cell::to_uncertainty(contribution + reach, error),
                 Cell::Text(Arc::from(entry.unit.to_string())),
             ]
         };

@@ -41,6 +41,8 @@ pub enum Cell {
     Text(Arc<str>),
     /// A number, as precise as it is.
     Number(f64),
+    /// A number of which so many decimals are worth showing (negative: tens, hundreds).
+    Rounded(f64, i32),
     /// Nothing: a gap, or not asked for.
     Empty,
 }
@@ -49,5 +51,16 @@ impl Cell {
     /// A number, or nothing where it is a gap.
     pub fn number(value: f64) -> Self {
         if value.is_finite() { Cell::Number(value) } else { Cell::Empty }
+    }
+
+    /// A number to two significant digits of its uncertainty; nothing where it is a gap.
+    pub fn to_uncertainty(value: f64, uncertainty: f64) -> Self {
+        if !value.is_finite() {
+            Cell::Empty
+        } else if uncertainty.is_finite() && uncertainty > 0.0 {
+            Cell::Rounded(value, 1 - uncertainty.log10().floor() as i32)
+        } else {
+            Cell::Number(value)
+        }
     }
 }
