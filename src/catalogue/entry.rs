@@ -35,6 +35,8 @@ pub struct Entry {
     pub under: Option<&'static str>,
     /// The parameter that names an input file.
     pub reads_file: Option<&'static str>,
+    /// The parameter that, where it is given, makes the result an ensemble of the file's own.
+    pub ensemble: Option<&'static str>,
     /// Whether each call is a random variable of its own.
     pub random: bool,
     /// Whether the text of its arguments labels parts of the result.
@@ -63,6 +65,7 @@ impl Entry {
         reads_clock: ReadsClock::Never,
         under: None,
         reads_file: None,
+        ensemble: None,
         random: false,
         labels: false,
         shape: |call| Ok(call.context.own_value()?.shape()),

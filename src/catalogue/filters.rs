@@ -93,7 +93,7 @@ static SMOOTH: Entry = Entry {
 };
 
 /// The stretch of time that each value stands for: its step, or half way to the neighbouring instants.
-fn cells(axis: &Axis) -> (Vec<f64>, Vec<f64>) {
+pub(super) fn cells(axis: &Axis) -> (Vec<f64>, Vec<f64>) {
     if axis.kind == AxisKind::Steps {
         return (axis.starts().to_vec(), axis.ends().to_vec());
     }

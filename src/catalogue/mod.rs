@@ -21,6 +21,7 @@ mod operators;
 mod reading;
 mod reductions;
 mod response;
+mod seasons;
 mod shapes;
 mod showing;
 mod time;
@@ -37,6 +38,7 @@ const FAMILIES: &[&[&Entry]] = &[
     shapes::FAMILY,
     algebra::FAMILY,
     filters::FAMILY,
+    seasons::FAMILY,
     reductions::FAMILY,
     gases::FAMILY,
     response::FAMILY,

@@ -3,8 +3,10 @@
 use std::sync::Arc;
 
 use super::call::{Context, Path, Stop};
+use super::filters::cells;
 use crate::base::Fault;
 use crate::science::resample::{self, Plan};
+use crate::science::smoothing;
 use crate::value::{Axis, AxisKind, Block, Bundle, Content, Measure, Series, Standing};
 
 /// Several series on one axis.
@@ -59,6 +61,87 @@ pub(super) fn bring(
         context.note(words);
     }
     Ok(Block::new(series.values.rows(), axis.len(), out))
+}
+
+/// The series on `axis` by a method that the user chose.
+pub(super) fn bring_by(
+    context: &dyn Context,
+    series: &Series,
+    name: &str,
+    axis: &Arc<Axis>,
+    method: &'static str,
+) -> Result<Block, Stop> {
+    let (starts, ends) = cells(&series.axis);
+    let (times, at) = (series.axis.middles(), axis.middles());
+    let (target_starts, target_ends) = cells(axis);
+    let nominal_gaps = if method == "mean" {
+        vec![false; at.len()]
+    } else {
+        in_long_gaps(&times, series.values.member(0), &at, series.longest_gap_years)
+    };
+    let values = series.values.map_rows(axis.len(), |row, out| {
+        // Gaps take no part in a line or a curve; one that is too long to bridge is put back afterwards.
+        let known = || times.iter().zip(row).filter(|(_, value)| !value.is_nan());
+        let (known_times, known): (Vec<f64>, Vec<f64>) =
+            (known().map(|(time, _)| *time).collect(), known().map(|(_, value)| *value).collect());
+        match method {
+            "mean" => smoothing::overlap_means(&starts, &ends, row, &target_starts, &target_ends, out),
+            "linear" => smoothing::linear(&known_times, &known, &at, out),
+            "monotone_cubic" => smoothing::monotone_cubic(&known_times, &known, &at, out),
+            "nearest" => smoothing::nearest(&known_times, &known, &at, out),
+            _ => {
+                for (target, time) in out.iter_mut().zip(&at) {
+                    let place = times.partition_point(|other| *other < time - 1e-6);
+                    let found = times.get(place).filter(|other| (**other - time).abs() <= 1e-6);
+                    *target = found.and_then(|_| row.get(place)).copied().unwrap_or(f64::NAN);
+                }
+            }
+        }
+        for (target, gap) in out.iter_mut().zip(&nominal_gaps) {
+            if *gap {
+                *target = f64::NAN;
+            }
+        }
+    });
+    let gaps = values.member(0).iter().filter(|value| value.is_nan()).count();
+    if gaps >= axis.len() {
+        return Err(Fault::new("no-overlap", format!("`{name}` has no value inside the time asked for"))
+            .detail(format!("{name}: {}", series.axis.describe()))
+            .detail(format!("asked for: {}", axis.describe()))
+            .into());
+    }
+    if context.path() == Path::Nominal {
+        let left = if gaps > 0 {
+            format!("; {} left as gaps", counted(gaps, axis.kind.word()))
+        } else {
+            String::new()
+        };
+        let method = method.replace('_', " ");
+        context.note(format!(
+            "{name}: {} brought onto {} by the method {method}{left}",
+            series.axis.describe(),
+            axis.describe()
+        ));
+    }
+    Ok(values)
+}
+
+/// Which of the ascending times `at` lie in a gap that is longer than may be bridged.
+fn in_long_gaps(times: &[f64], values: &[f64], at: &[f64], longest_gap_years: f64) -> Vec<bool> {
+    let known: Vec<f64> =
+        times.iter().zip(values).filter(|(_, value)| !value.is_nan()).map(|(time, _)| *time).collect();
+    let mut place = 0;
+    at.iter()
+        .map(|at| {
+            while known.get(place + 1).is_some_and(|next| next <= at) {
+                place += 1;
+            }
+            let bounds = known.get(place).zip(known.get(place + 1));
+            bounds.is_some_and(|(before, after)| {
+                before < at && after - before > longest_gap_years * (1.0 + 1e-9)
+            })
+        })
+        .collect()
 }
 
 /// What was done, in words; nothing where values were only taken as they are, all of them.

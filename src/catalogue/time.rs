@@ -4,9 +4,9 @@ use std::sync::Arc;
 
 use super::call::{Call, Stop, wrong_kind};
 use super::entry::{Body, Entry, Fails, ReadsClock, Room, Shows};
-use super::onto::{bring, each_component};
+use super::onto::{bring, bring_by, each_component};
 use crate::base::Fault;
-use crate::language::{Parameter, Signature};
+use crate::language::{Choice, Parameter, Signature};
 use crate::value::{Axis, AxisKind, Bundle, Clock, Series, Shape, Standing, TimeSpan, Value};
 
 const SERIES: &[&str] = &["series", "bundle"];
@@ -77,14 +77,28 @@ static ON: Entry = Entry {
         parameters: &[
             Parameter::required("series", SERIES, "a series or bundle"),
             Parameter::required("clock", &["clock"], "the clock"),
+            Parameter::optional("method", &[], "how data are brought onto it; by default means where that is coarser and straight lines where it is finer")
+                .or_choices(&[
+                    Choice::plain("mean", "the mean of what each step covers, each value holding over its own step"),
+                    Choice::plain("linear", "straight between values, read at the middle of each step"),
+                    Choice::plain("monotone_cubic", "a smooth curve that stays between neighbours, read at the middle of each step"),
+                    Choice::plain("nearest", "the value nearest in time"),
+                    Choice::plain("none", "only values that stand at the very same time"),
+                ]),
         ],
     },
     result: "the same on that clock; it meets no series on another axis",
     gaps: "A step is the mean of its data if two thirds of it are covered, else a gap; gaps longer than `longest_gap` are not bridged.",
-    shows: &[Shows {
-        program: "x = series([1, 2, 3, 4] ppm, along: 1850..1853 CE by 1 yr)\nx |> on(1850..1853 CE by 2 yr)",
-        gives: "2 steps, 1850 CE to 1852 CE: 1.5 to 3.5 ppm",
-    }],
+    shows: &[
+        Shows {
+            program: "x = series([1, 2, 3, 4] ppm, along: 1850..1853 CE by 1 yr)\nx |> on(1850..1853 CE by 2 yr)",
+            gives: "2 steps, 1850 CE to 1852 CE: 1.5 to 3.5 ppm",
+        },
+        Shows {
+            program: "x = series([1, 2, 4] ppm, at: [1850 CE, 1852 CE, 1854 CE])\nx |> on(1850..1854 CE by 1 yr, method: nearest)",
+            gives: "5 steps, 1850 CE to 1854 CE: 1 to 4 ppm",
+        },
+    ],
     fails: &[Fails {
         program: "x = series([1, 2] ppm, along: 1850..1851 CE by 1 yr)\nx |> on(21..20 ka by 1 kyr)",
         code: "no-overlap",
@@ -100,7 +114,10 @@ static ON: Entry = Entry {
         let pin = |series: &Series, name: &str| -> Result<Series, Stop> {
             let values = match series.standing {
                 Standing::OnClock => series.values.clone(),
-                Standing::Own | Standing::Pinned => bring(call.context, series, name, &clock.axis)?,
+                Standing::Own | Standing::Pinned => match call.choice("method") {
+                    None => bring(call.context, series, name, &clock.axis)?,
+                    Some((method, _)) => bring_by(call.context, series, name, &clock.axis, method)?,
+                },
             };
             Ok(Series::new(clock.axis.clone(), values, series.measure.clone(), Standing::Pinned))
         };

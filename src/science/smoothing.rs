@@ -243,6 +243,47 @@ fn end_slope(near_step: f64, far_step: f64, near: f64, far: f64) -> f64 {
     }
 }
 
+/// The straight line between neighbours, read at `at`; NaN outside the record.
+pub fn linear(times: &[f64], values: &[f64], at: &[f64], out: &mut [f64]) {
+    for (target, time) in out.iter_mut().zip(at) {
+        let after = times.partition_point(|other| other < time);
+        *target = if after >= times.len() || (after == 0 && times[0] > *time) {
+            f64::NAN
+        } else if after == 0 || (times[after] - time).abs() <= 0.0 {
+            values[after]
+        } else {
+            let share = (time - times[after - 1]) / (times[after] - times[after - 1]);
+            values[after - 1] + share * (values[after] - values[after - 1])
+        };
+    }
+}
+
+/// The mean of what each target cell covers, every source value holding over its own cell; two thirds of a target must
+/// be covered. Both rows of cells ascend without overlap.
+pub fn overlap_means(
+    starts: &[f64],
+    ends: &[f64],
+    values: &[f64],
+    target_starts: &[f64],
+    target_ends: &[f64],
+    out: &mut [f64],
+) {
+    let mut first = 0;
+    for (target, (from, to)) in out.iter_mut().zip(target_starts.iter().zip(target_ends)) {
+        while first < ends.len() && ends[first] <= *from {
+            first += 1;
+        }
+        let mut total = Sums::default();
+        let mut place = first;
+        while place < starts.len() && starts[place] < *to {
+            total.add(values[place], ends[place].min(*to) - starts[place].max(*from), 1.0);
+            place += 1;
+        }
+        *target =
+            if total.weight < LEAST_COVERAGE * (to - from) { f64::NAN } else { total.sum / total.weight };
+    }
+}
+
 /// The value nearest in time, the earlier of two as near; NaN outside the record.
 pub fn nearest(times: &[f64], values: &[f64], at: &[f64], out: &mut [f64]) {
     for (target, time) in out.iter_mut().zip(at) {

@@ -137,7 +137,8 @@ impl Evaluator<'_> {
             NodeKind::Call(call) => match call.entry.body {
                 Body::AcrossMembers(_) => false,
                 Body::PerMember(_) => {
-                    call.entry.random || call.slots.iter().any(|slot| self.is_uncertain(slot))
+                    let own = call.entry.random || gives_ensemble(call);
+                    own || call.slots.iter().any(|slot| self.is_uncertain(slot))
                 }
             },
             NodeKind::List(_) | NodeKind::Item { .. } | NodeKind::ForEach { .. } => {
@@ -291,6 +292,9 @@ impl Evaluator<'_> {
                     parts.bytes(&variable);
                     parts.number(environment.members);
                     parts.number(environment.seed);
+                }
+                if gives_ensemble(call) {
+                    parts.number(environment.members);
                 }
                 if self.reads_clock(call, environment) {
                     parts.number(environment.key);
@@ -585,6 +589,15 @@ fn limited(shape: Shape, span: Span) -> Result<Shape, Stop> {
             .into_stop());
     }
     Ok(shape)
+}
+
+/// Whether a call reads an ensemble from a file.
+fn gives_ensemble(call: &CallNode) -> bool {
+    let Some(name) = call.entry.ensemble else { return false };
+    let parameters = call.entry.signature.parameters;
+    call.given
+        .iter()
+        .any(|given| parameters.get(given.parameter).is_some_and(|parameter| parameter.name == name))
 }
 
 fn holds_series(shape: &Shape) -> bool {

@@ -139,10 +139,11 @@ impl Axis {
                 } else {
                     end
                 };
+                let word = self.kind.word();
                 format!(
                     "{} {}, {} to {}",
                     self.len(),
-                    self.kind.word(),
+                    if self.len() == 1 { word.trim_end_matches('s') } else { word },
                     self.era.format(tidy(start)),
                     self.era.format(tidy(last))
                 )

@@ -32,7 +32,8 @@ impl Certified {
     }
 
     fn rows_where(&self, conditions: &[(&str, &str)]) -> Vec<&[String]> {
-        let holds = |row: &&Vec<String>| conditions.iter().all(|(column, value)| self.text(row, column) == *value);
+        let holds =
+            |row: &&Vec<String>| conditions.iter().all(|(column, value)| self.text(row, column) == *value);
         self.rows.iter().filter(holds).map(Vec::as_slice).collect()
     }
 
@@ -80,7 +81,8 @@ fn drivers(attribution: &Value) -> BTreeMap<String, BTreeMap<String, f64>> {
     for row in table["rows"].as_array().unwrap() {
         let cells = columns.iter().zip(row.as_array().unwrap());
         let label = row[0].as_str().unwrap().to_owned();
-        let numbers = cells.filter_map(|(name, cell)| cell.as_f64().map(|number| ((*name).to_owned(), number)));
+        let numbers =
+            cells.filter_map(|(name, cell)| cell.as_f64().map(|number| ((*name).to_owned(), number)));
         drivers.insert(label, numbers.collect());
     }
     drivers
@@ -117,10 +119,7 @@ fn the_attribution_of_1880_to_2008_on_the_supplied_columns_is_the_one_of_statsmo
     for (model, record, to) in models {
         let simple = output(&outputs, &format!("attribute({record}, to: {to})"));
         let correlated = output(&outputs, &format!("correlated({record}, {to})"));
-        let fits = [
-            (simple, "ols", "ols_se"),
-            (correlated, "gls_rho0.55", "gls_rho0.55_se"),
-        ];
+        let fits = [(simple, "ols", "ols_se"), (correlated, "gls_rho0.55", "gls_rho0.55_se")];
         for row in reference.rows_where(&[("model", model)]) {
             let term = reference.text(row, "term");
             let (_, label) = labels.iter().find(|(name, _)| *name == term).unwrap();
@@ -136,8 +135,16 @@ fn the_attribution_of_1880_to_2008_on_the_supplied_columns_is_the_one_of_statsmo
             let statistic = |fit: &Value, name: &str| fit["statistics"][name].as_f64().unwrap();
             assert_as_printed(statistic(simple, "r_squared"), reference.number(row, "r2_ols"), model);
             // The file's Durbin–Watson statistic is the one of the ordinary residuals.
-            assert_as_printed(statistic(simple, "durbin_watson"), reference.number(row, "durbin_watson"), model);
-            assert_as_printed(statistic(correlated, "log_likelihood"), reference.number(row, "gls_loglik"), model);
+            assert_as_printed(
+                statistic(simple, "durbin_watson"),
+                reference.number(row, "durbin_watson"),
+                model,
+            );
+            assert_as_printed(
+                statistic(correlated, "log_likelihood"),
+                reference.number(row, "gls_loglik"),
+                model,
+            );
         }
     }
     assert_eq!(compared, 2 * reference.rows.len(), "every row of the reference, by both methods");
@@ -147,8 +154,7 @@ fn the_attribution_of_1880_to_2008_on_the_supplied_columns_is_the_one_of_statsmo
 fn the_certified_regression_holds_through_the_language() {
     let results = Certified::read("regression_results.csv");
     let outputs = run(&data_folder("certified").join("regression.rhy"));
-    let generalised =
-        "attribute(response, to: [x1, x2, x3], method: generalised_least_squares, noise: ar1(0.55, per: 1 yr))";
+    let generalised = "attribute(response, to: [x1, x2, x3], method: generalised_least_squares, noise: ar1(0.55, per: 1 yr))";
     let fits = [("ols", "attribute(response, to: [x1, x2, x3])"), ("gls_known_rho", generalised)];
     for (method, expression) in fits {
         let fit = output(&outputs, expression);
@@ -162,7 +168,8 @@ fn the_certified_regression_holds_through_the_language() {
                 ("ci90_hi", "high"),
             ];
             for (quantity, column) in quantities {
-                let row = results.only_row_where(&[("method", method), ("term", term), ("quantity", quantity)]);
+                let row =
+                    results.only_row_where(&[("method", method), ("term", term), ("quantity", quantity)]);
                 let what = format!("{method}, {quantity} of {term}");
                 let tolerance = results.number(row, "tolerance");
                 assert_near(drivers[label][column], results.number(row, "value"), tolerance, &what);
@@ -246,12 +253,11 @@ fn real_attribution() -> Vec<Value> {
     run(&data_folder("real").join("attribution_1880_2008.rhy"))
 }
 
-const CORRELATED: &str = "method: generalised_least_squares, noise: ar1(0.55, per: 1 yr)";
-
-/// The reference took the calendar-year mean of the air samples as the value of each year, and joined the ice's value of
+/// The reference took the mean of a calendar year's air samples as the value of that year, and joined the ice's value of
 /// 1940 to the mean of 1959 by a straight line in years. The script keeps the months: its line runs from the ice's sample
-/// in the middle of 1940 to January 1959, which lies below that year's mean by a part of the seasonal cycle, and a
-/// year's mean is the integral over the year. Both are right; they differ by a third of a ppm at most.
+/// in the middle of 1940 to January 1959, which lies a third of a ppm below that year's mean, as the season has it; and
+/// a year is the integral over the year, where 1964, of which three months were never measured, is filled by a
+/// straight line that the reference's mean of nine months leaves out. Both are right.
 #[test]
 fn carbon_dioxide_from_two_sources_is_that_of_the_reference_to_a_third_of_a_ppm() {
     let input = Certified::read("real_attribution_1880_2008_input.csv");
@@ -260,17 +266,17 @@ fn carbon_dioxide_from_two_sources_is_that_of_the_reference_to_a_third_of_a_ppm(
     assert_eq!(forcing["unit"].as_str(), Some("W/m2"));
     let found = numbers(&forcing["nominal"]);
     assert_eq!(found.len(), input.rows.len());
-    let mut largest_since_1959 = 0.0_f64;
     for (found, row) in found.iter().zip(&input.rows) {
-        let year = input.number(row, "year");
-        let co2_ppm = input.number(row, "co2_ppm");
+        let year: u32 = input.text(row, "year").parse().unwrap();
+        let tolerance_ppm = match year {
+            ..1940 => 0.02,
+            1940..1959 => 0.35,
+            1964 => 0.15,
+            _ => 0.01,
+        };
         let found_ppm = 278.0 * (found / 5.35).exp();
-        assert_near(found_ppm, co2_ppm, 0.35, &format!("CO2 of {year} in ppm"));
-        if year >= 1959.0 {
-            largest_since_1959 = largest_since_1959.max((found_ppm - co2_ppm).abs());
-        }
+        assert_near(found_ppm, input.number(row, "co2_ppm"), tolerance_ppm, &format!("CO2 of {year} in ppm"));
     }
-    assert!(largest_since_1959 < 0.1, "{largest_since_1959} ppm since 1959");
 }
 
 /// From the raw sources the regressors differ from the reference's as told above, and by nothing else. A fiftieth of a
@@ -348,4 +354,23 @@ fn carbon_dioxide_explains_the_warming_since_1880() {
     assert!(carbon["contribution_low"] < 0.643 && 0.643 < carbon["contribution_high"], "{carbon:?}");
     assert!(sunspots["low"] < 0.0 && 0.0 < sunspots["high"], "{sunspots:?}");
     assert!(sunspots["contribution_high"] < 0.05, "{sunspots:?}");
+}
+
+/// The demo's data were made by a generator of which this repository holds only what it was set to, at the head of
+/// `station.csv`. That the truth lies inside every 5–95 % interval is one draw's luck in part; that it lies within a
+/// few standard errors is not.
+#[test]
+fn the_demo_gives_back_what_its_lake_was_made_of() {
+    let truth = [("carbon", 1.25), ("haze", 1.10), ("sunspots", 0.0006), ("ocean", 0.16)];
+    let outputs = run(&Path::new(env!("CARGO_MANIFEST_DIR")).join("notebooks-demo/lake.rhy"));
+    let result = output(&outputs, "result");
+    // 1868 to 2020 without the six lost years.
+    assert_eq!(result["statistics"]["n"].as_u64(), Some(147));
+    let drivers = drivers(result);
+    for (label, made_of) in truth {
+        let found = &drivers[label];
+        assert!(found["low"] < made_of && made_of < found["high"], "{label}: {found:?}");
+        // An interval that held everything would say nothing: none reaches further than its own coefficient.
+        assert!(found["high"] - found["low"] < 2.0 * made_of, "{label}: {found:?}");
+    }
 }

@@ -1,0 +1,186 @@
+//! Means over seasons and over years that begin in another month than January.
+
+use std::sync::Arc;
+
+use super::call::{Call, Path, Stop};
+use super::entry::{Body, Entry, Fails, Shows};
+use super::filters::cells;
+use super::onto::counted;
+use super::time::series_or_bundle;
+use crate::base::Fault;
+use crate::language::{MONTHS, Parameter, Signature};
+use crate::value::{Axis, Era, Series, Standing};
+
+static SEASON: Entry = Entry {
+    name: "season",
+    summary: "The mean of a season in every year, from monthly or finer data.",
+    signature: Signature {
+        parameters: &[
+            Parameter::required("series", &["series", "bundle"], "monthly or finer values"),
+            Parameter::required("months", &["months"], "the months, which may run over the turn of the year")
+                .as_months(),
+        ],
+    },
+    result: "one step a year that spans the season; a winter over the turn of the year belongs to the year in which it ends",
+    equation: None,
+    gaps: "A season with a missing value is incomplete: it is left as a gap, and named in a note.",
+    shows: &[Shows {
+        program: "x = series([1, 2, 3, 4, 5, 6, 7, 8, 9, 10, 11, 12] degC, along: 1850..1850 CE by 1 month)\nx |> season(June..August)",
+        gives: "1 step, 1850.417 CE to 1850.417 CE: 7 to 7 degC",
+    }],
+    fails: &[
+        Fails {
+            program: "x = series([1, 2] degC, along: 1850..1851 CE by 1 yr)\nx |> season(June..August)",
+            code: "too-coarse",
+            says: "months",
+        },
+        Fails {
+            program: "x = series([1, 2] degC, along: 1850..1851 CE by 1 yr)\nx |> season(June..Augsut)",
+            code: "unknown-choice",
+            says: "August",
+        },
+    ],
+    search: &["winter", "summer", "djf", "jja", "monsoon", "seasonal"],
+    shape: |call| call.shape("series"),
+    body: Body::PerMember(|call| {
+        let (first, last) = call.months("months").unwrap_or((0, 11));
+        means(call, first, (last + 12 - first) % 12 + 1, "season")
+    }),
+    ..Entry::PLAIN
+};
+
+static YEARLY: Entry = Entry {
+    name: "yearly",
+    summary: "The mean of every year that begins with a given month, such as a hydrological year.",
+    signature: Signature {
+        parameters: &[
+            Parameter::required("series", &["series", "bundle"], "monthly or finer values"),
+            Parameter::required("from", &["months"], "the month with which a year begins").as_months(),
+        ],
+    },
+    result: "one step a year; a year belongs to the calendar year in which it ends",
+    equation: None,
+    gaps: "A year with a missing value is incomplete: it is left as a gap, and named in a note.",
+    shows: &[Shows {
+        program: "x = series([1, 2, 3, 4] mm, along: 1850..1851 CE by 6 month)\nx |> yearly(from: July)",
+        gives: "1 step, 1850.5 CE to 1850.5 CE: 2.5 to 2.5 mm",
+    }],
+    fails: &[Fails {
+        program: "x = series([1, 2] degC, along: 1850..1851 CE by 1 yr)\nx |> yearly(from: autumn)",
+        code: "unknown-choice",
+        says: "no month",
+    }],
+    search: &["hydrological year", "water year", "annual mean"],
+    shape: |call| call.shape("series"),
+    body: Body::PerMember(|call| {
+        let (first, _) = call.months("from").unwrap_or((0, 0));
+        means(call, first, 12, "year")
+    }),
+    ..Entry::PLAIN
+};
+
+pub(super) const FAMILY: &[&Entry] = &[&SEASON, &YEARLY];
+
+fn means(call: &Call<'_>, first: usize, months: usize, word: &str) -> Result<crate::value::Value, Stop> {
+    let name = call.label("series");
+    series_or_bundle(&*call.value("series")?, &name, &mut |series, name| {
+        stretch(call, series, name, first, months, word)
+    })
+}
+
+/// The means over the stretch of `months` months that begins with month `first`, once a year.
+fn stretch(
+    call: &Call<'_>,
+    series: &Series,
+    name: &str,
+    first: usize,
+    months: usize,
+    word: &str,
+) -> Result<Series, Stop> {
+    let (starts, ends) = cells(&series.axis);
+    let (Some(begin), Some(end)) = (starts.first(), ends.last()) else {
+        return Err(Fault::new("missing-argument", format!("`{name}` has no values")).into());
+    };
+    let length = months as f64 / 12.0;
+    if series.axis.median_step() > length * (1.0 + 1e-6) {
+        return Err(Fault::new(
+            "too-coarse",
+            format!("`{name}` has steps of {}, longer than the months asked for", step_words(series)),
+        )
+        .blame("series")
+        .help("a season needs monthly or finer values")
+        .into());
+    }
+    // Only stretches that the record touches on both sides can be complete; those it cuts are named as incomplete.
+    let offset = first as f64 / 12.0;
+    let years = (begin - offset - length).ceil() as i64..=(end - offset).floor() as i64;
+    let targets: Vec<(f64, f64)> = years
+        .map(|year| (year as f64 + offset, year as f64 + offset + length))
+        .filter(|(from, to)| *to > begin + 1e-6 && *from < end - 1e-6)
+        .collect();
+    let mut incomplete: Vec<f64> = Vec::new();
+    let nominal = series.values.member(0);
+    for (from, to) in &targets {
+        if mean(&starts, &ends, nominal, *from, *to).is_none() {
+            incomplete.push(*to);
+        }
+    }
+    let whole: Vec<&(f64, f64)> =
+        targets.iter().filter(|(from, to)| *from > begin - 1e-6 && *to < end + 1e-6).collect();
+    if whole.is_empty() {
+        return Err(Fault::new("no-overlap", format!("`{name}` holds no complete {word}"))
+            .blame("series")
+            .into());
+    }
+    if !incomplete.is_empty() && call.context.path() == Path::Nominal {
+        let named: Vec<String> =
+            incomplete.iter().take(5).map(|to| format!("{}", (to - 1e-6).floor())).collect();
+        let more = if incomplete.len() > 5 { ", …" } else { "" };
+        call.context.note(format!(
+            "{name}: {} incomplete ({}{more}), left as gaps or away at the ends",
+            counted(incomplete.len(), &format!("{word}s")),
+            named.join(", ")
+        ));
+    }
+    let values = series.values.map_rows(whole.len(), |row, out| {
+        for (target, (from, to)) in out.iter_mut().zip(&whole) {
+            *target = mean(&starts, &ends, row, *from, *to).unwrap_or(f64::NAN);
+        }
+    });
+    if call.context.path() == Path::Nominal {
+        let last = (first + months - 1) % 12;
+        let (from, to) = (MONTHS.get(first).unwrap_or(&""), MONTHS.get(last).unwrap_or(&""));
+        call.context.note(format!("{name}: means from {from} to {to}, months weighted by their length"));
+    }
+    let axis = Axis::steps(
+        whole.iter().map(|(from, _)| *from).collect(),
+        whole.iter().map(|(_, to)| *to).collect(),
+        Era::Ce,
+    );
+    let standing = if series.standing == Standing::Pinned { Standing::Pinned } else { Standing::Own };
+    let mut means = Series::new(Arc::new(axis), values, series.measure.clone(), standing);
+    // The other months of a year are no gap in the record.
+    means.longest_gap_years = 3.0;
+    Ok(means)
+}
+
+/// The mean over `from..to`; none unless values cover all of it.
+fn mean(starts: &[f64], ends: &[f64], values: &[f64], from: f64, to: f64) -> Option<f64> {
+    let first = ends.partition_point(|end| *end <= from + 1e-6);
+    let (mut sum, mut weight) = (0.0, 0.0);
+    for ((start, end), value) in starts.iter().zip(ends).zip(values).skip(first) {
+        if *start >= to - 1e-6 {
+            break;
+        }
+        let share = end.min(to) - start.max(from);
+        if !value.is_nan() {
+            sum += share * value;
+            weight += share;
+        }
+    }
+    (weight >= (to - from) * (1.0 - 1e-4)).then(|| sum / weight)
+}
+
+fn step_words(series: &Series) -> String {
+    crate::value::duration_words(series.axis.median_step())
+}
