@@ -2,13 +2,14 @@
 
 use std::sync::Arc;
 
-use super::call::{Call, Stop, wrong_kind};
+use super::call::{Call, Path, Stop, wrong_kind};
 use super::entry::{Body, Entry, Fails, Room, Shows};
 use super::onto::counted;
 use super::time::clock_argument;
 use crate::base::Fault;
 use crate::files::{self, AxisForm, FileFault, ReadEra, SeriesOptions};
 use crate::language::{Choice, Parameter, Signature};
+use crate::science::reduce;
 use crate::value::{
     Axis, Block, Dimension, Era, Forcing, ForcingKind, Measure, Quantity, Reading, Series, Shape, Standing,
     Unit, Value,
@@ -23,6 +24,7 @@ static LOAD: Entry = Entry {
             Parameter::required("file", &["text"], "the file, in the notebook's folder or below"),
             Parameter::optional("time", &["text"], "the name of the time column, where it is not plain"),
             Parameter::optional("value", &["text"], "the name of the value column, where there are several"),
+            Parameter::optional("members", &["text"], "the columns that are members of an ensemble, such as \"m*\""),
             Parameter::optional("unit", &["text"], "the unit of the values, where the file does not say it or says it otherwise"),
             Parameter::optional("as", &[], "whether values are means over steps or hold at instants, where the file leaves it open")
                 .or_choices(&[
@@ -39,6 +41,10 @@ static LOAD: Entry = Entry {
     shows: &[
         Shows { program: "load(\"spots.csv\")", gives: "6 steps, 1850 CE to 1855 CE: 66 to 7 spots_v2" },
         Shows {
+            program: "load(\"runs.csv\", members: \"m*\")",
+            gives: "3 steps, 1850 CE to 1852 CE: 0.20 [0.10, 0.30] to 0.50 [0.40, 0.60] W/m2",
+        },
+        Shows {
             program: "load(\"core.csv\", value: \"co2\", unit: \"ppm\")",
             gives: "4 instants, 21 ka to 18 ka: 190 to 205 ppm",
         },
@@ -50,6 +56,7 @@ static LOAD: Entry = Entry {
     ],
     search: &["read", "open", "csv", "file", "data", "import"],
     reads_file: Some("file"),
+    ensemble: Some("members"),
     shape: |call| Ok(call.context.own_value()?.shape()),
     body: Body::PerMember(load),
     ..Entry::PLAIN
@@ -67,7 +74,12 @@ fn load(call: &Call<'_>) -> Result<Value, Stop> {
         missing: call.text("missing")?.into_iter().map(|text| text.to_string()).collect(),
         ..SeriesOptions::default()
     };
-    let read = files::read_series(&file.bytes, &options).map_err(|fault| placed_in_file(&path, fault))?;
+    let pattern = call.text("members")?;
+    let read = match &pattern {
+        None => files::read_series(&file.bytes, &options).map(Columns::of_series),
+        Some(pattern) => files::read_ensemble(&file.bytes, pattern, &options).map(Columns::of_ensemble),
+    }
+    .map_err(|fault| placed_in_file(&path, fault))?;
     let unit = file_unit(call, read.unit_text.as_deref(), &path)?;
     let era = match read.era {
         ReadEra::CommonEra => Era::Ce,
@@ -85,11 +97,66 @@ fn load(call: &Call<'_>) -> Result<Value, Stop> {
         call.context.note(format!("{path}: {note}"));
     }
     let measure = loaded_measure(unit);
-    let mut series = Series::new(axis.into(), Block::row(read.values), measure, Standing::Own);
+    let values = ensemble_rows(&read.values, call.context.path());
+    if pattern.is_some() && call.context.path() == Path::Nominal {
+        call.context.note(format!(
+            "{path}: an ensemble of {}; its mean is the nominal value, and drawn members take them in turn",
+            counted(read.values.len(), "members")
+        ));
+    }
+    let mut series = Series::new(axis.into(), values, measure, Standing::Own);
     if call.slot("longest_gap").is_some() {
         series.longest_gap_years = call.certain("longest_gap")?;
     }
     Ok(Value::Series(series))
+}
+
+/// What a file gave, one member or several.
+struct Columns {
+    form: AxisForm,
+    starts: Vec<f64>,
+    ends: Vec<f64>,
+    values: Vec<Vec<f64>>,
+    unit_text: Option<String>,
+    era: ReadEra,
+    notes: Vec<String>,
+}
+
+impl Columns {
+    fn of_series(read: files::ReadSeries) -> Self {
+        let files::ReadSeries { form, starts, ends, values, unit_text, era, notes, .. } = read;
+        Self { form, starts, ends, values: vec![values], unit_text, era, notes }
+    }
+
+    fn of_ensemble(read: files::ReadEnsemble) -> Self {
+        let files::ReadEnsemble { form, starts, ends, values, unit_text, era, notes, .. } = read;
+        Self { form, starts, ends, values, unit_text, era, notes }
+    }
+}
+
+/// The mean of the members on the nominal path; in a block, member `i` of the session takes the file's member
+/// `i` modulo their number, so that two ensembles of one source stay paired.
+fn ensemble_rows(members: &[Vec<f64>], path: Path) -> Block {
+    let columns = members.first().map_or(0, Vec::len);
+    if let [only] = members {
+        return Block::row(only.clone());
+    }
+    match path {
+        Path::Nominal => {
+            let mut column = Vec::with_capacity(members.len());
+            let mean = |index: usize| {
+                column.clear();
+                column.extend(members.iter().filter_map(|member| member.get(index)));
+                reduce::mean(&column)
+            };
+            Block::row((0..columns).map(mean).collect())
+        }
+        Path::Block { first, count } => {
+            let number = members.len() as u64;
+            let rows = (0..count as u64).filter_map(|row| members.get(((first + row) % number) as usize));
+            Block::new(count, columns, rows.flatten().copied().collect())
+        }
+    }
 }
 
 fn placed_in_file(path: &str, fault: FileFault) -> Fault {

@@ -131,7 +131,7 @@ fn read_columns(
     let candidates: Vec<usize> =
         (0..table.columns.len()).filter(|column| !time.time_like.contains(column)).collect();
     let chosen = choose(&table, &candidates, options, &mut notes)?;
-    let unit_text = unit_of(&table, &chosen, candidates.len() == 1, &mut notes)?;
+    let unit_text = unit_of(&table, &chosen, candidates.len() == chosen.len(), &mut notes)?;
     let (era, time_name) = match time.columns {
         TimeColumns::Calendar { column, era } => (era, &table.columns[column].header),
         TimeColumns::Parts { year, .. } => (ReadEra::CommonEra, &table.columns[year].header),
