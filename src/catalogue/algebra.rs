@@ -64,7 +64,15 @@ static COMPOSE: Entry = Entry {
             }
             sum = Some(match sum {
                 None => measure.clone(),
-                Some(sum) => sum.sum(&measure, false).map_err(|fault| fault.blame_item(item))?.0,
+                Some(sum) => {
+                    let added = sum.sum(&measure, false).map_err(|fault| match fault.help {
+                        Some(_) => fault,
+                        None => fault.help(
+                            "components add up to one forcing; a regressor that is none goes into `beside:` of `attribute`, or into a list",
+                        ),
+                    });
+                    added.map_err(|fault| fault.blame_item(item))?.0
+                }
             });
             parts.push((label, measure));
         }
@@ -123,7 +131,7 @@ fn mixed_kinds(bundle: &Bundle) -> Option<String> {
         kinds.iter().filter(|(_, kind)| *kind == Undeclared).map(|(label, _)| &**label).collect();
     (!undeclared.is_empty()).then(|| {
         format!(
-            "the kind of forcing of {} is not declared; composed with {declared} forcing",
+            "{}: loaded or made by hand, so its kind of forcing is not known; composed with {declared} forcing",
             undeclared.join(", ")
         )
     })
@@ -279,7 +287,7 @@ static ANOMALY: Entry = Entry {
         };
         let name = call.label("series");
         series_or_bundle(&*call.value("series")?, &name, &mut |series, name| {
-            let means = window_means(series, name, &span)?;
+            let means = window_means(series, name, &span).map_err(|stop| stop.blame("relative_to"))?;
             let values = series.values.zip(&means, |value, mean| value - mean);
             Ok(series.with(values, Measure { reading: Reading::Difference, ..series.measure.clone() }))
         })

@@ -1,6 +1,6 @@
 use std::sync::Arc;
 
-use crate::base::{Blame, Cancellation, Cancelled, Diagnostic, Fault};
+use crate::base::{Blame, Cancellation, Cancelled, Diagnostic, Fault, Span};
 use crate::language::Parameter;
 use crate::value::{Block, Clock, Measure, Quantity, Series, Shape, Spread, TimeSpan, Unit, Value};
 
@@ -122,6 +122,8 @@ pub struct Given {
     pub label: Option<Arc<str>>,
     /// The argument.
     pub what: What,
+    /// Where it stands; the call, for what is given by default.
+    pub span: Span,
 }
 
 /// The forms of an argument.
@@ -374,11 +376,13 @@ fn check_shape(parameter: &Parameter, shape: &Shape) -> Result<(), Fault> {
     });
     if !accepted {
         let expected = expected_words(parameter);
-        return Err(Fault::new(
-            "wrong-argument",
-            format!("`{}` is {}; it takes {expected}", parameter.name, shape.describe()),
-        )
-        .label(format!("I was expecting {expected}")));
+        let help = slip(parameter, shape);
+        let message = format!("`{}` is {}; it takes {expected}", parameter.name, shape.describe());
+        let fault = Fault::new("wrong-argument", message).label(format!("I was expecting {expected}"));
+        return Err(match help {
+            Some(help) => fault.help(help),
+            None => fault,
+        });
     }
     if let (Some(Ok(unit)), Some(measure)) = (parameter.unit.map(Unit::parse), shape.measure()) {
         measure.unit.factor_to(&unit).map_err(|fault| {
@@ -390,6 +394,25 @@ fn check_shape(parameter: &Parameter, shape: &Shape) -> Result<(), Fault> {
         })?;
     }
     Ok(())
+}
+
+/// What to write instead, for the commonest slips.
+fn slip(parameter: &Parameter, shape: &Shape) -> Option<&'static str> {
+    let takes = |kind: &str| parameter.accepts.contains(&kind);
+    match shape {
+        Shape::Range(unit) if unit.is_bare() && takes("span") => {
+            Some("a span of time carries its era: `1850..1900 CE`")
+        }
+        Shape::Span if takes("clock") => Some("a clock is a span and a step: `1850..1900 CE by 1 yr`"),
+        Shape::Instant(_) if takes("span") => Some("a span has two ends: `1850..1900 CE`"),
+        Shape::Quantity(measure) if measure.unit.is_bare() && takes("instant") => {
+            Some("an instant carries its era: `1962 CE`, `21 ka`")
+        }
+        Shape::Quantity(measure) if measure.unit.is_bare() && takes("duration") => {
+            Some("a duration carries its unit: `4 yr`, `6 month`, `41 kyr`")
+        }
+        _ => None,
+    }
 }
 
 fn expected_words(parameter: &Parameter) -> String {

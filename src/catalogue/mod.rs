@@ -58,7 +58,7 @@ pub fn find(name: &str) -> Option<&'static Entry> {
 
 /// The name among `names` that `word` may have meant.
 pub fn nearest<'a>(word: &str, names: impl Iterator<Item = &'a str>) -> Option<&'a str> {
-    let reach = (word.chars().count() / 3).clamp(1, 3);
+    let reach = (word.chars().count() / 2).clamp(1, 2);
     names
         .map(|name| (strsim::osa_distance(&word.to_lowercase(), &name.to_lowercase()), name))
         .filter(|(distance, _)| *distance <= reach)

@@ -392,6 +392,12 @@ fn difference_shape(call: &Call<'_>) -> Result<Shape, Stop> {
             moved_instant(&other)?;
             Ok(Shape::Instant(era))
         }
+        (left, Shape::Instant(_)) => {
+            let message = format!("an instant cannot be subtracted from {}", left.describe());
+            Err(Fault::new("wrong-argument", message)
+                .help("a span of time is written with two points: `1850..1900 CE`")
+                .into())
+        }
         (left, right) => {
             let (measure, _) = call.measure("left")?.sum(&call.measure("right")?, true)?;
             Ok(numeric_shape(measure, &[left, right]))

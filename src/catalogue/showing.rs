@@ -92,7 +92,7 @@ fn table(call: &Call<'_>) -> Result<Table, Stop> {
             values.push(sum.values.member(0).to_vec());
             Ok(Table { title: label.to_string(), rows: time_rows(&sum, &values), columns, notes: Vec::new() })
         }
-        Value::Model(model) => Ok(model.table()),
+        Value::Model(model) => Ok(model.table(&[])),
         Value::Quantity(quantity) => {
             let mut columns = vec![Column::in_unit("value", &quantity.measure.unit)];
             let mut row = vec![Cell::number(quantity.first())];

@@ -275,7 +275,8 @@ fn aligned(cells: &[&Cell]) -> Vec<String> {
 /// Four significant digits for a table; whole numbers whole.
 fn compact(value: f64) -> String {
     if (value - value.round()).abs() < 1e-9 && value.abs() < 1e7 {
-        return format!("{}", value.round());
+        // Minus nothing is nothing.
+        return format!("{}", value.round() + 0.0);
     }
     let digits = 4 - 1 - value.abs().log10().floor() as i32;
     if (0..8).contains(&digits) { format!("{value:.*}", digits as usize) } else { significant(value, 4) }

@@ -36,7 +36,7 @@ fn output(session: &Session, output: &Output, cell: usize) -> Json {
             let mut rest = self::shown(shown);
             object.insert("kind".to_owned(), json!(shown.kind()));
             object.insert("fingerprint".to_owned(), json!(output.fingerprint.to_string()));
-            if let Some(unit) = rest.remove("unit") {
+            if let Some(unit) = rest.shift_remove("unit") {
                 object.insert("unit".to_owned(), unit);
             }
             object.insert(
@@ -108,7 +108,7 @@ fn shown(shown: &Shown) -> Map<String, Json> {
             ("high", number(range.high)),
         ]),
         Shown::Clock(clock) => object(vec![("time", time(&clock.axis))]),
-        Shown::Model(model, _) => object(vec![("table", self::table(&model.table()))]),
+        Shown::Model(model, spreads) => object(vec![("table", self::table(&model.table(spreads)))]),
         Shown::Attribution(attribution) => self::attribution(attribution),
         Shown::Table(content) => object(vec![("table", self::table(content))]),
         Shown::Text(text) => object(vec![("text", json!(&**text))]),

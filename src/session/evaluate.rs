@@ -17,6 +17,7 @@ use crate::base::{Blame, Cancellation, Diagnostic, Fault, INTERRUPTED, Span};
 use crate::catalogue::{
     self, Body, Call, Context, Given, InputFile, Path, ReadsClock, Stop, What, check_arguments, nearest,
 };
+use crate::language::{Parameter, Presence};
 use crate::science::draws;
 use crate::value::{Clock, Instant, Quantity, Shape, Spread, TimeSpan, Unit, Value};
 
@@ -114,7 +115,8 @@ impl Evaluator<'_> {
     fn not_defined(&self, name: &str) -> Fault {
         let fault = Fault::new("not-defined", format!("`{name}` is not defined yet"));
         if catalogue::find(name).is_some() || self.definitions.functions.contains_key(name) {
-            return fault.help(format!("`{name}` is a function: a call has brackets, `{name}(…)`"));
+            return Fault::new("not-defined", format!("`{name}` is a function, and no name is defined so"))
+                .help(format!("a call has brackets: `{name}(…)`"));
         }
         let names = self.definitions.values.keys().map(|name| &**name);
         match nearest(name, names) {
@@ -549,28 +551,46 @@ fn placed(stop: Stop, node: &Node, call: &CallNode) -> Stop {
         Stop::Fault(fault) => fault,
     };
     let parameters = call.entry.signature.parameters;
-    let slot_of = |given: &Given| match &given.what {
-        What::Value(slot) => call.slots.get(*slot),
-        What::Choice { .. } | What::Groups(_) | What::Months { .. } => None,
-    };
     let place = match &fault.blame {
         Blame::Call => None,
-        Blame::Argument(name) => call
+        Blame::Argument(name) => blamed(parameters, &call.given, &call.slots, name),
+        Blame::Item(number) => call
             .given
             .iter()
-            .find(|given| parameters.get(given.parameter).is_some_and(|parameter| parameter.name == *name))
-            .and_then(slot_of),
-        Blame::Item(number) => {
-            let repeated = call.given.iter().filter(|given| {
-                parameters.get(given.parameter).is_some_and(|parameter| {
-                    matches!(parameter.presence, crate::language::Presence::Repeated { .. })
-                })
-            });
-            repeated.clone().nth(*number).and_then(slot_of)
-        }
+            .filter(|given| {
+                let parameter = parameters.get(given.parameter);
+                parameter.is_some_and(|parameter| matches!(parameter.presence, Presence::Repeated { .. }))
+            })
+            .nth(*number)
+            .map(|given| span_of(given, &call.slots)),
     };
-    let span = place.map_or(node.span, |argument| argument.span);
+    let span = place.unwrap_or(node.span);
     Stop::Placed(Box::new(fault.at(span)))
+}
+
+/// Where an argument stands: where its value does, which for a parameter of a function is the caller's text.
+fn span_of(given: &Given, slots: &[Arc<Node>]) -> Span {
+    match &given.what {
+        What::Value(slot) => slots.get(*slot).map_or(given.span, |node| node.span),
+        What::Choice { .. } | What::Groups(_) | What::Months { .. } => given.span,
+    }
+}
+
+/// The place of the argument of a parameter, or of a parameter of a choice inside.
+fn blamed(
+    parameters: &'static [Parameter],
+    given: &[Given],
+    slots: &[Arc<Node>],
+    name: &str,
+) -> Option<Span> {
+    given.iter().find_map(|given| {
+        let parameter = parameters.get(given.parameter)?;
+        if parameter.name == name {
+            return Some(span_of(given, slots));
+        }
+        let What::Choice { choice, given } = &given.what else { return None };
+        blamed(parameter.choices.get(*choice)?.parameters, given, slots, name)
+    })
 }
 
 fn limited(shape: Shape, span: Span) -> Result<Shape, Stop> {

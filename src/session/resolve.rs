@@ -169,7 +169,7 @@ impl Resolver<'_> {
             return Err(Fault::new("internal", format!("the operator {symbol} has no entry")).at(span));
         };
         let given = (0..slots.len())
-            .map(|slot| Given { parameter: slot, label: None, what: What::Value(slot) })
+            .map(|slot| Given { parameter: slot, label: None, what: What::Value(slot), span })
             .collect();
         let variable = entry.random.then(|| scope.next_variable());
         self.sized(Node::new(NodeKind::Call(CallNode { entry, given, slots, variable }), span, label))
@@ -237,7 +237,9 @@ impl Resolver<'_> {
         let mut functions = scope.functions.clone();
         functions.push(name.to_owned());
         let mut inner = Scope { place, random: 0, calls: 0, locals, functions };
+        // What grows too large is told at the outermost call.
         self.expression(&function.body, &mut inner)
+            .map_err(|problem| if problem.code == TOO_LARGE { too_large(span) } else { problem })
     }
 
     fn entry_call(
@@ -275,7 +277,7 @@ impl Resolver<'_> {
                     .at(argument.value.span));
             }
             let what = self.what(parameter, &argument.value, slots, scope)?;
-            given.push(Given { parameter: number, label: own_label, what });
+            given.push(Given { parameter: number, label: own_label, what, span: argument.value.span });
         }
         for (number, parameter) in parameters.iter().enumerate() {
             if given.iter().any(|other| other.parameter == number) {
@@ -294,7 +296,7 @@ impl Resolver<'_> {
                 }
                 Presence::Default(text) => {
                     let what = self.default(owner, parameter, text, span, slots)?;
-                    given.push(Given { parameter: number, label: None, what });
+                    given.push(Given { parameter: number, label: None, what, span });
                 }
             }
         }
@@ -446,8 +448,10 @@ fn wrong_choice(parameter: &Parameter, word: &str) -> Fault {
     }
 }
 
+const TOO_LARGE: &str = "too-large";
+
 fn too_large(span: Span) -> Diagnostic {
-    Fault::new("too-large", "this expression grows too large when its functions are put in")
+    Fault::new(TOO_LARGE, "this expression grows too large when its functions are put in")
         .help(format!("the most is {SIZE_LIMIT} parts: give intermediate results names of their own"))
         .at(span)
 }
@@ -498,6 +502,11 @@ fn unit_fault(fault: &crate::value::UnitFault, written: &UnitText, value: Option
         .or_else(|| fault.near.clone())
         .map(|near| format!("did you mean `{near}`? "))
         .unwrap_or_default();
+    if let Some(base) = written.text.strip_suffix('m').filter(|base| Unit::parse(base).is_ok()) {
+        // `3 Wm-2`: the lexer stops before the minus sign.
+        return Fault::new("unknown-unit", message)
+            .help(format!("exponents below the line stand after a slash: `{base}/m2`"));
+    }
     let multiply = match value {
         Some(value) if written.text.chars().all(|letter| letter.is_alphanumeric() || letter == '_') => {
             format!("to multiply, write `{value} * {}`", written.text)

@@ -72,6 +72,8 @@ impl Measure {
     /// # Errors
     /// `unit-mismatch`, `forcing-kinds`, `absolute-or-difference`.
     pub fn sum(&self, other: &Self, subtract: bool) -> Result<(Self, f64), Fault> {
+        // Asked in this order, so that a mismatch names the left side first.
+        self.unit.factor_to(&other.unit)?;
         let factor = other.unit.factor_to(&self.unit)?;
         let reading = match (self.reading, other.reading, subtract) {
             (Reading::Undeclared, Reading::Undeclared, true) => Reading::Difference,

@@ -1,6 +1,7 @@
 use std::sync::Arc;
 
 use super::block::Block;
+use super::spread::Spread;
 use super::table::{Cell, Column, Table};
 
 /// A response model with a value of each parameter for every member.
@@ -41,16 +42,33 @@ impl Model {
         }
     }
 
-    /// Names, nominal values and units as a table.
-    pub fn table(&self) -> Table {
+    /// Names, nominal values and units as a table, with medians and 5–95 % ranges where any parameter has one.
+    pub fn table(&self, spreads: &[Option<Arc<Spread>>]) -> Table {
+        let ranged = spreads.iter().any(Option::is_some);
+        let mut columns = vec![Column::plain("parameter"), Column::plain("value")];
+        if ranged {
+            columns.extend(["median", "low", "high"].map(Column::plain));
+        }
+        columns.push(Column::plain("unit"));
         let rows = self
             .parameters()
             .into_iter()
-            .map(|(name, unit, values)| {
-                vec![Cell::Text(Arc::from(name)), Cell::number(values.first()), Cell::Text(Arc::from(unit))]
+            .enumerate()
+            .map(|(index, (name, unit, values))| {
+                let mut row = vec![Cell::Text(Arc::from(name)), Cell::number(values.first())];
+                if ranged {
+                    let spread = spreads.get(index).and_then(Option::as_deref);
+                    let first = |pick: fn(&Spread) -> &Vec<f64>| {
+                        spread
+                            .and_then(|spread| pick(spread).first())
+                            .map_or(Cell::Empty, |value| Cell::number(*value))
+                    };
+                    row.extend([first(|s| &s.median), first(|s| &s.low), first(|s| &s.high)]);
+                }
+                row.push(Cell::Text(Arc::from(unit)));
+                row
             })
             .collect();
-        let columns = vec![Column::plain("parameter"), Column::plain("value"), Column::plain("unit")];
         Table { title: "two-layer model".to_owned(), columns, rows, notes: Vec::new() }
     }
 }

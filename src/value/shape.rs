@@ -64,6 +64,7 @@ impl Shape {
             Shape::Quantity(measure) | Shape::Series(measure) => {
                 format!("{article} {kind} in {}", measure.unit)
             }
+            Shape::Range(unit) if unit.is_bare() => "a range of plain numbers".to_owned(),
             Shape::Range(unit) => format!("a range in {unit}"),
             Shape::Instant(_)
             | Shape::Span

@@ -247,6 +247,9 @@ fn nearest(word: &str) -> Option<String> {
     if !spoken.is_empty() {
         return Some(spoken.to_owned());
     }
+    if lower == "degf" {
+        return None;
+    }
     let same_letters = UNITS.iter().find(|entry| entry.symbol.eq_ignore_ascii_case(word));
     let close = || UNITS.iter().find(|entry| word.len() > 2 && strsim::osa_distance(entry.symbol, word) == 1);
     same_letters.or_else(close).map(|entry| entry.symbol.to_owned())

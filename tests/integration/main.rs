@@ -12,4 +12,5 @@ mod catalogue_examples;
 mod certified_science;
 mod grammar;
 mod layers;
+mod real_record;
 mod suite;
