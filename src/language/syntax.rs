@@ -179,6 +179,30 @@ pub enum ExpressionKind {
 }
 
 impl Expression {
+    /// Every name, function and text in it, as often as it stands there.
+    pub fn words(&self, found: &mut Vec<String>) {
+        match &self.kind {
+            ExpressionKind::Number { .. } | ExpressionKind::Date { .. } => {}
+            ExpressionKind::Text(word) | ExpressionKind::Name(word) => found.push(word.clone()),
+            ExpressionKind::List(items) => items.iter().for_each(|item| item.words(found)),
+            ExpressionKind::Call { name, arguments, .. } => {
+                found.push(name.clone());
+                arguments.iter().for_each(|argument| argument.value.words(found));
+            }
+            ExpressionKind::Negate(inner)
+            | ExpressionKind::Group(inner)
+            | ExpressionKind::Convert { value: inner, .. } => inner.words(found),
+            ExpressionKind::Binary { left, right, .. } => {
+                left.words(found);
+                right.words(found);
+            }
+            ExpressionKind::For { body, list, .. } => {
+                body.words(found);
+                list.words(found);
+            }
+        }
+    }
+
     /// An expression whose depth follows from its parts.
     pub(crate) fn new(kind: ExpressionKind, span: Span) -> Self {
         let deepest =

@@ -11,7 +11,7 @@ use super::graph::Graph;
 use super::inputs::{FILE_LIMIT, Inputs};
 use super::memo::Memo;
 use super::node::Node;
-use super::resolve::{SIZE_LIMIT, resolve};
+use super::resolve::{SETTINGS, SIZE_LIMIT, resolve};
 use crate::base::{Cancellation, Diagnostic, Fault, Source, SourceId, Span};
 use crate::catalogue::{Path, Stop};
 use crate::language::{Expression, Program, Statement, StatementKind, canonical, parse};
@@ -151,22 +151,28 @@ impl Session {
     /// Say that cells are gone from the notebook: what they define stays, and what depends on it says so.
     pub fn mark_deleted(&mut self, cells: &[&str]) {
         for definition in self.definitions.values.values_mut() {
-            if cells.contains(&&*definition.cell) {
-                definition.deleted = true;
-            }
+            definition.deleted |= cells.contains(&&*definition.cell);
+            definition.rivals.retain(|cell| !cells.contains(&&**cell));
+        }
+        for function in self.definitions.functions.values_mut() {
+            let function = Arc::make_mut(function);
+            function.deleted |= cells.contains(&&*function.cell);
+            function.rivals.retain(|cell| !cells.contains(&&**cell));
         }
         self.displays.retain(|display| !cells.contains(&&*display.cell));
     }
 
     /// Names that more than one cell defines, with the cell in force and the others.
     pub fn contested_names(&self) -> Vec<(String, String, Vec<String>)> {
-        self.definitions
-            .values
-            .iter()
-            .filter(|(_, definition)| !definition.rivals.is_empty())
-            .map(|(name, definition)| {
-                let rivals = definition.rivals.iter().map(ToString::to_string).collect();
-                (name.to_string(), definition.cell.to_string(), rivals)
+        let values = self.definitions.values.iter();
+        let values = values.map(|(name, found)| (name.to_string(), &found.cell, &found.rivals));
+        let functions = self.definitions.functions.iter();
+        let functions = functions.map(|(name, found)| (format!("{name}(…)"), &found.cell, &found.rivals));
+        values
+            .chain(functions)
+            .filter(|(_, _, rivals)| !rivals.is_empty())
+            .map(|(name, cell, rivals)| {
+                (name, cell.to_string(), rivals.iter().map(ToString::to_string).collect())
             })
             .collect()
     }
@@ -292,11 +298,10 @@ impl Session {
                 }
                 StatementKind::Function { name, name_span, parameters, body } => {
                     let parameters = parameters.into_iter().map(|(name, _)| name).collect();
-                    let function = Function { cell: cell.clone(), parameters, name_span, body };
-                    if let Some(old) = self.definitions.functions.insert(name.clone(), Arc::new(function))
-                        && old.cell != *cell
+                    if let Some(old) =
+                        self.definitions.define_function(&name, cell, name_span, parameters, body)
                     {
-                        reply.notices.push(taken_over(&format!("{name}(…)"), &old.cell));
+                        reply.notices.push(taken_over(&format!("{name}(…)"), &old));
                     }
                 }
                 StatementKind::Define { name, name_span, expression } => {
@@ -349,7 +354,10 @@ impl Session {
         for display in others {
             let print = print_of(&evaluator, display, &environment);
             if print != display.fingerprint {
-                let by: Vec<String> = changed.iter().cloned().chain(self.inputs.changed()).collect();
+                let used = words_behind(&self.definitions, display);
+                let files = self.inputs.changed();
+                let by: Vec<String> =
+                    changed.iter().chain(&files).filter(|name| used.contains(bare(name))).cloned().collect();
                 reply.moved.push(show(&evaluator, display, &environment, &by));
             }
         }
@@ -368,6 +376,28 @@ impl Session {
         let newest = SourceId(self.next_source.saturating_sub(1));
         self.sources.retain(|id, _| kept.contains(id) || *id == newest);
     }
+}
+
+/// A function's name without its parameters.
+fn bare(name: &str) -> &str {
+    name.split('(').next().unwrap_or(name)
+}
+
+/// Every name, function and text that a display's result can follow from, and the settings.
+fn words_behind(definitions: &Definitions, display: &Display) -> BTreeSet<String> {
+    let mut words: BTreeSet<String> = SETTINGS.iter().map(|name| (*name).to_owned()).collect();
+    let mut waiting: Vec<&Expression> = vec![&display.expression];
+    while let Some(expression) = waiting.pop() {
+        let mut found = Vec::new();
+        expression.words(&mut found);
+        for word in found {
+            if words.insert(word.clone()) {
+                waiting.extend(definitions.values.get(&*word).map(|definition| &definition.expression));
+                waiting.extend(definitions.functions.get(&word).map(|function| &function.body));
+            }
+        }
+    }
+    words
 }
 
 fn taken_over(name: &str, cell: &str) -> String {
@@ -413,7 +443,7 @@ fn environment(evaluator: &Evaluator<'_>) -> Environment {
                 environment = environment.with_clock(clock.clone());
             }
         }
-        Some(Err(Stop::Placed(problem))) => environment.clock_problem = Some(Arc::from(problem)),
+        Some(Err(Stop::Placed(problem))) => environment = environment.without_clock(Arc::from(problem)),
         Some(Err(Stop::Fault(_))) => {}
     }
     environment
@@ -436,6 +466,12 @@ fn check(evaluator: &Evaluator<'_>, cell: &Arc<str>, environment: &Environment, 
     for (name, definition) in &evaluator.definitions.values {
         if definition.cell != *cell {
             continue;
+        }
+        let stem = |name: &str| name.to_lowercase().trim_end_matches('s').to_owned();
+        if let Some(setting) =
+            SETTINGS.iter().find(|setting| **setting != &**name && stem(setting) == stem(name))
+        {
+            reply.notices.push(format!("`{name}` is a name of yours; the setting is called `{setting}`"));
         }
         let problem = match (&definition.node, evaluator.graph.problems.get(name)) {
             (_, Some(problem)) | (Err(problem), None) => Some(problem.clone()),
@@ -503,8 +539,13 @@ fn show(
         Err(Stop::Placed(problem)) => (Err(*problem), Vec::new()),
         Err(Stop::Fault(fault)) => (Err(fault.at(display.expression.span)), Vec::new()),
     };
-    if let Ok(node) = &display.node {
-        notes.extend(deleted_homes(evaluator, node));
+    for word in words_behind(evaluator.definitions, display) {
+        let name = evaluator.definitions.values.get(&*word).filter(|definition| definition.deleted);
+        let function = evaluator.definitions.functions.get(&word).filter(|function| function.deleted);
+        let word = if function.is_some() { format!("{word}(…)") } else { word };
+        if name.is_some() || function.is_some() {
+            notes.push(Arc::from(format!("`{word}` is defined in a cell that was deleted")));
+        }
     }
     Output {
         display: display.id,
@@ -515,21 +556,4 @@ fn show(
         notes,
         refreshed_by: changed.to_vec(),
     }
-}
-
-/// Notes for names that a shown expression depends on and whose cells are gone.
-fn deleted_homes(evaluator: &Evaluator<'_>, node: &Arc<Node>) -> Vec<Arc<str>> {
-    let mut notes = Vec::new();
-    let mut waiting = node.references();
-    let mut seen: BTreeSet<Arc<str>> = waiting.iter().cloned().collect();
-    while let Some(name) = waiting.pop() {
-        let Some(definition) = evaluator.definitions.values.get(&name) else { continue };
-        if definition.deleted {
-            notes.push(Arc::from(format!("`{name}` is defined in a cell that was deleted")));
-        }
-        if let Ok(node) = &definition.node {
-            waiting.extend(node.references().into_iter().filter(|name| seen.insert(name.clone())));
-        }
-    }
-    notes
 }

@@ -32,9 +32,14 @@ pub(super) struct Definition {
 }
 
 /// A function of the user's: an expression with parameters.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(super) struct Function {
+    /// The cell it has its home in.
     pub(super) cell: Arc<str>,
+    /// Other cells that define the function too.
+    pub(super) rivals: BTreeSet<Arc<str>>,
+    /// Whether the front end said that its cell is gone.
+    pub(super) deleted: bool,
     pub(super) parameters: Vec<String>,
     pub(super) name_span: Span,
     pub(super) body: Expression,
@@ -99,6 +104,30 @@ impl Definitions {
         let definition =
             Definition { cell: cell.clone(), rivals, deleted: false, name_span, expression, node };
         self.values.insert(Arc::from(name), definition);
+        from
+    }
+
+    /// Bind a function; returns the cell that it is taken from, where that is another.
+    pub(super) fn define_function(
+        &mut self,
+        name: &str,
+        cell: &Arc<str>,
+        name_span: Span,
+        parameters: Vec<String>,
+        body: Expression,
+    ) -> Option<Arc<str>> {
+        let mut rivals = BTreeSet::new();
+        let mut from = None;
+        if let Some(old) = self.functions.get(name) {
+            rivals.clone_from(&old.rivals);
+            rivals.remove(cell);
+            if old.cell != *cell {
+                rivals.insert(old.cell.clone());
+                from = Some(old.cell.clone());
+            }
+        }
+        let function = Function { cell: cell.clone(), rivals, deleted: false, parameters, name_span, body };
+        self.functions.insert(name.to_owned(), Arc::new(function));
         from
     }
 

@@ -28,6 +28,12 @@ impl Environment {
         Self { clock: None, key: 0, members: DEFAULT_MEMBERS, seed: DEFAULT_SEED, clock_problem: None }
     }
 
+    /// The same, where a clock is defined that cannot be had: told apart from one without any clock.
+    pub(super) fn without_clock(&self, problem: Arc<Diagnostic>) -> Self {
+        let digest: [u8; 32] = Sha256::digest(format!("{}\0{}", problem.code, problem.message)).into();
+        Self { key: key_of(&digest), clock: None, clock_problem: Some(problem), ..self.clone() }
+    }
+
     /// The same with another clock.
     pub(super) fn with_clock(&self, clock: Arc<Clock>) -> Self {
         let axis = &clock.axis;
@@ -41,8 +47,11 @@ impl Environment {
         }
         hash.update(axis.era.symbol());
         let digest: [u8; 32] = hash.finalize().into();
-        let key = digest.iter().take(8).fold(0u64, |key, byte| (key << 8) | u64::from(*byte));
-        // Zero stands for no clock.
-        Self { clock: Some(clock), key: key.max(1), clock_problem: None, ..self.clone() }
+        Self { clock: Some(clock), key: key_of(&digest), clock_problem: None, ..self.clone() }
     }
+}
+
+/// The first eight bytes of a hash; zero stands for no clock.
+fn key_of(digest: &[u8; 32]) -> u64 {
+    digest.iter().take(8).fold(0u64, |key, byte| (key << 8) | u64::from(*byte)).max(1)
 }
