@@ -33,7 +33,7 @@ static COMPOSE: Entry = Entry {
     gaps: "A gap in one component is a gap in the sum.",
     shows: &[Shows {
         program: "clock = 1850..1851 CE by 1 yr\nsun = constant(0.1 W/m2)\nhaze = constant(-0.5 W/m2)\ncompose(sun, haze)",
-        gives: "2 components (sun, haze); total: 2 steps, 1850 CE to 1851 CE: -0.4 to -0.4 W/m2",
+        gives: "2 components (sun, haze); total: 2 steps, 1850 CE to 1851 CE: first -0.4, last -0.4 W/m2",
     }],
     fails: &[
         Fails {
@@ -156,7 +156,7 @@ static WITHOUT: Entry = Entry {
     gaps: "Gaps stay as they are.",
     shows: &[Shows {
         program: "clock = 1850..1851 CE by 1 yr\nsun = constant(0.1 W/m2)\nhaze = constant(-0.5 W/m2)\ncompose(sun, haze) |> without([haze])",
-        gives: "1 component (sun); total: 2 steps, 1850 CE to 1851 CE: 0.1 to 0.1 W/m2",
+        gives: "1 component (sun); total: 2 steps, 1850 CE to 1851 CE: first 0.1, last 0.1 W/m2",
     }],
     fails: &[Fails {
         program: "clock = 1850..1851 CE by 1 yr\nsun = constant(0.1 W/m2)\nhaze = constant(1 W/m2)\ncompose(sun, haze) |> without([gases])",
@@ -228,7 +228,7 @@ static SCALE: Entry = Entry {
     equation: Some(r"y(t) = a\,x(t)"),
     shows: &[Shows {
         program: "x = series([1, 2] W/m2, along: 1850..1851 CE by 1 yr)\nx |> scale(0.5)",
-        gives: "2 steps, 1850 CE to 1851 CE: 0.5 to 1 W/m2",
+        gives: "2 steps, 1850 CE to 1851 CE: first 0.5, last 1 W/m2",
     }],
     fails: &[Fails {
         program: "x = series([1, 2] W/m2, along: 1850..1851 CE by 1 yr)\nx |> scale(\"half\")",
@@ -268,7 +268,7 @@ static ANOMALY: Entry = Entry {
     gaps: "A gap stays a gap; two thirds of the baseline must have values.",
     shows: &[Shows {
         program: "x = series([14, 15, 16] degC, along: 1850..1852 CE by 1 yr)\nx |> anomaly(relative_to: 1850..1851 CE)",
-        gives: "3 steps, 1850 CE to 1852 CE: -0.5 to 1.5 degC",
+        gives: "3 steps, 1850 CE to 1852 CE: first -0.5, last 1.5 degC",
     }],
     fails: &[Fails {
         program: "x = series([14, 15, 16] degC, along: 1850..1852 CE by 1 yr)\nx |> anomaly(relative_to: 1840..1851 CE)",
@@ -350,11 +350,11 @@ static SPLICE: Entry = Entry {
     shows: &[
         Shows {
             program: "ice = series([280, 282] ppm, at: [1800 CE, 1850 CE])\nair = series([315, 316] ppm, along: 1958..1959 CE by 1 yr)\nsplice(ice, air, at: 1900 CE)",
-            gives: "4 instants, 1800.5 CE to 1959.5 CE: 280 to 316 ppm",
+            gives: "4 instants, 1800.5 CE to 1959.5 CE: first 280, last 316 ppm",
         },
         Shows {
             program: "old = series([1, 2, 3] degC, along: 1850..1852 CE by 1 yr)\nnew = series([4, 5] degC, along: 1852..1853 CE by 1 yr)\nsplice(old, new, at: 1852 CE, adjust: offset)",
-            gives: "4 instants, 1850.5 CE to 1853.5 CE: 2 to 5 degC",
+            gives: "4 instants, 1850.5 CE to 1853.5 CE: first 2, last 5 degC",
         },
     ],
     fails: &[Fails {

@@ -12,8 +12,8 @@ use crate::base::Fault;
 use crate::language::{Choice, Parameter, Signature};
 use crate::science::{reduce, regression, student};
 use crate::value::{
-    Attribution, Axis, Bundle, Coefficient, Content, FitStatistics, Model, Series, Shape, TimeSpan, Unit,
-    Value,
+    Attribution, Axis, Bundle, CAUTION, Coefficient, Content, FitStatistics, Model, Series, Shape, TimeSpan,
+    Unit, Value,
 };
 
 static ATTRIBUTE: Entry = Entry {
@@ -287,6 +287,7 @@ fn attribute(call: &Call<'_>) -> Result<Value, Stop> {
         fitted,
         windows: None,
         observed_change: None,
+        explained: None,
     };
     if let (Some(later), Some(earlier)) = (call.span("change")?, call.span("from")?) {
         contribute(&mut attribution, later, earlier)?;
@@ -297,7 +298,29 @@ fn attribute(call: &Call<'_>) -> Result<Value, Stop> {
                 .to_owned(),
         );
     }
+    note_noise(call, &attribution);
+    if attribution.windows.is_none() {
+        call.context.note("contributions to a change need its two windows: `change:` and `from:`".to_owned());
+    }
+    call.context.note(CAUTION.to_owned());
     Ok(Value::Attribution(Arc::new(attribution)))
+}
+
+/// Say where the residuals are not what the method takes them to be.
+fn note_noise(call: &Call<'_>, attribution: &Attribution) {
+    let statistics = &attribution.statistics;
+    let found = statistics.residual_autocorrelation;
+    // Twice the standard error of a correlation of independent values.
+    let tolerance = 2.0 / (statistics.count as f64).sqrt();
+    match statistics.rho {
+        None if found > tolerance => call.context.note(format!(
+            "the residuals correlate at {found:.2} from value to value, so these intervals are too narrow: generalised least squares takes that into account"
+        )),
+        Some(rho) if found - rho > tolerance => call.context.note(format!(
+            "the residuals correlate at {found:.2} from value to value, and `noise:` says {rho:.2}: these intervals are too narrow"
+        )),
+        _ => {}
+    }
 }
 
 fn value_at(values: &[f64], index: usize) -> f64 {
@@ -575,6 +598,19 @@ pub(super) fn contribute(
     attribution.observed_change = Some(change(&attribution.observed)?);
     let changes =
         attribution.drivers.iter().map(|driver| change(&driver.regressor)).collect::<Result<Vec<_>, _>>()?;
+    // All together: a sum of correlated estimates, so that its error needs their covariance.
+    let size = changes.len() + 1;
+    let covariance =
+        |row: usize, column: usize| value_at(&attribution.covariance, (row + 1) * size + column + 1);
+    let mut variance = 0.0;
+    for (row, left) in changes.iter().enumerate() {
+        for (column, right) in changes.iter().enumerate() {
+            variance += left * right * covariance(row, column);
+        }
+    }
+    let explained =
+        attribution.drivers.iter().zip(&changes).map(|(driver, change)| driver.value * change).sum();
+    attribution.explained = Some((explained, variance.max(0.0).sqrt()));
     for (driver, change) in attribution.drivers.iter_mut().zip(changes) {
         driver.contribution = Some((driver.value * change, (driver.standard_error * change).abs()));
     }

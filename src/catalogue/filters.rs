@@ -49,11 +49,11 @@ static SMOOTH: Entry = Entry {
     shows: &[
         Shows {
             program: "x = series([1, 2, 6, 2, 1] ppm, along: 1850..1854 CE by 1 yr)\nx |> smooth(3 yr)",
-            gives: "5 steps, 1850 CE to 1854 CE: 1.5 to 1.5 ppm",
+            gives: "5 steps, 1850 CE to 1854 CE: first 1.5, last 1.5 ppm",
         },
         Shows {
             program: "x = series([1, 2, 6, 2, 1] ppm, along: 1850..1854 CE by 1 yr)\nx |> smooth(3 yr, ends: gap)",
-            gives: "5 steps, 1850 CE to 1854 CE: 3 to 3 ppm; 2 gaps",
+            gives: "5 steps, 1850 CE to 1854 CE: first 3, last 3 ppm; 2 gaps",
         },
     ],
     fails: &[Fails {
@@ -117,7 +117,7 @@ static DETREND: Entry = Entry {
     gaps: "A gap stays a gap, and takes no part in the line.",
     shows: &[Shows {
         program: "x = series([1, 2, 3, 5] degC, along: 1850..1853 CE by 1 yr)\nx |> detrend()",
-        gives: "4 steps, 1850 CE to 1853 CE: 0.2 to 0.3 degC",
+        gives: "4 steps, 1850 CE to 1853 CE: first 0.2, last 0.3 degC",
     }],
     fails: &[Fails { program: "detrend(3 ppm)", code: "wrong-argument", says: "a series" }],
     search: &["trend", "linear", "residual"],
@@ -161,7 +161,7 @@ static STANDARDISE: Entry = Entry {
     gaps: "A gap stays a gap.",
     shows: &[Shows {
         program: "x = series([1, 2, 3] ppm, along: 1850..1852 CE by 1 yr)\nx |> standardise()",
-        gives: "3 steps, 1850 CE to 1852 CE: -1 to 1",
+        gives: "3 steps, 1850 CE to 1852 CE: first -1, last 1",
     }],
     fails: &[Fails {
         program: "x = series([2, 2, 2] ppm, along: 1850..1852 CE by 1 yr)\nx |> standardise()",
@@ -213,7 +213,7 @@ static CUMULATE: Entry = Entry {
     gaps: "After a gap, everything is a gap.",
     shows: &[Shows {
         program: "x = series([1, 2, 3] W/m2, along: 1850..1852 CE by 1 yr)\ncumulate(x)",
-        gives: "4 instants, 1850 CE to 1853 CE: 0 to 6 W*yr/m2",
+        gives: "4 instants, 1850 CE to 1853 CE: first 0, last 6 W*yr/m2",
     }],
     fails: &[Fails { program: "cumulate(3 ppm)", code: "wrong-argument", says: "a series" }],
     search: &["integrate", "integral", "sum", "total", "heat content"],
@@ -247,7 +247,7 @@ static RATE: Entry = Entry {
     shows: &[
         Shows {
             program: "x = series([1, 2, 4] W/m2, along: 1850..1852 CE by 1 yr)\nrate(cumulate(x))",
-            gives: "3 steps, 1850 CE to 1852 CE: 1 to 4 W/m2",
+            gives: "3 steps, 1850 CE to 1852 CE: first 1, last 4 W/m2",
         },
         Shows {
             program: "clock = 1850..1852 CE by 1 yr\nx = ramp(1850..1852 CE, 3 W/m2)\nmaximum(rate(cumulate(x)) - x)",
@@ -255,7 +255,7 @@ static RATE: Entry = Entry {
         },
         Shows {
             program: "x = series([1, 2, 4] ppm, along: 1850..1852 CE by 1 yr)\nrate(x)",
-            gives: "2 instants, 1851 CE to 1852 CE: 1 to 2 ppm/yr",
+            gives: "2 instants, 1851 CE to 1852 CE: first 1, last 2 ppm/yr",
         },
     ],
     fails: &[Fails {

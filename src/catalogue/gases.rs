@@ -40,7 +40,7 @@ static CO2_FORCING: Entry = Entry {
         },
         Shows {
             program: "co2 = series([278, 417] ppm, along: 1850..1851 CE by 1 yr)\nco2_forcing(co2)",
-            gives: "2 steps, 1850 CE to 1851 CE: 0 to 2.16924 W/m2, stratosphere-adjusted change from 278 ppm CO2",
+            gives: "2 steps, 1850 CE to 1851 CE: first 0, last 2.16924 W/m2, stratosphere-adjusted change from 278 ppm CO2",
         },
     ],
     fails: &[

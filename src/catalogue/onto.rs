@@ -165,10 +165,26 @@ fn words(series: &Series, name: &str, axis: &Axis, plan: &Plan, gaps: usize) -> 
     if partly > 0 {
         words += &format!("; {} covered in part", counted(partly, axis.kind.word()));
     }
+    if let Some((from, to)) = longest_bridge(series) {
+        let label = |year: f64| series.axis.era.format((year * 100.0).round() / 100.0);
+        words += &format!("; {} to {} bridged by a straight line", label(from), label(to));
+    }
     if gaps > 0 {
         words += &format!("; {} left as gaps", counted(gaps, axis.kind.word()));
     }
     Some(words)
+}
+
+/// The longest stretch without values that is bridged although it is longer than the customary three median steps.
+fn longest_bridge(series: &Series) -> Option<(f64, f64)> {
+    let customary = 3.0 * series.axis.median_step();
+    let known =
+        series.axis.middles().into_iter().zip(series.values.member(0)).filter(|(_, value)| !value.is_nan());
+    let times: Vec<f64> = known.map(|(time, _)| time).collect();
+    let spaces = times.iter().zip(times.iter().skip(1)).map(|(from, to)| (*from, *to));
+    spaces
+        .filter(|(from, to)| to - from > customary * 1.01 && to - from <= series.longest_gap_years)
+        .max_by(|left, right| f64::total_cmp(&(left.1 - left.0), &(right.1 - right.0)))
 }
 
 /// `1 step`, `3 steps`.

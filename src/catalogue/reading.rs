@@ -32,6 +32,12 @@ static LOAD: Entry = Entry {
                     Choice::plain("instants", "each value holds at a point in time"),
                 ]),
             Parameter::optional("missing", &["text"], "what stands in the file for a missing value, such as \"-999\""),
+            Parameter::choice(
+                "decimals",
+                &[Choice::plain("point", "3.14"), Choice::plain("comma", "3,14, with columns apart by `;` or tabs")],
+                "point",
+                "the decimal mark of the file",
+            ),
             Parameter::optional("longest_gap", &["duration"], "the longest gap to bridge when it is brought onto a clock; three of its own median steps by default")
                 .in_unit("yr"),
         ],
@@ -39,14 +45,14 @@ static LOAD: Entry = Entry {
     result: "a series on the file's own axis, in the file's unit",
     gaps: "Empty cells, NaN and infinities are gaps and are counted in a note; other oddities are errors with line and column.",
     shows: &[
-        Shows { program: "load(\"spots.csv\")", gives: "6 steps, 1850 CE to 1855 CE: 66 to 7 spots_v2" },
+        Shows { program: "load(\"spots.csv\")", gives: "6 steps, 1850 CE to 1855 CE: first 66, last 7 spots_v2" },
         Shows {
             program: "load(\"runs.csv\", members: \"m*\")",
-            gives: "3 steps, 1850 CE to 1852 CE: 0.20 [0.10, 0.30] to 0.50 [0.40, 0.60] W/m2",
+            gives: "3 steps, 1850 CE to 1852 CE: first 0.20 [0.10, 0.30], last 0.50 [0.40, 0.60] W/m2",
         },
         Shows {
             program: "load(\"core.csv\", value: \"co2\", unit: \"ppm\")",
-            gives: "4 instants, 21 ka to 18 ka: 190 to 205 ppm",
+            gives: "4 instants, 21 ka to 18 ka: first 190, last 205 ppm",
         },
     ],
     fails: &[
@@ -72,7 +78,7 @@ fn load(call: &Call<'_>) -> Result<Value, Stop> {
             .choice("as")
             .map(|(word, _)| if word == "steps" { AxisForm::Steps } else { AxisForm::Instants }),
         missing: call.text("missing")?.into_iter().map(|text| text.to_string()).collect(),
-        ..SeriesOptions::default()
+        decimal_comma: call.choice("decimals").is_some_and(|(word, _)| word == "comma"),
     };
     let pattern = call.text("members")?;
     let read = match &pattern {
@@ -237,11 +243,11 @@ static SERIES: Entry = Entry {
     shows: &[
         Shows {
             program: "series([280, 285 ± 1, 290] ppm, along: 1850..1852 CE by 1 yr)",
-            gives: "3 steps, 1850 CE to 1852 CE: 280 to 290 ppm",
+            gives: "3 steps, 1850 CE to 1852 CE: first 280, last 290 ppm",
         },
         Shows {
             program: "series([190, 265] ppm, at: [21 ka, 11 ka])",
-            gives: "2 instants, 21 ka to 11 ka: 190 to 265 ppm",
+            gives: "2 instants, 21 ka to 11 ka: first 190, last 265 ppm",
         },
     ],
     fails: &[

@@ -49,6 +49,7 @@ static TWO_LAYER: Entry = Entry {
     }],
     fails: &[
         Fails { program: "two_layer(feedback: 1.3 W/m2)", code: "unit-mismatch", says: "W/m2/K" },
+        Fails { program: "two_layer(feedback: -1.3 W/m2/K)", code: "out-of-range", says: "runs away" },
         Fails { program: "two_layer(heat_capacity: -7 W*yr/m2/K)", code: "out-of-range", says: "above zero" },
     ],
     citations: &[&GEOFFROY_2013A, &GEOFFROY_2013B],
@@ -64,7 +65,7 @@ static TWO_LAYER: Entry = Entry {
         };
         let mut out_of_range = 0;
         for member in 0..rows(&model) {
-            if let Err(error) = parameters(&model, member).validate() {
+            if let Err(error) = checked(&parameters(&model, member)) {
                 // One nominal model out of range is a mistake; a few members of a wide distribution are gaps.
                 if call.context.path() == Path::Nominal {
                     return Err(out_of_range_fault(&error).into());
@@ -72,9 +73,11 @@ static TWO_LAYER: Entry = Entry {
                 out_of_range += 1;
             }
         }
-        if out_of_range > 0 {
+        if let (Path::Block { first, count }, true) = (call.context.path(), out_of_range > 0) {
             call.context.note(format!(
-                "{out_of_range} members of the model are out of range; what follows from them is a gap"
+                "two_layer: of the members {} to {}, {out_of_range} have no stable model; what follows from them is a gap",
+                first + 1,
+                first + count as u64
             ));
         }
         Ok(Value::Model(model))
@@ -87,13 +90,20 @@ fn out_of_range_fault(error: &TwoLayerError) -> Fault {
         TwoLayerError::HeatCapacity(value) => ("heat_capacity", *value, "above zero"),
         TwoLayerError::DeepHeatCapacity(value) => ("deep_heat_capacity", *value, "above zero"),
         TwoLayerError::Exchange(value) => ("exchange", *value, "zero or above zero"),
-        TwoLayerError::Feedback(value) => ("feedback", *value, "a finite number"),
+        TwoLayerError::Feedback(value) => ("feedback", *value, "above zero, or the model runs away"),
         TwoLayerError::HeatUptakeEfficacy(value) => ("heat_uptake_efficacy", *value, "above zero"),
         TwoLayerError::StepLength { .. } | TwoLayerError::LengthMismatch { .. } => {
             return Fault::new("internal", format!("the model cannot be stepped: {error:?}"));
         }
     };
     Fault::new("out-of-range", format!("`{parameter}` is {value}, and must be {range}")).blame(parameter)
+}
+
+/// Whether a model is one that has an equilibrium: the science steps any feedback, but nothing can be attributed to a
+/// climate that runs away.
+fn checked(parameters: &TwoLayerParameters) -> Result<(), TwoLayerError> {
+    parameters.validate()?;
+    if parameters.feedback > 0.0 { Ok(()) } else { Err(TwoLayerError::Feedback(parameters.feedback)) }
 }
 
 fn rows(model: &Model) -> usize {
@@ -141,7 +151,7 @@ static RESPOND: Entry = Entry {
     gaps: "The response begins in equilibrium at the first value; after a gap inside, everything is a gap. Data from before the clock's start are used where there are any.",
     shows: &[Shows {
         program: "clock = 1850..1950 CE by 1 yr\nrespond(constant(3.45 W/m2), two_layer())",
-        gives: "101 steps, 1850 CE to 1950 CE: 0.21746 to 2.23645 degC",
+        gives: "101 steps, 1850 CE to 1950 CE: first 0.21746, last 2.23645 degC",
     }],
     fails: &[
         Fails {
@@ -247,6 +257,9 @@ pub(super) fn respond(
             let first = row.iter().position(|value| !value.is_nan()).unwrap_or(row.len());
             let (Some(row), Some(out)) = (row.get(first..), out.get_mut(first..)) else { continue };
             let parameters = parameters(model, member);
+            if checked(&parameters).is_err() {
+                continue;
+            }
             if regular {
                 let step = lengths.first().copied().unwrap_or(1.0);
                 if let Ok(propagator) = Propagator::new(&parameters, step) {

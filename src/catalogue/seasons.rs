@@ -26,7 +26,7 @@ static SEASON: Entry = Entry {
     gaps: "A season with a missing value is incomplete: it is left as a gap, and named in a note.",
     shows: &[Shows {
         program: "x = series([1, 2, 3, 4, 5, 6, 7, 8, 9, 10, 11, 12] degC, along: 1850..1850 CE by 1 month)\nx |> season(June..August)",
-        gives: "1 step, 1850.417 CE to 1850.417 CE: 7 to 7 degC",
+        gives: "1 step, 1850-06 to 1850-06: first 7, last 7 degC",
     }],
     fails: &[
         Fails {
@@ -63,7 +63,7 @@ static YEARLY: Entry = Entry {
     gaps: "A year with a missing value is incomplete: it is left as a gap, and named in a note.",
     shows: &[Shows {
         program: "x = series([1, 2, 3, 4] mm, along: 1850..1851 CE by 6 month)\nx |> yearly(from: July)",
-        gives: "1 step, 1850.5 CE to 1850.5 CE: 2.5 to 2.5 mm",
+        gives: "1 step, 1850.5 CE to 1850.5 CE: first 2.5, last 2.5 mm",
     }],
     fails: &[Fails {
         program: "x = series([1, 2] degC, along: 1850..1851 CE by 1 yr)\nx |> yearly(from: autumn)",

@@ -18,7 +18,7 @@ static CONSTANT: Entry = Entry {
     equation: Some(r"x(t) = x_0"),
     shows: &[Shows {
         program: "clock = 1850..1852 CE by 1 yr\nconstant(0.3 ± 0.1 W/m2)",
-        gives: "3 steps, 1850 CE to 1852 CE: 0.30 [0.13, 0.46] to 0.30 [0.13, 0.46] W/m2",
+        gives: "3 steps, 1850 CE to 1852 CE: first 0.30 [0.13, 0.46], last 0.30 [0.13, 0.46] W/m2",
     }],
     fails: &[Fails { program: "constant(0.3 W/m2)", code: "no-clock", says: "clock" }],
     search: &["flat", "uniform"],
@@ -74,7 +74,7 @@ static RAMP: Entry = Entry {
     equation: Some(r"x(t) = x_1\,\min\!\left(1, \max\!\left(0, \frac{t - t_0}{t_1 - t_0}\right)\right)"),
     shows: &[Shows {
         program: "clock = 1850..1859 CE by 1 yr\nramp(1852..1855 CE, 8 W/m2)",
-        gives: "10 steps, 1850 CE to 1859 CE: 0 to 8 W/m2",
+        gives: "10 steps, 1850 CE to 1859 CE: first 0, last 8 W/m2",
     }],
     fails: &[Fails {
         program: "clock = 1850..1852 CE by 1 yr\nramp(1851 CE, 4 W/m2)",
@@ -119,7 +119,7 @@ static PULSE: Entry = Entry {
     equation: Some(r"x(t) = x_1\,[t_0 \le t < t_1]"),
     shows: &[Shows {
         program: "clock = 1850..1852 CE by 1 yr\npulse(1851..1851 CE, -3 W/m2) |> within(1851..1852 CE)",
-        gives: "2 steps, 1851 CE to 1852 CE: -3 to 0 W/m2",
+        gives: "2 steps, 1851 CE to 1852 CE: first -3, last 0 W/m2",
     }],
     fails: &[Fails {
         program: "clock = 1850..1852 CE by 1 yr\npulse(1851 CE, 4 W/m2)",
@@ -154,7 +154,7 @@ static SINUSOID: Entry = Entry {
     equation: Some(r"x(t) = a \cos\frac{2\pi (t - t_0)}{P}"),
     shows: &[Shows {
         program: "clock = instants(1850..1855 CE by 1 yr)\nsinusoid(10 yr, 0.5 W/m2, crest: 1850 CE)",
-        gives: "6 instants, 1850 CE to 1855 CE: 0.5 to -0.5 W/m2",
+        gives: "6 instants, 1850 CE to 1855 CE: first 0.5, last -0.5 W/m2",
     }],
     fails: &[Fails {
         program: "clock = 1850..1852 CE by 1 yr\nsinusoid(0 yr, 4 W/m2, crest: 1851 CE)",

@@ -92,11 +92,11 @@ static ON: Entry = Entry {
     shows: &[
         Shows {
             program: "x = series([1, 2, 3, 4] ppm, along: 1850..1853 CE by 1 yr)\nx |> on(1850..1853 CE by 2 yr)",
-            gives: "2 steps, 1850 CE to 1852 CE: 1.5 to 3.5 ppm",
+            gives: "2 steps, 1850 CE to 1852 CE: first 1.5, last 3.5 ppm",
         },
         Shows {
             program: "x = series([1, 2, 4] ppm, at: [1850 CE, 1852 CE, 1854 CE])\nx |> on(1850..1854 CE by 1 yr, method: nearest)",
-            gives: "5 steps, 1850 CE to 1854 CE: 1 to 4 ppm",
+            gives: "5 steps, 1850 CE to 1854 CE: first 1, last 4 ppm",
         },
     ],
     fails: &[Fails {
@@ -144,7 +144,7 @@ static WITHIN: Entry = Entry {
     gaps: "A gap inside stays a gap.",
     shows: &[Shows {
         program: "x = series([1, 2, 3, 4] ppm, along: 1850..1853 CE by 1 yr)\nx |> within(1851..1852 CE)",
-        gives: "2 steps, 1851 CE to 1852 CE: 2 to 3 ppm",
+        gives: "2 steps, 1851 CE to 1852 CE: first 2, last 3 ppm",
     }],
     fails: &[Fails {
         program: "x = series([1, 2] ppm, along: 1850..1851 CE by 1 yr)\nx |> within(1900..1950 CE)",
@@ -200,11 +200,11 @@ static LAG: Entry = Entry {
     shows: &[
         Shows {
             program: "x = series([1, 2, 3] ppm, along: 1850..1852 CE by 1 yr)\nx |> lag(1 yr)",
-            gives: "3 steps, 1851 CE to 1853 CE: 1 to 3 ppm",
+            gives: "3 steps, 1851 CE to 1853 CE: first 1, last 3 ppm",
         },
         Shows {
             program: "clock = 1851..1852 CE by 1 yr\nx = series([1, 2, 3] ppm, along: 1850..1852 CE by 1 yr)\n(x + 0 ppm * x) |> lag(6 month)",
-            gives: "2 steps, 1851 CE to 1852 CE: 1.5 to 2.5 ppm",
+            gives: "2 steps, 1851 CE to 1852 CE: first 1.5, last 2.5 ppm",
         },
     ],
     fails: &[Fails {

@@ -36,7 +36,9 @@ pub fn line(shown: &Shown) -> String {
             format!("{} {word}: {}", table.rows.len(), columns.join(", "))
         }
         Shown::Text(text) => text.to_string(),
-        Shown::List(items) => format!("[{}]", items.iter().map(line).collect::<Vec<_>>().join(", ")),
+        Shown::List(items) => {
+            format!("[{}]", items.iter().map(|(_, item)| line(item)).collect::<Vec<_>>().join(", "))
+        }
     }
 }
 
@@ -52,10 +54,16 @@ pub fn text(shown: &Shown) -> String {
             let rows: String = components.iter().map(|(label, series)| row(label, series)).collect();
             rows + &row("total", total)
         }
-        Shown::List(items) => items.iter().map(|item| line(item) + "\n").collect(),
+        Shown::List(items) => items
+            .iter()
+            .map(|(label, item)| {
+                let line = line(item);
+                if label.is_empty() || **label == line { line + "\n" } else { format!("{label}: {line}\n") }
+            })
+            .collect(),
+        Shown::Series(series) => series_line(series) + "\n" + &extremes(series),
         Shown::Quantity { .. }
         | Shown::Instant { .. }
-        | Shown::Series(_)
         | Shown::Span(_)
         | Shown::Range(_)
         | Shown::Clock(_)
@@ -120,10 +128,10 @@ fn series_line(series: &ShownSeries) -> String {
     let (Some(first), Some(last)) = (known.first(), known.last()) else { return format!("{axis}: all gaps") };
     let at = |index: &usize| series.nominal.get(*index).copied().unwrap_or(f64::NAN);
     let mut words = match &series.spread {
-        None => format!("{axis}: {} to {}{unit}", plain(at(first)), plain(at(last))),
+        None => format!("{axis}: first {}, last {}{unit}", plain(at(first)), plain(at(last))),
         Some(spread) => {
             let ends = [first, last].map(|index| ranged(at(index), Some(spread), *index));
-            format!("{axis}: {} to {}{unit}", ends[0], ends[1])
+            format!("{axis}: first {}, last {}{unit}", ends[0], ends[1])
         }
     };
     let gaps = series.nominal.len() - known.len();
@@ -132,6 +140,23 @@ fn series_line(series: &ShownSeries) -> String {
         words += &format!("; {gaps} {}", if gaps == 1 { "gap" } else { "gaps" });
     }
     words
+}
+
+/// The lowest and the highest value and when they were, where there are more than a few.
+fn extremes(series: &ShownSeries) -> String {
+    let known = || series.nominal.iter().enumerate().filter(|(_, value)| !value.is_nan());
+    let lowest = known().min_by(|left, right| left.1.total_cmp(right.1));
+    let highest = known().max_by(|left, right| left.1.total_cmp(right.1));
+    match (lowest, highest) {
+        (Some((low, lowest)), Some((high, highest))) if known().count() > 3 && lowest < highest => format!(
+            "lowest {} ({}), highest {} ({})\n",
+            plain(*lowest),
+            series.axis.label(low),
+            plain(*highest),
+            series.axis.label(high)
+        ),
+        _ => String::new(),
+    }
 }
 
 fn attribution_line(attribution: &Attribution) -> String {
@@ -154,10 +179,11 @@ fn diagnostics(attribution: &Attribution) -> String {
     let statistics = &attribution.statistics;
     let times = span_words(&attribution.axis);
     format!(
-        "  n = {} ({times}), R2 {:.3}, Durbin–Watson {:.2}, residual autocorrelation {:.2}, condition number {:.1}, log-likelihood {:.2}, AIC {:.2}\n",
+        "  n = {} ({times}), R2 {:.3}, Durbin–Watson {:.2}{}, residual autocorrelation {:.2}, condition number {:.1}, log-likelihood {:.2}, AIC {:.2}\n",
         statistics.count,
         statistics.r_squared,
         statistics.durbin_watson,
+        if statistics.rho.is_some() { " (after whitening)" } else { "" },
         statistics.residual_autocorrelation,
         statistics.condition_number,
         statistics.log_likelihood,
@@ -184,6 +210,8 @@ const TAIL: usize = 5;
 
 /// A table as text: aligned on the decimal point, a long one cut with a count, notes beneath.
 pub fn table(content: &Table) -> String {
+    let merged = with_ranges(content);
+    let content = &merged;
     let rows = content.rows.len();
     let cut = rows > HEAD + TAIL + 1;
     let shown: Vec<&Vec<Cell>> = if cut {
@@ -229,6 +257,30 @@ pub fn table(content: &Table) -> String {
         out += &format!("  {note}\n");
     }
     out
+}
+
+/// The same table with `x`, `x_low` and `x_high` in one column: `0.81 [0.66, 0.96]`.
+fn with_ranges(content: &Table) -> Table {
+    let mut merged = content.clone();
+    let names: Vec<String> = content.columns.iter().map(|column| column.name.clone()).collect();
+    for (index, name) in names.iter().enumerate().rev() {
+        let low = names.get(index + 1).is_some_and(|low| *low == format!("{name}_low"));
+        let high = names.get(index + 2).is_some_and(|high| *high == format!("{name}_high"));
+        if !(low && high) {
+            continue;
+        }
+        merged.columns.drain(index + 1..index + 3);
+        for row in &mut merged.rows {
+            let ends: Vec<Cell> = row.drain(index + 1..index + 3).collect();
+            if let (Some(cell), [low, high]) = (row.get_mut(index), ends.as_slice())
+                && *cell != Cell::Empty
+            {
+                let text = |cell: &Cell| aligned(&[cell]).concat();
+                *cell = Cell::Text(format!("{} [{}, {}]", text(cell), text(low), text(high)).into());
+            }
+        }
+    }
+    merged
 }
 
 /// Numbers of one column with as many decimals as the column needs, words as they are.

@@ -105,7 +105,7 @@ fn a_row_of_another_length_is_named_by_its_line() {
     );
     let decimal = fault(b"year,value\n1850,0,3\n");
     assert!(decimal.starts_with("line 2: the row has 3 fields, the header has 2"), "{decimal}");
-    assert!(decimal.contains("decimal_comma: true"), "{decimal}");
+    assert!(decimal.contains("decimals: comma"), "{decimal}");
     let apart = fault(b"year,value,n\n1850,\"1\n1851\"\n1852,2,3\n");
     assert!(apart.starts_with("line 2") && apart.contains("quotation mark"), "{apart}");
 }

@@ -150,15 +150,14 @@ fn advice(cell: &str, decimal_comma: bool) -> Option<String> {
     }
     if decimal_comma && cell.contains('.') {
         return Some(
-            "with decimal_comma: true a number has no point; leave decimal_comma out if points are \
-             decimal marks"
+            "with `decimals: comma` a number has no point; leave it out if points are decimal marks"
                 .to_owned(),
         );
     }
     let with_point = cell.replacen(',', ".", 1);
     if !decimal_comma && cell.contains(',') && with_point.parse::<f64>().is_ok() {
         return Some(
-            "if commas are decimal marks, say decimal_comma: true; if they group thousands, take them out"
+            "if commas are decimal marks, say `decimals: comma`; if they group thousands, take them out"
                 .to_owned(),
         );
     }
@@ -232,7 +231,7 @@ fn sentinel_notes(name: &str, values: &[f64]) -> Vec<String> {
             let typographic = shown.replace('-', "−");
             format!(
                 "{name}: {count} {are} {typographic}, a customary missing marker, while the others \
-                 {others}: say missing: {shown} if {pronoun}"
+                 {others}: say missing: \"{shown}\" if {pronoun}"
             )
         })
         .collect()
@@ -288,7 +287,7 @@ mod tests {
             "{:?}",
             column.notes
         );
-        assert!(column.notes[0].ends_with("say missing: -999 if they are gaps"), "{:?}", column.notes);
+        assert!(column.notes[0].ends_with("say missing: \"-999\" if they are gaps"), "{:?}", column.notes);
         let large = numbers("year,value\n1,1e20\n2,0.5\n", &[], false)?;
         assert!(large.notes[0].contains("missing: 1e20 if it is a gap"), "{:?}", large.notes);
         Ok(())
@@ -308,7 +307,7 @@ mod tests {
             "line 5, column `value`: expected a number, found `n/a` (if `n/a` marks a missing value, say \
              missing: \"n/a\")"
         );
-        assert!(fault("year;value\n1;3,14\n").contains("decimal_comma: true"));
+        assert!(fault("year;value\n1;3,14\n").contains("decimals: comma"));
         assert!(fault("year;value\n1;1 234.5\n").contains("write 1234.5"));
         assert!(fault("year,value\n1,1.0D+03\n").contains("write the exponent with e: 1.0e+03"));
         assert!(fault("year,value\n1,280 ppm\n").contains("write only the number 280"));

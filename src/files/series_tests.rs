@@ -210,7 +210,7 @@ fn decimal_commas_reach_times_and_values() {
     assert!(series.is_ok_and(|series| {
         series.form == AxisForm::Steps && (series.values[0] - 0.25).abs() < 1e-12 && series.values[1].is_nan()
     }));
-    assert!(fault("year;value\n1850,5;0,25\n").contains("decimal_comma: true"));
+    assert!(fault("year;value\n1850,5;0,25\n").contains("decimals: comma"));
 }
 
 #[test]

@@ -115,8 +115,11 @@ fn shown(shown: &Shown) -> Map<String, Json> {
         Shown::List(items) => {
             let items = items
                 .iter()
-                .map(|item| {
-                    let mut keys = object(vec![("kind", json!(item.kind()))]);
+                .map(|(label, item)| {
+                    let mut keys = object(vec![("label", json!(&**label)), ("kind", json!(item.kind()))]);
+                    if label.is_empty() {
+                        keys.shift_remove("label");
+                    }
                     keys.append(&mut self::shown(item));
                     Json::Object(keys)
                 })

@@ -426,15 +426,23 @@ fn environment(evaluator: &Evaluator<'_>) -> Environment {
             evaluator.value(node, &Environment::empty(), Path::Nominal).map(|(value, _)| value)
         }))
     };
-    if let Some(Ok(Value::Quantity(members))) =
-        setting("members").map(|value| value.map(|value| Value::clone(&value)))
-    {
-        environment.members = (members.first().max(1.0) as u64).min(super::show::MEMBERS_LIMIT);
-    }
-    if let Some(Ok(Value::Quantity(seed))) =
-        setting("seed").map(|value| value.map(|value| Value::clone(&value)))
-    {
-        environment.seed = seed.first().max(0.0) as u64;
+    for name in ["members", "seed"] {
+        let problem = evaluator.definitions.values.get(name).and_then(|definition| match &definition.node {
+            Ok(node) => super::settings::check(evaluator, name, node),
+            Err(problem) => Some(problem.clone()),
+        });
+        if let Some(problem) = problem {
+            environment.members_problem = Some(Arc::new(problem));
+            continue;
+        }
+        if let Some(Ok(value)) = setting(name)
+            && let Value::Quantity(number) = value.as_ref()
+        {
+            match name {
+                "members" => environment.members = number.first() as u64,
+                _ => environment.seed = number.first() as u64,
+            }
+        }
     }
     match setting("clock") {
         None => {}

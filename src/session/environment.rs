@@ -20,12 +20,21 @@ pub(super) struct Environment {
     pub(super) seed: u64,
     /// Why there is no clock although one is defined.
     pub(super) clock_problem: Option<Arc<Diagnostic>>,
+    /// Why the number of members or the seed cannot be had although one is defined.
+    pub(super) members_problem: Option<Arc<Diagnostic>>,
 }
 
 impl Environment {
     /// The environment in which settings are evaluated.
     pub(super) fn empty() -> Self {
-        Self { clock: None, key: 0, members: DEFAULT_MEMBERS, seed: DEFAULT_SEED, clock_problem: None }
+        Self {
+            clock: None,
+            key: 0,
+            members: DEFAULT_MEMBERS,
+            seed: DEFAULT_SEED,
+            clock_problem: None,
+            members_problem: None,
+        }
     }
 
     /// The same, where a clock is defined that cannot be had: told apart from one without any clock.

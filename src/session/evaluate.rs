@@ -405,6 +405,22 @@ impl Evaluator<'_> {
         }
     }
 
+    /// What the items of a shown list are called: those of a `for` by what stands at each, others by their names.
+    pub(super) fn item_names(&self, node: &Arc<Node>, environment: &Environment) -> Vec<Arc<str>> {
+        let mut current = node.clone();
+        while let NodeKind::Reference(name) = &current.kind {
+            match self.definition(name, current.span, environment) {
+                Ok((target, _)) => current = target,
+                Err(_) => return Vec::new(),
+            }
+        }
+        match &current.kind {
+            NodeKind::ForEach { list, .. } => self.item_labels(list, environment),
+            NodeKind::List(items) => items.iter().map(|item| item.label.clone()).collect(),
+            _ => Vec::new(),
+        }
+    }
+
     fn reads_clock(&self, call: &CallNode, environment: &Environment) -> bool {
         match call.entry.reads_clock {
             ReadsClock::Always => true,

@@ -32,7 +32,8 @@ impl Evaluator<'_> {
         add_notes(&mut context.notes.borrow_mut(), &notes);
         let ready = ready(&context, &nominal)?;
         let members = self.members(node, environment, &ready)?;
-        let shown = shown(&ready, &members.iter().map(AsRef::as_ref).collect::<Vec<_>>())?;
+        let members: Vec<&Value> = members.iter().map(AsRef::as_ref).collect();
+        let shown = shown(&ready, &members, &self.item_names(node, environment))?;
         Ok((shown, Arc::new(context.notes.into_inner())))
     }
 
@@ -59,6 +60,9 @@ impl Evaluator<'_> {
     ) -> Result<Vec<Arc<Value>>, Stop> {
         if !self.is_uncertain(node) {
             return Ok(Vec::new());
+        }
+        if let Some(problem) = &environment.members_problem {
+            return Err(Stop::Placed(Box::new(crate::base::Diagnostic::clone(problem))));
         }
         let bytes = nominal.bytes() as f64 * environment.members as f64;
         if bytes > BYTES_LIMIT {
@@ -118,7 +122,7 @@ fn ready(context: &dyn Context, value: &Value) -> Result<Value, Stop> {
     }
 }
 
-fn shown(nominal: &Value, members: &[&Value]) -> Result<Shown, Stop> {
+fn shown(nominal: &Value, members: &[&Value], names: &[Arc<str>]) -> Result<Shown, Stop> {
     Ok(match nominal {
         Value::Quantity(quantity) => {
             let blocks = blocks(members, &|value| match value {
@@ -184,7 +188,8 @@ fn shown(nominal: &Value, members: &[&Value]) -> Result<Shown, Stop> {
                         _ => None,
                     })
                     .collect();
-                shown_items.push(shown(item, &inner)?);
+                let name = names.get(index).cloned().unwrap_or_else(|| Arc::from(""));
+                shown_items.push((name, shown(item, &inner, &[])?));
             }
             Shown::List(shown_items)
         }

@@ -33,6 +33,8 @@ pub struct Attribution {
     pub windows: Option<(Span, Span)>,
     /// The observed change between the windows.
     pub observed_change: Option<f64>,
+    /// What all drivers together explain of it, with its standard error.
+    pub explained: Option<(f64, f64)>,
 }
 
 /// One regressor's estimate.
@@ -119,21 +121,16 @@ impl Attribution {
             attribution.method, attribution.noise
         )];
         if let (Some((later, earlier)), Some(change)) = (&attribution.windows, attribution.observed_change) {
-            let explained: f64 = attribution
-                .drivers
-                .iter()
-                .filter_map(|driver| driver.contribution)
-                .map(|(value, _)| value)
-                .sum();
+            let (explained, error) = attribution.explained.unwrap_or((f64::NAN, f64::NAN));
+            let reach = attribution.t_quantile * error;
             notes.push(format!(
-                "contribution: to the change from {earlier} to {later}; observed {change:.3} {unit}, explained {explained:.3}, unexplained {:.3}",
+                "contribution: to the change from {earlier} to {later}; observed {change:.3} {unit}, explained {explained:.3} [{:.3}, {:.3}], unexplained {:.3}",
+                explained - reach,
+                explained + reach,
                 change - explained,
                 unit = attribution.unit
             ));
-        } else {
-            notes.push("contributions need two windows: `change:` and `from:`".to_owned());
         }
-        notes.push(CAUTION.to_owned());
         Table { title: "attribution".to_owned(), columns, rows, notes }
     }
 

@@ -128,25 +128,38 @@ impl Axis {
         first..last.max(first)
     }
 
+    /// What a person calls value number `index`: `1991 CE`, `1958-03`, `21 ka`.
+    pub fn label(&self, index: usize) -> String {
+        let Some(start) = self.starts.get(index).copied() else { return String::new() };
+        let step = self.median_step();
+        if self.era == Era::Ce && self.kind == AxisKind::Steps && step < 0.9 && start >= 1.0 {
+            let year = (start + 1e-6).floor();
+            let months = (start - year) * 12.0;
+            if step > 0.07 && (months - months.round()).abs() < 0.06 {
+                return format!("{year}-{:02}", months.round().max(0.0) + 1.0);
+            }
+            if step < 0.02 {
+                return super::era::date_label(start);
+            }
+        }
+        self.era.format(tidy(start))
+    }
+
     /// A few words for messages: `271 steps, 1750 CE to 2020 CE`.
     pub fn describe(&self) -> String {
         match self.bounds() {
             None => "an empty axis".to_owned(),
             Some((start, end)) => {
-                let last = if self.kind == AxisKind::Steps && !self.era.is_age() {
-                    // A step's label is the calendar year in which it begins.
-                    self.starts.last().copied().unwrap_or(end)
-                } else {
-                    end
-                };
                 let word = self.kind.word();
-                format!(
-                    "{} {}, {} to {}",
-                    self.len(),
-                    if self.len() == 1 { word.trim_end_matches('s') } else { word },
-                    self.era.format(tidy(start)),
-                    self.era.format(tidy(last))
-                )
+                let word = if self.len() == 1 { word.trim_end_matches('s') } else { word };
+                // The last step of a calendar is called by the year or month in which it begins; the span of steps
+                // of ages is told by its ends.
+                let (first, last) = if self.kind == AxisKind::Steps && self.era.is_age() {
+                    (self.era.format(tidy(start)), self.era.format(tidy(end)))
+                } else {
+                    (self.label(0), self.label(self.len().saturating_sub(1)))
+                };
+                format!("{} {word}, {first} to {last}", self.len())
             }
         }
     }

@@ -195,6 +195,20 @@ pub fn instant_of_date(year: i64, month: u32, day: u32) -> Result<Instant, Fault
     Ok(Instant::at(Block::single(start), Era::Ce, end - start))
 }
 
+/// The date of a decimal year, to the nearest day.
+pub(super) fn date_label(year: f64) -> String {
+    let whole = (year + 1e-6).floor();
+    let length = if is_leap(whole as i64) { 366.0 } else { 365.0 };
+    let mut day = ((year - whole) * length).round().max(0.0) as u32;
+    for (month, days) in month_lengths(whole as i64).into_iter().enumerate() {
+        if day < days {
+            return format!("{whole}-{:02}-{:02}", month + 1, day + 1);
+        }
+        day -= days;
+    }
+    format!("{}-01-01", whole + 1.0)
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

@@ -53,8 +53,8 @@ pub enum Shown {
     Table(Arc<Table>),
     /// Words.
     Text(Arc<str>),
-    /// A list.
-    List(Vec<Shown>),
+    /// A list: what its items are called (nothing where they have no name), and the items.
+    List(Vec<(Arc<str>, Shown)>),
 }
 
 /// A series as it is shown.
