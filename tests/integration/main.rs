@@ -12,5 +12,6 @@ mod catalogue_examples;
 mod certified_science;
 mod grammar;
 mod layers;
+mod readme;
 mod real_record;
 mod suite;

@@ -166,7 +166,10 @@ fn models_and_tables_have_columns_and_rows() {
         assert_eq!(keys(&output["table"])[..2], ["columns", "rows"]);
         let columns = output["table"]["columns"].as_array().unwrap();
         for column in columns {
-            assert_eq!(keys(column), ["name", "unit"]);
+            assert!(
+                keys(column) == ["name", "unit"] || keys(column) == ["name"],
+                "words have no unit: {column}"
+            );
         }
         for row in output["table"]["rows"].as_array().unwrap() {
             assert_eq!(row.as_array().unwrap().len(), columns.len(), "{row}");
