@@ -1,6 +1,6 @@
 //! The command line.
 
-use std::io::{IsTerminal, Write};
+use std::io::{IsTerminal, Read, Write};
 use std::path::PathBuf;
 use std::process::ExitCode;
 use std::sync::Arc;
@@ -53,6 +53,9 @@ enum Format {
     /// One JSON object.
     Json,
 }
+
+/// The longest script that is read, in bytes: a device as the script must not fill the memory.
+const SCRIPT_LIMIT: u64 = 64 << 20;
 
 /// The program ran and every result is there.
 const SUCCESS: u8 = 0;
@@ -115,13 +118,20 @@ fn run(
         complain("this version runs scripts (.rhy); copy the cells of the notebook into one\n");
         return WRONG_CALL;
     }
-    let bytes = match std::fs::read(file) {
-        Ok(bytes) => bytes,
-        Err(error) => {
-            complain(&format!("{} cannot be read: {error}\n", file.display()));
-            return WRONG_CALL;
-        }
-    };
+    let mut bytes = Vec::new();
+    let read = std::fs::File::open(file).and_then(|open| open.take(SCRIPT_LIMIT + 1).read_to_end(&mut bytes));
+    if let Err(error) = read {
+        complain(&format!("{} cannot be read: {error}\n", file.display()));
+        return WRONG_CALL;
+    }
+    if bytes.len() as u64 > SCRIPT_LIMIT {
+        complain(&format!(
+            "{} is longer than any script: more than {} MiB\n",
+            file.display(),
+            SCRIPT_LIMIT >> 20
+        ));
+        return WRONG_CALL;
+    }
     let text = match String::from_utf8(bytes) {
         Ok(text) => text,
         Err(error) => {

@@ -23,14 +23,26 @@ pub fn diagnostic(
     let title = Level::ERROR.primary_title(&*diagnostic.message).id(diagnostic.code);
     let mut group = Group::with_title(title);
     for source in &texts {
-        let annotations =
-            marks.iter().filter(|(_, mark)| mark.span.source == source.id).map(|(kind, mark)| {
-                let end = mark.span.end.min(source.text.len());
-                let range = mark.span.start.min(end)..end;
-                let annotation = kind.span(range);
-                if mark.label.is_empty() { annotation } else { annotation.label(&*mark.label) }
-            });
-        group = group.element(Snippet::source(&*source.text).path(&*source.name).annotations(annotations));
+        let here = || marks.iter().filter(|(_, mark)| mark.span.source == source.id);
+        // Only the lines about the marks: a script of many lines may have many mistakes.
+        let length = source.text.len();
+        let first = here().map(|(_, mark)| mark.span.start).min().unwrap_or(0).min(length);
+        let last = here().map(|(_, mark)| mark.span.end).max().unwrap_or(0).min(length);
+        let before = source.text.get(..first).unwrap_or("");
+        let begin = before.rfind('\n').map_or(0, |line| line + 1);
+        let rest = source.text.get(last..).and_then(|rest| rest.find('\n'));
+        let end = rest.map_or(length, |line| last + line);
+        let window = source.text.get(begin..end).unwrap_or("");
+        let first_line = before.matches('\n').count() + 1;
+        let annotations = here().map(|(kind, mark)| {
+            let end = mark.span.end.clamp(begin, end) - begin;
+            let range = mark.span.start.saturating_sub(begin).min(end)..end;
+            let annotation = kind.span(range);
+            if mark.label.is_empty() { annotation } else { annotation.label(&*mark.label) }
+        });
+        group = group.element(
+            Snippet::source(window).line_start(first_line).path(&*source.name).annotations(annotations),
+        );
     }
     for detail in &diagnostic.details {
         group = group.element(Level::NOTE.message(&**detail));

@@ -3,7 +3,7 @@ use std::path::PathBuf;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicU64, Ordering};
 
-use super::definitions::{Definitions, Function};
+use super::definitions::{Definitions, Function, SESSION_LIMIT};
 use super::environment::Environment;
 use super::evaluate::{Caches, Evaluator};
 use super::fingerprint::{Fingerprint, Parts};
@@ -47,6 +47,8 @@ struct Display {
     text: String,
     expression: Expression,
     node: Result<Arc<Node>, Diagnostic>,
+    /// How many nodes were made for it, also in vain.
+    cost: usize,
     fingerprint: Fingerprint,
 }
 
@@ -192,6 +194,7 @@ impl Session {
     }
 
     fn run_here(&mut self, cell: &str, text: &str) -> CellReply {
+        let text = text.strip_prefix('\u{feff}').unwrap_or(text);
         let source = SourceId(self.next_source);
         self.next_source += 1;
         let name = cell.to_owned();
@@ -220,8 +223,11 @@ impl Session {
         };
         let changed = changed(&before, &self.bindings());
         self.displays.retain(|display| display.cell != cell);
+        let mut used: usize = self.displays.iter().map(|display| display.cost).sum();
         for (expression, span_text) in shown {
-            let node = resolve(&self.definitions, None, &expression, SIZE_LIMIT);
+            let (node, cost) =
+                resolve(&self.definitions, None, &expression, SESSION_LIMIT.saturating_sub(used));
+            used += cost;
             let fingerprint = Parts::new("not evaluated").finish();
             let id = self.next_display;
             self.next_display += 1;
@@ -231,6 +237,7 @@ impl Session {
                 text: span_text,
                 expression,
                 node,
+                cost,
                 fingerprint,
             });
         }
@@ -294,7 +301,7 @@ impl Session {
                         .sources
                         .get(&span.source)
                         .and_then(|source| source.text.get(span.start..span.end));
-                    shown.push((expression, text.unwrap_or("").to_owned()));
+                    shown.push((expression, text.unwrap_or("").replace("\r\n", "\n")));
                 }
                 StatementKind::Function { name, name_span, parameters, body } => {
                     let parameters = parameters.into_iter().map(|(name, _)| name).collect();
@@ -318,7 +325,8 @@ impl Session {
         if self.function_texts() != functions_before {
             self.definitions.resolve_again();
             for display in &mut self.displays {
-                display.node = resolve(&self.definitions, None, &display.expression, SIZE_LIMIT);
+                (display.node, display.cost) =
+                    resolve(&self.definitions, None, &display.expression, SIZE_LIMIT);
             }
         }
         Ok(shown)

@@ -8,13 +8,15 @@ use crate::catalogue;
 use crate::language::Expression;
 
 /// The most nodes that all definitions may have together.
-const SESSION_LIMIT: usize = 600_000;
+pub(super) const SESSION_LIMIT: usize = 600_000;
 
 /// The definitions in force, by name.
 #[derive(Default)]
 pub(super) struct Definitions {
     pub(super) values: BTreeMap<Arc<str>, Definition>,
     pub(super) functions: BTreeMap<String, Arc<Function>>,
+    /// How many nodes were made for the definitions in force, also in vain.
+    expanded: usize,
 }
 
 /// A name and the expression it is bound to.
@@ -27,6 +29,8 @@ pub(super) struct Definition {
     pub(super) deleted: bool,
     pub(super) name_span: Span,
     pub(super) expression: Expression,
+    /// How many nodes were made for it, also in vain.
+    cost: usize,
     /// The expression with its functions put in, or why that cannot be.
     pub(super) node: Result<Arc<Node>, Diagnostic>,
 }
@@ -99,10 +103,13 @@ impl Definitions {
                 from = Some(old.cell.clone());
             }
         }
-        self.values.remove(name);
-        let node = resolve(self, Some(name), &expression, self.room());
+        if let Some(old) = self.values.remove(name) {
+            self.expanded -= old.cost;
+        }
+        let (node, cost) = resolve(self, Some(name), &expression, self.room());
+        self.expanded += cost;
         let definition =
-            Definition { cell: cell.clone(), rivals, deleted: false, name_span, expression, node };
+            Definition { cell: cell.clone(), rivals, deleted: false, name_span, expression, cost, node };
         self.values.insert(Arc::from(name), definition);
         from
     }
@@ -136,7 +143,10 @@ impl Definitions {
         let names: Vec<Arc<str>> = self.values.keys().cloned().collect();
         for name in names {
             let Some(mut definition) = self.values.remove(&name) else { continue };
-            definition.node = resolve(&*self, Some(&name), &definition.expression, self.room());
+            self.expanded -= definition.cost;
+            (definition.node, definition.cost) =
+                resolve(&*self, Some(&name), &definition.expression, self.room());
+            self.expanded += definition.cost;
             self.values.insert(name, definition);
         }
     }
@@ -156,7 +166,9 @@ impl Definitions {
             .map(|(name, _)| name.clone())
             .collect();
         for name in &gone {
-            self.values.remove(name);
+            if let Some(old) = self.values.remove(name) {
+                self.expanded -= old.cost;
+            }
         }
         for definition in self.values.values_mut() {
             definition.rivals.remove(cell);
@@ -167,9 +179,7 @@ impl Definitions {
 
     /// How many nodes a further definition may have.
     fn room(&self) -> usize {
-        let sizes =
-            self.values.values().map(|definition| definition.node.as_ref().map_or(0, |node| node.size));
-        SESSION_LIMIT.saturating_sub(sizes.sum())
+        SESSION_LIMIT.saturating_sub(self.expanded)
     }
 
     /// The texts that spans of definitions point into.

@@ -9,6 +9,9 @@ use crate::base::{Diagnostic, Fault, Mark};
 /// The most levels that a chain of definitions may have in all: evaluation recurses over them.
 const CHAIN_LIMIT: usize = 20_000;
 
+/// At most so many names of a circle are told.
+const TOLD: usize = 8;
+
 pub(super) struct Graph {
     /// Every name after those that it refers to.
     pub(super) order: Vec<Arc<str>>,
@@ -85,14 +88,24 @@ impl Graph {
     fn report_circle(&mut self, circle: &[Arc<str>], definitions: &Definitions) {
         for (index, name) in circle.iter().enumerate() {
             let Some(definition) = definitions.values.get(name) else { continue };
+            if index >= TOLD {
+                // A long circle is told at a few of its names; the others point there.
+                if let Some(told) = circle.first().and_then(|first| self.problems.get(first)).cloned() {
+                    self.problems.entry(name.clone()).or_insert(told);
+                }
+                continue;
+            }
             let mut around: Vec<&str> =
-                circle.iter().cycle().skip(index).take(circle.len()).map(|name| &**name).collect();
+                circle.iter().cycle().skip(index).take(circle.len().min(TOLD)).map(|name| &**name).collect();
+            if circle.len() > TOLD {
+                around.push("…");
+            }
             around.push(name);
             let fault =
                 Fault::new("circle", format!("`{name}` is defined by itself: {}", around.join(" → ")))
                     .help("break the circle: a name means its definition, not an earlier value");
             let mut diagnostic = fault.at(definition.name_span);
-            for other in circle.iter().filter(|other| *other != name) {
+            for other in circle.iter().take(TOLD).filter(|other| *other != name) {
                 if let Some(definition) = definitions.values.get(other) {
                     diagnostic
                         .secondary
@@ -105,6 +118,7 @@ impl Graph {
 
     fn measure_chains(&mut self, references: &BTreeMap<Arc<str>, Vec<Arc<str>>>, definitions: &Definitions) {
         let mut reach: BTreeMap<Arc<str>, usize> = BTreeMap::new();
+        let mut passed: Option<Diagnostic> = None;
         for name in &self.order {
             let Some(definition) = definitions.values.get(name) else { continue };
             let below =
@@ -112,11 +126,14 @@ impl Graph {
             let own = definition.node.as_ref().map_or(0, |node| node.depth);
             let whole = below.unwrap_or(0) + own;
             if whole > CHAIN_LIMIT {
-                let fault = Fault::new(
-                    "nesting",
-                    format!("`{name}` hangs on a chain of definitions with more than {CHAIN_LIMIT} levels"),
-                );
-                self.problems.entry(name.clone()).or_insert_with(|| fault.at(definition.name_span));
+                // Told once, where the limit is passed first.
+                let problem = passed.get_or_insert_with(|| {
+                    let message = format!(
+                        "`{name}` hangs on a chain of definitions with more than {CHAIN_LIMIT} levels"
+                    );
+                    Fault::new("nesting", message).at(definition.name_span)
+                });
+                self.problems.entry(name.clone()).or_insert_with(|| problem.clone());
             }
             reach.insert(name.clone(), whole);
         }

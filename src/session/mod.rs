@@ -1,6 +1,6 @@
 //! Definitions in force, their evaluation, and what of the shown results has moved.
 //!
-//! A cell goes through `resolve` (syntax to [`node::Node`]s, random variables named), `graph` (circles),
+//! A cell goes through `resolve` (syntax to nodes, random variables named), `graph` (circles),
 //! `evaluate` (shape, fingerprint, value), `memo` (values remembered by fingerprint) and `inputs` (files).
 
 #![allow(

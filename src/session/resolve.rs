@@ -43,20 +43,23 @@ pub(super) struct Resolver<'a> {
 }
 
 /// Resolve the expression of a definition called `name`, or of a bare expression by its canonical text, into at most
-/// `room` nodes.
+/// `room` nodes; returns how many were made, too.
 pub(super) fn resolve(
     functions: &dyn Functions,
     name: Option<&str>,
     expression: &Expression,
     room: usize,
-) -> Result<Arc<Node>, Diagnostic> {
+) -> (Result<Arc<Node>, Diagnostic>, usize) {
     let mut place = Sha256::new();
     match name {
         Some(name) => place.update(format!("definition\0{name}\0")),
         None => place.update(format!("shown\0{}\0", canonical(expression))),
     }
     let mut scope = Scope { place, random: 0, calls: 0, locals: Vec::new(), functions: Vec::new() };
-    Resolver { functions, budget: room.min(SIZE_LIMIT), loops: 0 }.expression(expression, &mut scope)
+    let budget = room.min(SIZE_LIMIT);
+    let mut resolver = Resolver { functions, budget, loops: 0 };
+    let node = resolver.expression(expression, &mut scope);
+    (node, budget - resolver.budget)
 }
 
 impl Resolver<'_> {

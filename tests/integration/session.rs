@@ -54,7 +54,7 @@ fn nominal(shown: &Shown) -> Vec<f64> {
         Shown::Quantity { nominal, .. } | Shown::Instant { nominal, .. } => vec![*nominal],
         Shown::Series(series) => series.nominal.clone(),
         Shown::Bundle { total, .. } => total.nominal.clone(),
-        Shown::List(items) => items.iter().flat_map(nominal).collect(),
+        Shown::List(items) => items.iter().flat_map(|(_, item)| nominal(item)).collect(),
         other => panic!("no numbers in {other:?}"),
     }
 }

@@ -95,7 +95,7 @@ fn the_items_of_a_loop_share_their_draws() {
     let pairs: Vec<[[f64; 3]; 2]> = shown
         .iter()
         .map(|shown| match shown {
-            Shown::List(items) => [quantiles(&items[0]), quantiles(&items[1])],
+            Shown::List(items) => [quantiles(&items[0].1), quantiles(&items[1].1)],
             other => panic!("{other:?}"),
         })
         .collect();
