@@ -386,8 +386,7 @@ fn row_length_fault(table: &DelimitedTable, rows: &RowReader<'_>, line: usize, d
         fault.help("a quotation mark is opened in this line and not closed in it")
     } else if delimiter == b',' && found > expected {
         fault.help(
-            "if commas are decimal marks, separate the columns by `;` or tabs and say decimal_comma: \
-             true; text that holds a comma goes into double quotes",
+            "if commas are decimal marks, separate the columns by `;` or tabs and say `decimals: comma`; text that holds a comma goes into double quotes",
         )
     } else if found > expected {
         fault.help("text that holds the delimiter goes into double quotes")

@@ -289,7 +289,7 @@ mod tests {
         );
         assert!(column.notes[0].ends_with("say missing: \"-999\" if they are gaps"), "{:?}", column.notes);
         let large = numbers("year,value\n1,1e20\n2,0.5\n", &[], false)?;
-        assert!(large.notes[0].contains("missing: 1e20 if it is a gap"), "{:?}", large.notes);
+        assert!(large.notes[0].contains("missing: \"1e20\" if it is a gap"), "{:?}", large.notes);
         Ok(())
     }
 
