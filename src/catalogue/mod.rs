@@ -58,9 +58,17 @@ pub fn find(name: &str) -> Option<&'static Entry> {
 
 /// The name among `names` that `word` may have meant.
 pub fn nearest<'a>(word: &str, names: impl Iterator<Item = &'a str>) -> Option<&'a str> {
-    let reach = (word.chars().count() / 2).clamp(1, 2);
+    let length = word.chars().count();
+    // Between short names everything is near: `x` is not a slip of `y`.
+    let reach = match length {
+        0..=2 => 0,
+        3 => 1,
+        _ => 2,
+    };
+    let word = word.to_lowercase();
     names
-        .map(|name| (strsim::osa_distance(&word.to_lowercase(), &name.to_lowercase()), name))
+        .filter(|name| name.chars().count().abs_diff(length) <= reach)
+        .map(|name| (strsim::osa_distance(&word, &name.to_lowercase()), name))
         .filter(|(distance, _)| *distance <= reach)
         .min_by_key(|(distance, _)| *distance)
         .map(|(_, name)| name)

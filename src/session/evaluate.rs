@@ -24,6 +24,9 @@ use crate::value::{Clock, Instant, Quantity, Shape, Spread, TimeSpan, Unit, Valu
 /// A value with the notes made on the way to it.
 pub(super) type Evaluated = (Arc<Value>, Notes);
 
+/// For so many unknown names a near one is looked for.
+const SUGGESTIONS_LIMIT: usize = 100;
+
 /// The most clocks that the arguments of one execution may be evaluated under.
 const CLOCKS_LIMIT: usize = 2_000;
 
@@ -52,6 +55,8 @@ pub(super) struct Caches {
     uncertain: Mutex<HashMap<usize, bool>>,
     items: Mutex<HashMap<(usize, usize), Arc<Node>>>,
     expanded: AtomicUsize,
+    /// How many unknown names were compared with the known ones.
+    searched: AtomicUsize,
     /// The clocks that arguments were evaluated under.
     clocks: Mutex<HashSet<u64>>,
     /// The settings where nobody sets them.
@@ -119,7 +124,10 @@ impl Evaluator<'_> {
                 .help(format!("a call has brackets: `{name}(…)`"));
         }
         let names = self.definitions.values.keys().map(|name| &**name);
-        match nearest(name, names) {
+        // Many unknown names among many known ones would take long, and nobody reads so many suggestions.
+        let searched = self.caches.searched.fetch_add(1, Ordering::Relaxed);
+        let near = if searched < SUGGESTIONS_LIMIT { nearest(name, names) } else { None };
+        match near {
             Some(near) => fault.help(format!("did you mean `{near}`?")),
             None => fault.help(format!("define it in this cell or another: `{name} = …`")),
         }

@@ -10,8 +10,10 @@
 
 mod catalogue_examples;
 mod certified_science;
+mod command_line;
 mod grammar;
 mod layers;
 mod readme;
 mod real_record;
+mod session;
 mod suite;

@@ -42,9 +42,9 @@ fn a_thing_minus_itself_is_exactly_zero_and_over_itself_exactly_one() {
         let clean = |shown: &Shown| -> Vec<f64> {
             nominal(shown).into_iter().chain(spread(shown).into_iter().flatten().flatten()).collect()
         };
-        assert!(clean(&shown[0]).iter().any(|value| *value == 0.0), "{x}");
+        assert!(clean(&shown[0]).contains(&0.0), "{x}");
         assert!(clean(&shown[0]).iter().all(|value| *value == 0.0 || gaps(value)), "{x}: {:?}", shown[0]);
-        assert!(clean(&shown[1]).iter().any(|value| *value == 1.0), "{x}");
+        assert!(clean(&shown[1]).contains(&1.0), "{x}");
         assert!(clean(&shown[1]).iter().all(|value| *value == 1.0 || gaps(value)), "{x}: {:?}", shown[1]);
     }
 }
