@@ -1,4 +1,7 @@
 //! How much of a record each driver explains, by regression.
+//!
+//! Longer than most files: the entry, what it refuses beforehand, and the steps from drivers to contributions are read
+//! together.
 
 use std::sync::Arc;
 

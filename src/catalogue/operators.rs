@@ -1,5 +1,5 @@
 //! The signs between expressions. They are entries like any other function, so that `explain` and the tests of
-//! every example know them too.
+//! every example know them too. One file, though a long one: the operators share their arithmetic.
 
 use std::sync::Arc;
 

@@ -1,3 +1,6 @@
+//! The session's face: what running a cell installs, shows and moves. Longer than most files, because the steps of one
+//! execution stand in it in their order.
+
 use std::collections::{BTreeMap, BTreeSet};
 use std::path::PathBuf;
 use std::sync::Arc;

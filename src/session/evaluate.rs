@@ -1,25 +1,23 @@
 //! Shape, fingerprint and value of nodes in an environment; everything a body may ask for.
 
-use std::cell::RefCell;
 use std::collections::{HashMap, HashSet};
 use std::sync::atomic::{AtomicU64, AtomicUsize, Ordering};
 use std::sync::{Arc, Mutex, PoisonError};
 
+use super::context::NodeContext;
 use super::definitions::Definitions;
 use super::environment::{DEFAULT_MEMBERS, DEFAULT_SEED, Environment};
-use super::fingerprint::{Fingerprint, Parts};
+use super::fingerprint::Fingerprint;
 use super::graph::Graph;
 use super::inputs::{Inputs, UNREADABLE};
 use super::memo::{Memo, Notes};
 use super::node::{CallNode, Node, NodeKind};
+use super::prints::Names;
 use super::resolve::{SETTINGS, SIZE_LIMIT};
 use crate::base::{Blame, Cancellation, Diagnostic, Fault, INTERRUPTED, Span};
-use crate::catalogue::{
-    self, Body, Call, Context, Given, InputFile, Path, ReadsClock, Stop, What, check_arguments, nearest,
-};
+use crate::catalogue::{self, Body, Call, Given, Path, ReadsClock, Stop, What, check_arguments, nearest};
 use crate::language::{Parameter, Presence};
-use crate::science::draws;
-use crate::value::{Clock, Instant, Quantity, Shape, Spread, TimeSpan, Unit, Value};
+use crate::value::{Quantity, Shape, Unit, Value};
 
 /// A value with the notes made on the way to it.
 pub(super) type Evaluated = (Arc<Value>, Notes);
@@ -28,7 +26,7 @@ pub(super) type Evaluated = (Arc<Value>, Notes);
 const SUGGESTIONS_LIMIT: usize = 100;
 
 /// The most clocks that the arguments of one execution may be evaluated under.
-const CLOCKS_LIMIT: usize = 2_000;
+pub(super) const CLOCKS_LIMIT: usize = 2_000;
 
 /// The most bytes that a value may take for one block of members.
 const BLOCK_BYTES_LIMIT: f64 = 1e9;
@@ -50,42 +48,32 @@ pub(super) struct Evaluator<'s> {
 /// What is remembered for the length of one execution, by the place of a node in memory: nodes outlive it.
 #[derive(Default)]
 pub(super) struct Caches {
-    shapes: Mutex<HashMap<(usize, u64), Result<Shape, Stop>>>,
-    prints: Mutex<HashMap<(usize, u64, Names), Fingerprint>>,
-    uncertain: Mutex<HashMap<usize, bool>>,
-    items: Mutex<HashMap<(usize, usize), Arc<Node>>>,
-    expanded: AtomicUsize,
+    pub(super) shapes: Mutex<HashMap<(usize, u64), Result<Shape, Stop>>>,
+    pub(super) prints: Mutex<HashMap<(usize, u64, Names), Fingerprint>>,
+    pub(super) uncertain: Mutex<HashMap<usize, bool>>,
+    pub(super) items: Mutex<HashMap<(usize, usize), Arc<Node>>>,
+    pub(super) expanded: AtomicUsize,
     /// How many unknown names were compared with the known ones.
-    searched: AtomicUsize,
+    pub(super) searched: AtomicUsize,
     /// The clocks that arguments were evaluated under.
-    clocks: Mutex<HashSet<u64>>,
+    pub(super) clocks: Mutex<HashSet<u64>>,
     /// The settings where nobody sets them.
-    defaults: Mutex<HashMap<&'static str, Arc<Node>>>,
+    pub(super) defaults: Mutex<HashMap<&'static str, Arc<Node>>>,
     /// Nodes made on the way: they must outlive what is remembered by their place.
-    kept: Mutex<Vec<Arc<Node>>>,
+    pub(super) kept: Mutex<Vec<Arc<Node>>>,
 }
 
-fn lock<T>(mutex: &Mutex<T>) -> std::sync::MutexGuard<'_, T> {
+pub(super) fn lock<T>(mutex: &Mutex<T>) -> std::sync::MutexGuard<'_, T> {
     mutex.lock().unwrap_or_else(PoisonError::into_inner)
 }
 
-fn address(node: &Arc<Node>) -> usize {
+pub(super) fn address(node: &Arc<Node>) -> usize {
     Arc::as_ptr(node) as usize
-}
-
-/// Whether a hash tells apart what things are called.
-///
-/// The fingerprint of a result does not: it is the same whatever its parts are called. What is remembered does,
-/// since notes and faults name things as the user does.
-#[derive(Clone, Copy, PartialEq, Eq, Hash)]
-enum Names {
-    Ignored,
-    Counted,
 }
 
 impl Evaluator<'_> {
     /// The node that a name is bound to, and the environment it is evaluated in.
-    fn definition(
+    pub(super) fn definition(
         &self,
         name: &Arc<str>,
         span: Span,
@@ -206,7 +194,7 @@ impl Evaluator<'_> {
     }
 
     /// The body of a `for` with each item put in.
-    fn items(&self, node: &Arc<Node>, environment: &Environment) -> Result<Vec<Arc<Node>>, Stop> {
+    pub(super) fn items(&self, node: &Arc<Node>, environment: &Environment) -> Result<Vec<Arc<Node>>, Stop> {
         let NodeKind::ForEach { body, variable, list } = &node.kind else { return Ok(Vec::new()) };
         let shape = self.shape(list, environment)?;
         let Shape::List(shapes) = &shape else {
@@ -246,173 +234,6 @@ impl Evaluator<'_> {
         Ok(made.collect())
     }
 
-    /// The fingerprint of a node in an environment.
-    pub(super) fn fingerprint(&self, node: &Arc<Node>, environment: &Environment) -> Fingerprint {
-        self.print(node, environment, Names::Ignored)
-    }
-
-    fn print(&self, node: &Arc<Node>, environment: &Environment, names: Names) -> Fingerprint {
-        let key = (address(node), environment.key, names);
-        if let Some(known) = lock(&self.caches.prints).get(&key) {
-            return *known;
-        }
-        let print = self.find_print(node, environment, names);
-        lock(&self.caches.prints).insert(key, print);
-        print
-    }
-
-    fn find_print(&self, node: &Arc<Node>, environment: &Environment, names: Names) -> Fingerprint {
-        match &node.kind {
-            NodeKind::Constant(value) => {
-                let mut parts = Parts::new("constant");
-                constant(&mut parts, value);
-                parts.finish()
-            }
-            NodeKind::List(items) => self.list_print(items, environment, names),
-            NodeKind::ForEach { .. } => match self.items(node, environment) {
-                Ok(items) => self.list_print(&items, environment, names),
-                Err(_) => Parts::new("broken loop").finish(),
-            },
-            NodeKind::Reference(name) => match self.definition(name, node.span, environment) {
-                Ok((target, environment)) => self.print(&target, &environment, names),
-                Err(_) => {
-                    let mut parts = Parts::new("missing");
-                    parts.text(name);
-                    parts.finish()
-                }
-            },
-            NodeKind::Item { list, index } => {
-                let mut parts = Parts::new("item");
-                parts.print(self.print(list, environment, names));
-                parts.number(*index as u64);
-                parts.finish()
-            }
-            NodeKind::Variable(number) => {
-                let mut parts = Parts::new("variable");
-                parts.number(u64::from(*number));
-                parts.finish()
-            }
-            NodeKind::Call(call) => {
-                let mut parts = Parts::new("call");
-                parts.text(call.entry.name);
-                parts.number(u64::from(call.entry.revision));
-                let under = self.environment_of_first(node, call, environment);
-                self.given_parts(&mut parts, &call.given, call, environment, &under, names);
-                if let Some(variable) = call.variable {
-                    parts.bytes(&variable);
-                    parts.number(environment.members);
-                    parts.number(environment.seed);
-                }
-                if gives_ensemble(call) {
-                    parts.number(environment.members);
-                }
-                if self.reads_clock(call, environment) {
-                    parts.number(environment.key);
-                }
-                if let Some(parameter) = call.entry.reads_file {
-                    let context = NodeContext::new(self, node, call, environment, Path::Nominal);
-                    let view = Call::new(call.entry.signature.parameters, &call.given, &context);
-                    if let Ok(Some(path)) = view.text(parameter) {
-                        parts.text(
-                            &self
-                                .inputs
-                                .file(&path)
-                                .map_or_else(|fault| fault.message, |file| file.sha256.clone()),
-                        );
-                    }
-                }
-                parts.finish()
-            }
-        }
-    }
-
-    fn list_print(&self, items: &[Arc<Node>], environment: &Environment, names: Names) -> Fingerprint {
-        let mut parts = Parts::new("list");
-        for item in items {
-            parts.print(self.print(item, environment, names));
-        }
-        parts.finish()
-    }
-
-    /// The environment of the first argument: another clock, where the entry says that it is evaluated under one.
-    fn environment_of_first(
-        &self,
-        node: &Arc<Node>,
-        call: &CallNode,
-        environment: &Environment,
-    ) -> Environment {
-        let context = NodeContext::new(self, node, call, environment, Path::Nominal);
-        let view = Call::new(call.entry.signature.parameters, &call.given, &context);
-        let clock = call.entry.under.and_then(|parameter| view.value(parameter).ok());
-        match clock.as_deref() {
-            Some(Value::Clock(clock)) => environment.with_clock(clock.clone()),
-            _ => environment.clone(),
-        }
-    }
-
-    fn given_parts(
-        &self,
-        parts: &mut Parts,
-        given: &[Given],
-        call: &CallNode,
-        environment: &Environment,
-        of_first: &Environment,
-        names: Names,
-    ) {
-        parts.number(given.len() as u64);
-        // The order of named arguments is no part of what a call means.
-        let mut order: Vec<&Given> = given.iter().collect();
-        order.sort_by_key(|given| given.parameter);
-        for given in order {
-            parts.number(given.parameter as u64);
-            parts.text(given.label.as_deref().unwrap_or(""));
-            match &given.what {
-                What::Value(slot) => {
-                    let Some(slot) = call.slots.get(*slot) else { continue };
-                    let environment = if given.parameter == 0 { of_first } else { environment };
-                    parts.print(self.print(slot, environment, names));
-                    if call.entry.labels || names == Names::Counted {
-                        parts.text(&slot.label);
-                        for label in self.item_labels(slot, environment) {
-                            parts.text(&label);
-                        }
-                    }
-                }
-                What::Choice { choice, given } => {
-                    parts.number(*choice as u64);
-                    self.given_parts(parts, given, call, environment, environment, names);
-                }
-                What::Months { first, last } => {
-                    parts.number(*first as u64);
-                    parts.number(*last as u64);
-                }
-                What::Groups(groups) => {
-                    for group in groups {
-                        parts.number(group.len() as u64);
-                        group.iter().for_each(|label| parts.text(label));
-                    }
-                }
-            }
-        }
-    }
-
-    /// What the items of a list are called; those of a list that goes by a name, as they are called where it is
-    /// defined.
-    fn item_labels(&self, node: &Arc<Node>, environment: &Environment) -> Vec<Arc<str>> {
-        let mut current = node.clone();
-        loop {
-            let next = match &current.kind {
-                NodeKind::Reference(name) => self.definition(name, current.span, environment),
-                NodeKind::List(items) => return items.iter().map(|item| item.label.clone()).collect(),
-                _ => return Vec::new(),
-            };
-            match next {
-                Ok((target, _)) => current = target,
-                Err(_) => return Vec::new(),
-            }
-        }
-    }
-
     /// What the items of a shown list are called: those of a `for` by what stands at each, others by their names.
     pub(super) fn item_names(&self, node: &Arc<Node>, environment: &Environment) -> Vec<Arc<str>> {
         let mut current = node.clone();
@@ -429,7 +250,7 @@ impl Evaluator<'_> {
         }
     }
 
-    fn reads_clock(&self, call: &CallNode, environment: &Environment) -> bool {
+    pub(super) fn reads_clock(&self, call: &CallNode, environment: &Environment) -> bool {
         match call.entry.reads_clock {
             ReadsClock::Always => true,
             ReadsClock::Never => false,
@@ -636,7 +457,7 @@ fn limited(shape: Shape, span: Span) -> Result<Shape, Stop> {
 }
 
 /// Whether a call reads an ensemble from a file.
-fn gives_ensemble(call: &CallNode) -> bool {
+pub(super) fn gives_ensemble(call: &CallNode) -> bool {
     let Some(name) = call.entry.ensemble else { return false };
     let parameters = call.entry.signature.parameters;
     call.given
@@ -660,35 +481,6 @@ fn holds_series(shape: &Shape) -> bool {
     }
 }
 
-/// The bytes of a literal.
-fn constant(parts: &mut Parts, value: &Value) {
-    parts.text(value.kind());
-    match value {
-        Value::Quantity(Quantity { values, measure }) => {
-            values.data().iter().for_each(|number| parts.float(*number));
-            parts.text(&measure.unit.to_string());
-        }
-        Value::Instant(Instant { years, era, width_years }) => {
-            years.data().iter().for_each(|number| parts.float(*number));
-            parts.text(era.symbol());
-            parts.float(*width_years);
-        }
-        Value::Text(text) => parts.text(text),
-        Value::Span(TimeSpan { start, end, .. }) => {
-            parts.float(*start);
-            parts.float(*end);
-        }
-        Value::Range(_)
-        | Value::Clock(_)
-        | Value::Series(_)
-        | Value::Bundle(_)
-        | Value::Model(_)
-        | Value::Attribution(_)
-        | Value::Table(_)
-        | Value::List(_) => parts.text("no literal"),
-    }
-}
-
 /// Add notes that are not there yet.
 pub(super) fn add_notes(notes: &mut Vec<Arc<str>>, more: &[Arc<str>]) {
     let mut known: HashSet<Arc<str>> = notes.iter().cloned().collect();
@@ -696,147 +488,5 @@ pub(super) fn add_notes(notes: &mut Vec<Arc<str>>, more: &[Arc<str>]) {
         if known.insert(note.clone()) {
             notes.push(note.clone());
         }
-    }
-}
-
-/// What the body of one node sees of the session.
-pub(super) struct NodeContext<'e> {
-    evaluator: &'e Evaluator<'e>,
-    node: &'e Arc<Node>,
-    call: Option<&'e CallNode>,
-    environment: &'e Environment,
-    path: Path,
-    pub(super) notes: RefCell<Vec<Arc<str>>>,
-}
-
-impl<'e> NodeContext<'e> {
-    pub(super) fn new(
-        evaluator: &'e Evaluator<'e>,
-        node: &'e Arc<Node>,
-        call: &'e CallNode,
-        environment: &'e Environment,
-        path: Path,
-    ) -> Self {
-        Self { evaluator, node, call: Some(call), environment, path, notes: RefCell::default() }
-    }
-
-    /// The context in which a finished value is shown.
-    pub(super) fn showing(
-        evaluator: &'e Evaluator<'e>,
-        node: &'e Arc<Node>,
-        environment: &'e Environment,
-        path: Path,
-    ) -> Self {
-        Self { evaluator, node, call: None, environment, path, notes: RefCell::default() }
-    }
-
-    fn slot(&self, slot: usize) -> Result<&'e Arc<Node>, Stop> {
-        self.call
-            .and_then(|call| call.slots.get(slot))
-            .ok_or_else(|| internal("an argument is missing").into())
-    }
-
-    fn take(&self, (value, notes): Evaluated) -> Arc<Value> {
-        add_notes(&mut self.notes.borrow_mut(), &notes);
-        value
-    }
-}
-
-impl Context for NodeContext<'_> {
-    fn shape(&self, slot: usize) -> Result<Shape, Stop> {
-        self.evaluator.shape(self.slot(slot)?, self.environment)
-    }
-
-    fn value(&self, slot: usize) -> Result<Arc<Value>, Stop> {
-        self.evaluator
-            .value(self.slot(slot)?, self.environment, self.path)
-            .map(|evaluated| self.take(evaluated))
-    }
-
-    fn value_under(&self, slot: usize, clock: Arc<Clock>) -> Result<Arc<Value>, Stop> {
-        let environment = self.environment.with_clock(clock);
-        let node = self.slot(slot)?;
-        let mut clocks = lock(&self.evaluator.caches.clocks);
-        clocks.insert(environment.key);
-        if clocks.len() > CLOCKS_LIMIT {
-            return Err(Fault::new(
-                "too-large",
-                format!("this cell asks for more than {CLOCKS_LIMIT} different clocks"),
-            )
-            .help(
-                "lags of lags make a clock for each combination: bring parts onto the clock with `on` first",
-            )
-            .into());
-        }
-        drop(clocks);
-        self.evaluator.shape(node, &environment)?;
-        self.evaluator.value(node, &environment, self.path).map(|evaluated| self.take(evaluated))
-    }
-
-    fn own_value(&self) -> Result<Arc<Value>, Stop> {
-        let call = self.call.ok_or_else(|| internal("no call"))?;
-        // The shape is being asked for, so the body must not ask for it again.
-        let print = self.evaluator.print(self.node, self.environment, Names::Counted);
-        if let Some(remembered) = self.evaluator.memo.get(print, Path::Nominal) {
-            return Ok(remembered?.0);
-        }
-        let view = Call::new(call.entry.signature.parameters, &call.given, self);
-        self.evaluator.evaluations.fetch_add(1, Ordering::Relaxed);
-        let Body::PerMember(body) = call.entry.body else {
-            return Err(internal("no value of its own").into());
-        };
-        let value = Arc::new(body(&view)?);
-        let notes = Arc::new(self.notes.borrow().clone());
-        if !self.evaluator.is_uncertain(self.node) {
-            self.evaluator.memo.insert(print, Path::Nominal, Ok((value.clone(), notes)));
-        }
-        Ok(value)
-    }
-
-    fn spread(&self, slot: usize) -> Result<Option<Arc<Spread>>, Stop> {
-        self.evaluator.spread_of(self.slot(slot)?, self.environment)
-    }
-
-    fn is_uncertain(&self, slot: usize) -> bool {
-        self.slot(slot).is_ok_and(|node| self.evaluator.is_uncertain(node))
-    }
-
-    fn label(&self, slot: usize) -> Arc<str> {
-        self.slot(slot).map_or_else(|_| Arc::from("it"), |node| node.label.clone())
-    }
-
-    fn item_labels(&self, slot: usize) -> Vec<Arc<str>> {
-        self.slot(slot).map_or_else(|_| Vec::new(), |node| self.evaluator.item_labels(node, self.environment))
-    }
-
-    fn clock(&self) -> Option<Arc<Clock>> {
-        self.environment.clock.clone()
-    }
-
-    fn path(&self) -> Path {
-        self.path
-    }
-
-    fn standard_normals(&self) -> Vec<f64> {
-        let (Path::Block { first, count }, Some(variable)) =
-            (self.path, self.call.and_then(|call| call.variable))
-        else {
-            return vec![0.0];
-        };
-        let mut numbers = vec![0.0; count];
-        draws::normals(self.environment.seed, &variable, first, &mut numbers);
-        numbers
-    }
-
-    fn file(&self, path: &str) -> Result<Arc<InputFile>, Fault> {
-        self.evaluator.inputs.file(path)
-    }
-
-    fn note(&self, text: String) {
-        add_notes(&mut self.notes.borrow_mut(), &[Arc::from(text)]);
-    }
-
-    fn cancellation(&self) -> &Cancellation {
-        self.evaluator.cancellation
     }
 }

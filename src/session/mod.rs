@@ -1,7 +1,7 @@
 //! Definitions in force, their evaluation, and what of the shown results has moved.
 //!
 //! A cell goes through `resolve` (syntax to nodes, random variables named), `graph` (circles),
-//! `evaluate` (shape, fingerprint, value), `memo` (values remembered by fingerprint) and `inputs` (files).
+//! `evaluate` (shape and value), `prints` (fingerprints), `memo` (values remembered by fingerprint) and `inputs` (files).
 
 #![allow(
     clippy::wildcard_enum_match_arm,
@@ -9,6 +9,7 @@
 )]
 
 mod cell;
+mod context;
 mod definitions;
 mod environment;
 mod evaluate;
@@ -17,6 +18,7 @@ mod graph;
 mod inputs;
 mod memo;
 mod node;
+mod prints;
 mod resolve;
 mod settings;
 mod show;

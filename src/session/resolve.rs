@@ -1,4 +1,6 @@
 //! Syntax to nodes: functions looked up, choices taken, parameters put in place, random variables named.
+//!
+//! Longer than most files: it is one recursion over the syntax tree.
 
 use std::sync::Arc;
 

@@ -4,8 +4,9 @@ use std::sync::Arc;
 
 use rayon::prelude::*;
 
+use super::context::NodeContext;
 use super::environment::Environment;
-use super::evaluate::{Evaluator, NodeContext, add_notes, internal};
+use super::evaluate::{Evaluator, add_notes, internal};
 use super::memo::Notes;
 use super::node::Node;
 use crate::base::Fault;
