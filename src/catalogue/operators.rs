@@ -469,6 +469,11 @@ fn combine(
     measure: impl Fn(&Measure, &Measure) -> Result<(Measure, f64), Fault>,
     function: impl Fn(f64, f64, f64) -> f64,
 ) -> Result<Value, Stop> {
+    // What is too large for a number is no number: infinities are gaps here as in files.
+    let function = |left: f64, right: f64, factor: f64| {
+        let result = function(left, right, factor);
+        if result.is_finite() { result } else { f64::NAN }
+    };
     match (numeric(call, "left")?, numeric(call, "right")?) {
         (Numeric::Quantity(left), Numeric::Quantity(right)) => {
             let (measure, factor) = measure(&left.measure, &right.measure)?;
@@ -514,11 +519,7 @@ fn over_shape(call: &Call<'_>) -> Result<Shape, Stop> {
 }
 
 fn over(call: &Call<'_>) -> Result<Value, Stop> {
-    let quotient = |left: f64, right: f64, _: f64| {
-        let quotient = left / right;
-        if quotient.is_finite() { quotient } else { f64::NAN }
-    };
-    combine(call, |left, right| Ok((left.product(right, -1), 1.0)), quotient)
+    combine(call, |left, right| Ok((left.product(right, -1), 1.0)), |left, right, _| left / right)
 }
 
 fn power_measure(call: &Call<'_>) -> Result<Measure, Stop> {
