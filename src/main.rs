@@ -1,7 +1,7 @@
 //! The command line.
 
 use std::io::{IsTerminal, Read, Write};
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
@@ -9,8 +9,9 @@ use std::time::{Duration, Instant};
 
 use clap::{Parser, Subcommand, ValueEnum};
 
-use rhythmite::session::Session;
-use rhythmite::{catalogue, notebook};
+use rhythmite::notebook::{CodeCell, Notebook, Report, Run};
+use rhythmite::session::{OUTSIDE, Session};
+use rhythmite::{catalogue, display, notebook};
 
 /// Climate forcing time series: compose drivers, respond, attribute a record.
 #[derive(Parser)]
@@ -22,9 +23,9 @@ struct Arguments {
 
 #[derive(Subcommand)]
 enum Command {
-    /// Run a script (.rhy) and print its results.
+    /// Run a script (.rhy) or a notebook (.ipynb) and print its results.
     Run {
-        /// The script; it reads files in its own folder and below.
+        /// The script or notebook; it reads files in its own folder and below.
         file: PathBuf,
         /// How results are printed.
         #[arg(long, value_enum, default_value = "text")]
@@ -32,6 +33,9 @@ enum Command {
         /// Write the results there instead of printing them.
         #[arg(long)]
         out: Option<PathBuf>,
+        /// A definition that wins over those of the program, such as "members = 500"; may be given more than once.
+        #[arg(long, value_name = "DEFINITION")]
+        define: Vec<String>,
         /// How many threads to use; all processors by default. The numbers are the same for any.
         #[arg(long)]
         threads: Option<usize>,
@@ -52,10 +56,15 @@ enum Format {
     Text,
     /// One JSON object.
     Json,
+    /// The notebook with its outputs.
+    Ipynb,
 }
 
-/// The longest script that is read, in bytes: a device as the script must not fill the memory.
-const SCRIPT_LIMIT: u64 = 64 << 20;
+/// The longest script or notebook that is read, in bytes: a device in its place must not fill the memory.
+const PROGRAM_LIMIT: u64 = 64 << 20;
+
+/// How many bytes of values are remembered.
+const MEMORY: usize = 512 * 1024 * 1024;
 
 /// The program ran and every result is there.
 const SUCCESS: u8 = 0;
@@ -67,9 +76,12 @@ const WRONG_CALL: u8 = 2;
 fn main() -> ExitCode {
     let arguments = Arguments::parse();
     let code = match arguments.command {
-        Command::Run { file, format, out, threads, file_limit } => {
-            let (session_limit, memory) = (file_limit.saturating_mul(1024 * 1024), 512 * 1024 * 1024);
-            run(&file, format, out.as_deref(), threads, memory, session_limit)
+        Command::Run { file, format, out, define, threads, file_limit } => {
+            let folder = file.parent().filter(|folder| !folder.as_os_str().is_empty());
+            let folder = folder.unwrap_or(Path::new(".")).to_owned();
+            let limit = file_limit.saturating_mul(1024 * 1024);
+            let session = Session::with_limits(folder, threads, MEMORY, limit);
+            run(session, &file, format, out.as_deref(), &define)
         }
         Command::Explain { name } => explain(&name),
     };
@@ -106,64 +118,83 @@ fn explain(name: &str) -> u8 {
     }
 }
 
-fn run(
-    file: &std::path::Path,
-    format: Format,
-    out: Option<&std::path::Path>,
-    threads: Option<usize>,
-    memory: usize,
-    file_limit: u64,
-) -> u8 {
-    if file.extension().is_some_and(|extension| extension == "ipynb") {
-        complain("this version runs scripts (.rhy); copy the cells of the notebook into one\n");
-        return WRONG_CALL;
+/// What is run: a script is one cell.
+enum Program {
+    Script(CodeCell),
+    Notebook(Notebook),
+}
+
+impl Program {
+    fn cells(&self) -> &[CodeCell] {
+        match self {
+            Self::Script(script) => std::slice::from_ref(script),
+            Self::Notebook(notebook) => notebook.code_cells(),
+        }
     }
+}
+
+/// Read a script or a notebook; the error is a sentence for people.
+fn read(file: &Path) -> Result<Program, String> {
+    let named = |what: String| format!("{} {what}", file.display());
     let mut bytes = Vec::new();
-    let read = std::fs::File::open(file).and_then(|open| open.take(SCRIPT_LIMIT + 1).read_to_end(&mut bytes));
-    if let Err(error) = read {
-        complain(&format!("{} cannot be read: {error}\n", file.display()));
-        return WRONG_CALL;
+    std::fs::File::open(file)
+        .and_then(|open| open.take(PROGRAM_LIMIT + 1).read_to_end(&mut bytes))
+        .map_err(|error| named(format!("cannot be read: {error}")))?;
+    let is_notebook = file.extension().is_some_and(|extension| extension.eq_ignore_ascii_case("ipynb"));
+    if bytes.len() as u64 > PROGRAM_LIMIT {
+        let what = if is_notebook { "notebook" } else { "script" };
+        return Err(named(format!("is longer than any {what}: more than {} MiB", PROGRAM_LIMIT >> 20)));
     }
-    if bytes.len() as u64 > SCRIPT_LIMIT {
-        complain(&format!(
-            "{} is longer than any script: more than {} MiB\n",
-            file.display(),
-            SCRIPT_LIMIT >> 20
-        ));
-        return WRONG_CALL;
+    if is_notebook {
+        return Notebook::read(&bytes).map(Program::Notebook).map_err(|error| named(error.to_string()));
     }
-    let text = match String::from_utf8(bytes) {
-        Ok(text) => text,
-        Err(error) => {
-            let at = error.utf8_error().valid_up_to();
-            complain(&format!(
-                "{} is not UTF-8: the first wrong byte is number {}\n",
-                file.display(),
-                at + 1
-            ));
+    let source = String::from_utf8(bytes).map_err(|error| {
+        let at = error.utf8_error().valid_up_to();
+        named(format!("is not UTF-8: the first wrong byte is number {}", at + 1))
+    })?;
+    let name = file.file_name().map_or_else(|| "script".into(), |name| name.to_string_lossy().into_owned());
+    Ok(Program::Script(CodeCell { index: 0, id: name.clone(), name, source }))
+}
+
+fn run(mut session: Session, file: &Path, format: Format, out: Option<&Path>, define: &[String]) -> u8 {
+    let program = match read(file) {
+        Ok(program) => program,
+        Err(why) => {
+            complain(&format!("{why}\n"));
             return WRONG_CALL;
         }
     };
-    let folder =
-        file.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(std::path::Path::new("."));
-    let name = file.file_name().map_or_else(|| "script".into(), |name| name.to_string_lossy().into_owned());
-    let mut session = Session::with_limits(folder, threads, memory, file_limit);
+    if format == Format::Ipynb && matches!(program, Program::Script(_)) {
+        complain("a script has no cells to write outputs into: `--format ipynb` is for notebooks (.ipynb)\n");
+        return WRONG_CALL;
+    }
+    session.name_cell(OUTSIDE, "--define");
+    if let Err(problems) = session.define_from_outside(define) {
+        for problem in problems {
+            complain(&display::diagnostic(&problem, &|id| session.source(id), false));
+        }
+        return WRONG_CALL;
+    }
     let progress = Progress::begin();
-    let reply = session.run_cell(&name, &text);
+    let ran = Run::of(&mut session, program.cells());
     progress.end();
-    let failed = !reply.problems.is_empty()
-        || !reply.waiting.is_empty()
-        || reply.outputs.iter().any(|output| output.result.is_err());
-    let printed = match format {
-        Format::Text => {
+    let printed = match (format, &program) {
+        (Format::Text, _) => {
             let colour =
                 out.is_none() && std::io::stdout().is_terminal() && std::env::var_os("NO_COLOR").is_none();
-            let mut report = notebook::Report::new(colour, true);
-            report.add(&session, &reply);
+            let mut report = Report::new(colour, true);
+            report.add_run(&session, &ran, matches!(program, Program::Notebook(_)));
             report.take()
         }
-        Format::Json => {
-            let json = notebook::run_to_json(&session, &[(0, reply)]);
+        (Format::Ipynb, Program::Notebook(notebook)) => {
+            // No cell of the notebook is theirs.
+            let mut report = Report::new(false, true);
+            report.add(&session, &ran.outside);
+            complain(&report.take());
+            notebook.with_outputs(&session, &ran)
+        }
+        (Format::Json | Format::Ipynb, _) => {
+            let json = notebook::run_to_json(&session, &ran);
             serde_json::to_string_pretty(&json).unwrap_or_default() + "\n"
         }
     };
@@ -176,7 +207,7 @@ fn run(
             }
         }
     }
-    if failed { WRONG_PROGRAM } else { SUCCESS }
+    if ran.failed() { WRONG_PROGRAM } else { SUCCESS }
 }
 
 /// A line on standard error that says how long a run has taken, on a terminal and after half a second.

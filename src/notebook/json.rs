@@ -1,28 +1,30 @@
 use serde_json::{Map, Value as Json, json};
 
+use super::run::Run;
 use crate::base::{Diagnostic, LineIndex};
-use crate::session::{CellReply, Output, Session};
+use crate::session::{Output, Session};
 use crate::value::{Attribution, Axis, AxisKind, Cell, Shown, ShownSeries, Spread, Table};
 
 /// The outputs of a run as one JSON object, format 1: full-precision numbers, `null` for a gap, and only the keys that
-/// a kind has.
-pub fn run_to_json(session: &Session, cells: &[(usize, CellReply)]) -> Json {
+/// a kind has. `cell` counts all cells of the file from 0; what is said of definitions from outside has `null` there.
+pub fn run_to_json(session: &Session, run: &Run) -> Json {
     let inputs: Vec<Json> =
         session.inputs().into_iter().map(|(file, sha256)| json!({"file": file, "sha256": sha256})).collect();
     let mut outputs = Vec::new();
-    for (cell, reply) in cells {
+    let outside = std::iter::once((None, &run.outside));
+    for (cell, reply) in outside.chain(run.cells.iter().map(|(cell, reply)| (Some(cell.index), reply))) {
         for problem in reply.problems.iter().chain(&reply.waiting) {
-            outputs.push(json!({"cell": cell, "kind": "error", "error": error(session, problem, *cell)}));
+            outputs.push(json!({"cell": cell, "kind": "error", "error": error(session, run, problem)}));
         }
         for notice in &reply.notices {
             outputs.push(json!({"cell": cell, "kind": "text", "text": notice}));
         }
-        outputs.extend(reply.outputs.iter().map(|output| self::output(session, output, *cell)));
+        outputs.extend(reply.outputs.iter().map(|output| self::output(session, run, output, cell)));
     }
     json!({"format": 1, "inputs": inputs, "outputs": outputs})
 }
 
-fn output(session: &Session, output: &Output, cell: usize) -> Json {
+fn output(session: &Session, run: &Run, output: &Output, cell: Option<usize>) -> Json {
     let mut object = Map::new();
     object.insert("cell".to_owned(), json!(cell));
     object.insert("expression".to_owned(), json!(output.expression));
@@ -30,7 +32,7 @@ fn output(session: &Session, output: &Output, cell: usize) -> Json {
         Err(problem) => {
             object.insert("kind".to_owned(), json!("error"));
             object.insert("fingerprint".to_owned(), json!(output.fingerprint.to_string()));
-            object.insert("error".to_owned(), error(session, problem, cell));
+            object.insert("error".to_owned(), error(session, run, problem));
         }
         Ok(shown) => {
             let mut rest = self::shown(shown);
@@ -49,7 +51,8 @@ fn output(session: &Session, output: &Output, cell: usize) -> Json {
     Json::Object(object)
 }
 
-fn error(session: &Session, problem: &Diagnostic, cell: usize) -> Json {
+/// A mistake with the cell, line and column where it stands, which may be another cell than the one that shows it.
+fn error(session: &Session, run: &Run, problem: &Diagnostic) -> Json {
     let span = problem.primary.span;
     let mut object = Map::new();
     object.insert("code".to_owned(), json!(problem.code));
@@ -57,7 +60,7 @@ fn error(session: &Session, problem: &Diagnostic, cell: usize) -> Json {
     if let Some(help) = &problem.help {
         object.insert("help".to_owned(), json!(help));
     }
-    object.insert("cell".to_owned(), json!(cell));
+    object.insert("cell".to_owned(), json!(run.index_of(session, problem)));
     if let Some(source) = session.source(span.source) {
         let position = LineIndex::new(&source.text).position(span.start);
         object.insert("line".to_owned(), json!(position.line));

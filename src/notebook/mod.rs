@@ -1,7 +1,12 @@
-//! Results out: as text, and as one JSON object for a whole run. Notebooks in and out will stand here too.
+//! Programs in and results out: scripts and notebook files, as text, as one JSON object, or as the notebook with its
+//! outputs.
 
+mod ipynb;
 mod json;
 mod report;
+mod run;
 
+pub use ipynb::{Notebook, Unreadable};
 pub use json::run_to_json;
 pub use report::Report;
+pub use run::{CodeCell, Run};

@@ -1,8 +1,12 @@
 use std::collections::HashSet;
 use std::sync::Arc;
 
+use super::run::{Run, is_told};
 use crate::display;
 use crate::session::{CellReply, Output, Session};
+
+/// How many columns the line over a cell takes.
+const HEADING_WIDTH: usize = 80;
 
 /// What cells gave, as text for a terminal or a page: results, notes, diagnostics.
 ///
@@ -28,6 +32,20 @@ impl Report {
         std::mem::take(&mut self.text)
     }
 
+    /// Add what a program gave in the end; where it has cells, each that says something under a line with its name.
+    pub fn add_run(&mut self, session: &Session, run: &Run, headings: bool) {
+        let (bold, plain) = if self.colour { ("\x1b[1m", "\x1b[0m") } else { ("", "") };
+        self.add(session, &run.outside);
+        for (cell, reply) in &run.cells {
+            let before = self.text.len();
+            self.add(session, reply);
+            if headings && self.text.len() > before {
+                let line = "─".repeat(HEADING_WIDTH.saturating_sub(cell.name.chars().count() + 4));
+                self.text.insert_str(before, &format!("{bold}── {} {line}{plain}\n\n", cell.name));
+            }
+        }
+    }
+
     /// Add what a cell gave.
     pub fn add(&mut self, session: &Session, reply: &CellReply) {
         let sources = |id| session.source(id);
@@ -43,12 +61,13 @@ impl Report {
         }
         for output in &reply.moved {
             let by = output.refreshed_by.join(", ");
-            self.text += &format!("{}, refreshed by {by}:\n", output.cell);
+            self.text += &format!("{}, refreshed by {by}:\n", session.cell_name(&output.cell));
             self.output(session, reply, output);
         }
     }
 
-    fn output(&mut self, session: &Session, reply: &CellReply, output: &Output) {
+    /// Add one result with its notes.
+    pub(super) fn output(&mut self, session: &Session, reply: &CellReply, output: &Output) {
         let (bold, dim, plain) = if self.colour { ("\x1b[1m", "\x1b[2m", "\x1b[0m") } else { ("", "", "") };
         let sources = |id| session.source(id);
         match &output.result {
@@ -64,11 +83,15 @@ impl Report {
                     }
                 }
                 if self.fingerprints {
-                    self.text += &format!("  {dim}{}{plain}\n", output.fingerprint.short());
+                    let by = match &output.refreshed_by[..] {
+                        [] => String::new(),
+                        names => format!(", refreshed by {}", names.join(", ")),
+                    };
+                    self.text += &format!("  {dim}{}{by}{plain}\n", output.fingerprint.short());
                 }
                 self.text.push('\n');
             }
-            Err(problem) if reply.problems.contains(problem) || reply.waiting.contains(problem) => {
+            Err(problem) if is_told(reply, problem) => {
                 let line = display::problem_line(problem, &sources);
                 self.text += &format!(
                     "{bold}{}{plain}\n  not shown, because of the error at {line}\n\n",

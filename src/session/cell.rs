@@ -14,6 +14,7 @@ use super::graph::Graph;
 use super::inputs::{FILE_LIMIT, Inputs};
 use super::memo::Memo;
 use super::node::Node;
+use super::outside::function_key;
 use super::resolve::{SETTINGS, SIZE_LIMIT, resolve};
 use crate::base::{Cancellation, Diagnostic, Fault, Source, SourceId, Span};
 use crate::catalogue::{Path, Stop};
@@ -31,16 +32,20 @@ const STACK: usize = 512 * 1024 * 1024;
 /// Cells are run one after the other with [`Session::run_cell`]; what they define stays until another cell or another
 /// run of the same cell replaces it. The outcome does not depend on the order of the cells.
 pub struct Session {
-    definitions: Definitions,
+    pub(super) definitions: Definitions,
     displays: Vec<Display>,
     sources: BTreeMap<SourceId, Source>,
+    /// What people call a cell, where that is not its id.
+    names: BTreeMap<Arc<str>, String>,
+    /// The text that each cell was last run with: what was said about it may be shown later.
+    newest: BTreeMap<Arc<str>, SourceId>,
     next_source: u32,
     next_display: u64,
-    inputs: Inputs,
-    memo: Memo,
-    cancellation: Cancellation,
-    evaluations: AtomicU64,
-    threads: Arc<rayon::ThreadPool>,
+    pub(super) inputs: Inputs,
+    pub(super) memo: Memo,
+    pub(super) cancellation: Cancellation,
+    pub(super) evaluations: AtomicU64,
+    pub(super) threads: Arc<rayon::ThreadPool>,
 }
 
 /// One shown expression, for as long as its cell shows it.
@@ -70,6 +75,8 @@ pub struct CellReply {
     pub notices: Vec<String>,
     /// Whether the text is right so far and only ends too early; nothing was installed then.
     pub incomplete: bool,
+    /// Whether the text could be read and its definitions are in force.
+    pub installed: bool,
 }
 
 /// One shown result.
@@ -118,6 +125,8 @@ impl Session {
             definitions: Definitions::default(),
             displays: Vec::new(),
             sources: BTreeMap::new(),
+            names: BTreeMap::new(),
+            newest: BTreeMap::new(),
             next_source: 1,
             next_display: 1,
             inputs: Inputs::new(folder.into(), file_limit),
@@ -153,6 +162,16 @@ impl Session {
         self.sources.get(&id).cloned()
     }
 
+    /// Say what people call a cell, before it is run: messages then use that name instead of its id.
+    pub fn name_cell(&mut self, cell: &str, name: &str) {
+        self.names.insert(Arc::from(cell), name.to_owned());
+    }
+
+    /// What people call a cell: the name it was given, or its id.
+    pub fn cell_name<'a>(&'a self, cell: &'a str) -> &'a str {
+        self.names.get(cell).map_or(cell, String::as_str)
+    }
+
     /// Say that cells are gone from the notebook: what they define stays, and what depends on it says so.
     pub fn mark_deleted(&mut self, cells: &[&str]) {
         for definition in self.definitions.values.values_mut() {
@@ -172,7 +191,7 @@ impl Session {
         let values = self.definitions.values.iter();
         let values = values.map(|(name, found)| (name.to_string(), &found.cell, &found.rivals));
         let functions = self.definitions.functions.iter();
-        let functions = functions.map(|(name, found)| (format!("{name}(…)"), &found.cell, &found.rivals));
+        let functions = functions.map(|(name, found)| (function_key(name), &found.cell, &found.rivals));
         values
             .chain(functions)
             .filter(|(_, _, rivals)| !rivals.is_empty())
@@ -198,10 +217,7 @@ impl Session {
 
     fn run_here(&mut self, cell: &str, text: &str) -> CellReply {
         let text = text.strip_prefix('\u{feff}').unwrap_or(text);
-        let source = SourceId(self.next_source);
-        self.next_source += 1;
-        let name = cell.to_owned();
-        self.sources.insert(source, Source { id: source, name, text: Arc::from(text) });
+        let source = self.add_source(cell, text);
         self.cancellation.reset();
         self.inputs.look_again();
         let program = match parse(text, source) {
@@ -224,6 +240,7 @@ impl Session {
                 return reply;
             }
         };
+        reply.installed = true;
         let changed = changed(&before, &self.bindings());
         self.displays.retain(|display| display.cell != cell);
         let mut used: usize = self.displays.iter().map(|display| display.cost).sum();
@@ -247,6 +264,16 @@ impl Session {
         self.evaluate(&cell, &changed, &mut reply);
         self.forget_sources(&reply);
         reply
+    }
+
+    /// Keep a text that spans will point into, under the name of its cell.
+    pub(super) fn add_source(&mut self, cell: &str, text: &str) -> SourceId {
+        let id = SourceId(self.next_source);
+        self.next_source += 1;
+        let name = self.cell_name(cell).to_owned();
+        self.sources.insert(id, Source { id, name, text: Arc::from(text) });
+        self.newest.insert(Arc::from(cell), id);
+        id
     }
 
     /// Names with what they are bound to, to tell what a cell changed.
@@ -307,22 +334,27 @@ impl Session {
                     shown.push((expression, text.unwrap_or("").replace("\r\n", "\n")));
                 }
                 StatementKind::Function { name, name_span, parameters, body } => {
+                    if let Some(notice) = self.overruled(&function_key(&name)) {
+                        reply.notices.push(notice);
+                        continue;
+                    }
                     let parameters = parameters.into_iter().map(|(name, _)| name).collect();
                     if let Some(old) =
                         self.definitions.define_function(&name, cell, name_span, parameters, body)
                     {
-                        reply.notices.push(taken_over(&format!("{name}(…)"), &old));
+                        reply.notices.push(taken_over(&function_key(&name), self.cell_name(&old)));
                     }
                 }
-                StatementKind::Define { name, name_span, expression } => {
-                    values.push((name, name_span, expression))
-                }
+                StatementKind::Define { name, name_span, expression } => match self.overruled(&name) {
+                    Some(notice) => reply.notices.push(notice),
+                    None => values.push((name, name_span, expression)),
+                },
             }
         }
         // Functions first: the order of lines in a cell is free.
         for (name, name_span, expression) in values {
             if let Some(old) = self.definitions.define(&name, cell, name_span, expression) {
-                reply.notices.push(taken_over(&name, &old));
+                reply.notices.push(taken_over(&name, self.cell_name(&old)));
             }
         }
         if self.function_texts() != functions_before {
@@ -384,8 +416,8 @@ impl Session {
             kept.insert(diagnostic.primary.span.source);
             kept.extend(diagnostic.secondary.iter().map(|mark| mark.span.source));
         }
-        let newest = SourceId(self.next_source.saturating_sub(1));
-        self.sources.retain(|id, _| kept.contains(id) || *id == newest);
+        kept.extend(self.newest.values());
+        self.sources.retain(|id, _| kept.contains(id));
     }
 }
 
@@ -422,7 +454,7 @@ fn changed(before: &BTreeMap<String, String>, after: &BTreeMap<String, String>) 
 }
 
 /// The settings in force.
-fn environment(evaluator: &Evaluator<'_>) -> Environment {
+pub(super) fn environment(evaluator: &Evaluator<'_>) -> Environment {
     let mut environment = Environment::empty();
     let setting = |name: &str| -> Option<Result<Arc<Value>, Stop>> {
         let definition = evaluator.definitions.values.get(name)?;
@@ -469,7 +501,7 @@ fn environment(evaluator: &Evaluator<'_>) -> Environment {
 }
 
 /// Evaluate shapes along the order of references, so that no chain of definitions is walked by recursion.
-fn prepare(evaluator: &Evaluator<'_>, environment: &Environment) {
+pub(super) fn prepare(evaluator: &Evaluator<'_>, environment: &Environment) {
     for name in &evaluator.graph.order {
         let Some(definition) = evaluator.definitions.values.get(name) else { continue };
         if let (Ok(node), false) = (&definition.node, evaluator.graph.problems.contains_key(name)) {
@@ -481,9 +513,9 @@ fn prepare(evaluator: &Evaluator<'_>, environment: &Environment) {
 }
 
 /// Check the definitions of a cell, so that their errors do not wait to be shown.
-fn check(evaluator: &Evaluator<'_>, cell: &Arc<str>, environment: &Environment, reply: &mut CellReply) {
+pub(super) fn check(evaluator: &Evaluator<'_>, cell: &str, environment: &Environment, reply: &mut CellReply) {
     for (name, definition) in &evaluator.definitions.values {
-        if definition.cell != *cell {
+        if &*definition.cell != cell {
             continue;
         }
         let stem = |name: &str| name.to_lowercase().trim_end_matches('s').to_owned();
@@ -561,7 +593,7 @@ fn show(
     for word in words_behind(evaluator.definitions, display) {
         let name = evaluator.definitions.values.get(&*word).filter(|definition| definition.deleted);
         let function = evaluator.definitions.functions.get(&word).filter(|function| function.deleted);
-        let word = if function.is_some() { format!("{word}(…)") } else { word };
+        let word = if function.is_some() { function_key(&word) } else { word };
         if name.is_some() || function.is_some() {
             notes.push(Arc::from(format!("`{word}` is defined in a cell that was deleted")));
         }

@@ -2,6 +2,7 @@ use std::collections::{BTreeMap, BTreeSet};
 use std::sync::Arc;
 
 use super::node::Node;
+use super::outside::Outside;
 use super::resolve::{Functions, check_local_name, resolve};
 use crate::base::{Diagnostic, Fault, SourceId, Span};
 use crate::catalogue;
@@ -15,6 +16,8 @@ pub(super) const SESSION_LIMIT: usize = 600_000;
 pub(super) struct Definitions {
     pub(super) values: BTreeMap<Arc<str>, Definition>,
     pub(super) functions: BTreeMap<String, Arc<Function>>,
+    /// Those that were given from outside, which no cell replaces.
+    pub(super) outside: Outside,
     /// How many nodes were made for the definitions in force, also in vain.
     expanded: usize,
 }

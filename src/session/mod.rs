@@ -18,6 +18,7 @@ mod graph;
 mod inputs;
 mod memo;
 mod node;
+mod outside;
 mod prints;
 mod resolve;
 mod settings;
@@ -25,3 +26,4 @@ mod show;
 
 pub use cell::{CellReply, Output, Session};
 pub use fingerprint::Fingerprint;
+pub use outside::{OUTSIDE, Standing};
