@@ -31,25 +31,25 @@ const STACK: usize = 512 * 1024 * 1024;
 /// Cells are run one after the other with [`Session::run_cell`]; what they define stays until another cell or another
 /// run of the same cell replaces it. The outcome does not depend on the order of the cells.
 pub struct Session {
-    definitions: Definitions,
-    displays: Vec<Display>,
-    sources: BTreeMap<SourceId, Source>,
+    pub(super) definitions: Definitions,
+    pub(super) displays: Vec<Display>,
+    pub(super) sources: BTreeMap<SourceId, Source>,
     next_source: u32,
     next_display: u64,
-    inputs: Inputs,
+    pub(super) inputs: Inputs,
     memo: Memo,
     cancellation: Cancellation,
     evaluations: AtomicU64,
-    threads: Arc<rayon::ThreadPool>,
+    pub(super) threads: Arc<rayon::ThreadPool>,
 }
 
 /// One shown expression, for as long as its cell shows it.
-struct Display {
+pub(super) struct Display {
     id: u64,
-    cell: Arc<str>,
+    pub(super) cell: Arc<str>,
     text: String,
     expression: Expression,
-    node: Result<Arc<Node>, Diagnostic>,
+    pub(super) node: Result<Arc<Node>, Diagnostic>,
     /// How many nodes were made for it, also in vain.
     cost: usize,
     fingerprint: Fingerprint,
@@ -340,6 +340,32 @@ impl Session {
             format!("({}) = {}", function.parameters.join(", "), canonical(&function.body))
         };
         self.definitions.functions.iter().map(|(name, function)| (name.clone(), text(function))).collect()
+    }
+
+    /// Look at the definitions in force with an evaluator, on a thread whose stack is deep enough; nothing where
+    /// that fails.
+    pub(super) fn consult<T: Send>(
+        &self,
+        ask: impl FnOnce(&Evaluator<'_>, &Environment) -> T + Send,
+    ) -> Option<T> {
+        let graph = Graph::of(&self.definitions);
+        let consulted = std::panic::AssertUnwindSafe(|| {
+            self.threads.install(|| {
+                let evaluator = Evaluator {
+                    definitions: &self.definitions,
+                    graph: &graph,
+                    inputs: &self.inputs,
+                    memo: &self.memo,
+                    cancellation: &self.cancellation,
+                    evaluations: &self.evaluations,
+                    caches: Caches::default(),
+                };
+                let environment = environment(&evaluator);
+                prepare(&evaluator, &environment);
+                ask(&evaluator, &environment)
+            })
+        });
+        std::panic::catch_unwind(consulted).ok()
     }
 
     fn evaluate(&mut self, cell: &Arc<str>, changed: &[String], reply: &mut CellReply) {
