@@ -41,21 +41,28 @@ fn takes(parameter: &Parameter) -> String {
     format!("{}{unit}", words.join(" or "))
 }
 
+/// What one parameter takes and means, with its default and choices, for a terminal.
+pub fn explain_parameter(parameter: &Parameter) -> String {
+    let mut out = String::new();
+    out += &format!("  {:<22} {}: {}\n", parameter.name, takes(parameter), parameter.meaning);
+    if let Presence::Default(text) = parameter.presence {
+        out += &format!("  {:<22} default {text}\n", "");
+    }
+    for choice in parameter.choices {
+        let inner: Vec<&str> = choice.parameters.iter().map(|parameter| parameter.name).collect();
+        let inner = if inner.is_empty() { String::new() } else { format!("({})", inner.join(", ")) };
+        out += &format!("  {:<24} {}{inner}: {}\n", "", choice.name, choice.meaning);
+    }
+    out
+}
+
 /// The help of one function, for a terminal.
 pub fn explain(entry: &Entry) -> String {
     let mut out = format!("{}\n\n{}\n", usage(entry), entry.summary);
     out += &format!("Result: {}.\n", entry.result);
     out += "\nArguments\n";
     for parameter in entry.signature.parameters {
-        out += &format!("  {:<22} {}: {}\n", parameter.name, takes(parameter), parameter.meaning);
-        if let Presence::Default(text) = parameter.presence {
-            out += &format!("  {:<22} default {text}\n", "");
-        }
-        for choice in parameter.choices {
-            let inner: Vec<&str> = choice.parameters.iter().map(|parameter| parameter.name).collect();
-            let inner = if inner.is_empty() { String::new() } else { format!("({})", inner.join(", ")) };
-            out += &format!("  {:<24} {}{inner}: {}\n", "", choice.name, choice.meaning);
-        }
+        out += &explain_parameter(parameter);
     }
     if let Some(equation) = entry.equation {
         out += &format!("\nEquation\n  {equation}\n");

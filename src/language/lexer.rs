@@ -42,11 +42,24 @@ pub(super) struct LexicalError {
 
 /// Where the lexer stands, for the rule that units follow a number, a list or `in`.
 #[derive(Clone, Copy, PartialEq)]
-enum Before {
+pub(super) enum Before {
     Quantity,
     ForName,
     ForWord,
     Other,
+}
+
+impl Before {
+    pub(super) fn after(self, kind: &TokenKind) -> Self {
+        match (kind, self) {
+            (TokenKind::Number(_) | TokenKind::Fixed("]"), _) => Before::Quantity,
+            (TokenKind::Fixed("in"), Before::ForName) => Before::Other,
+            (TokenKind::Fixed("in"), _) => Before::Quantity,
+            (TokenKind::Fixed("for"), _) => Before::ForWord,
+            (TokenKind::Name(_), Before::ForWord) => Before::ForName,
+            _ => Before::Other,
+        }
+    }
 }
 
 /// The tokens of a text, and the innermost bracket that the text leaves open.
@@ -136,14 +149,7 @@ pub(super) fn tokens(text: &str, source: SourceId) -> Result<Lexed, LexicalError
             }
             continue;
         }
-        before = match (&kind, before) {
-            (TokenKind::Number(_) | TokenKind::Fixed("]"), _) => Before::Quantity,
-            (TokenKind::Fixed("in"), Before::ForName) => Before::Other,
-            (TokenKind::Fixed("in"), _) => Before::Quantity,
-            (TokenKind::Fixed("for"), _) => Before::ForWord,
-            (TokenKind::Name(_), Before::ForWord) => Before::ForName,
-            _ => Before::Other,
-        };
+        before = before.after(&kind);
         if kind == TokenKind::Fixed("|>") {
             // A line continues where the next begins with `|>`.
             while found.last().is_some_and(|last| last.kind == TokenKind::Newline) {
@@ -160,7 +166,7 @@ fn is_space(letter: char) -> bool {
 }
 
 /// The rest after spaces and a comment, and how many bytes those took.
-fn blank(text: &str) -> (&str, usize) {
+pub(super) fn blank(text: &str) -> (&str, usize) {
     let mut rest = text.trim_start_matches(is_space);
     if rest.starts_with('#') {
         rest = rest.find(['\n', '\r']).and_then(|end| rest.get(end..)).unwrap_or("");
@@ -168,7 +174,7 @@ fn blank(text: &str) -> (&str, usize) {
     (rest, text.len() - rest.len())
 }
 
-fn token(rest: &str, at: usize, source: SourceId) -> Result<(TokenKind, usize), LexicalError> {
+pub(super) fn token(rest: &str, at: usize, source: SourceId) -> Result<(TokenKind, usize), LexicalError> {
     let parsed = alt((
         map(alt((tag("\r\n"), tag("\n"), tag("\r"))), |_| TokenKind::Newline),
         date,
@@ -331,7 +337,7 @@ fn quoted(input: &str) -> IResult<&str, String> {
 
 /// A unit or era: `W/m2`, `kg/m^2/s`, `W*yr/m2/K`, `1/yr`, `cal BP`. A tight `/` or `*` goes on only before a
 /// letter, so that `W/m2/4` divides. The reserved words are no units.
-fn unit_text(input: &str) -> IResult<&str, &str> {
+pub(super) fn unit_text(input: &str) -> IResult<&str, &str> {
     let letter = |letter: char| letter.is_alphabetic() || matches!(letter, '°' | '%' | '‰');
     let inner = |letter: char| is_name_letter(letter) || matches!(letter, '°' | '%' | '‰');
     let power = || opt((char('^'), opt(one_of("-−")), digit1));
@@ -349,7 +355,7 @@ fn unit_text(input: &str) -> IResult<&str, &str> {
     alt((calibrated, product)).parse(input)
 }
 
-fn tidy_unit(text: &str) -> String {
+pub(super) fn tidy_unit(text: &str) -> String {
     if text.contains(is_space) { "cal BP".to_owned() } else { normal(text).replace('−', "-") }
 }
 

@@ -33,8 +33,8 @@ const STACK: usize = 512 * 1024 * 1024;
 /// run of the same cell replaces it. The outcome does not depend on the order of the cells.
 pub struct Session {
     pub(super) definitions: Definitions,
-    displays: Vec<Display>,
-    sources: BTreeMap<SourceId, Source>,
+    pub(super) displays: Vec<Display>,
+    pub(super) sources: BTreeMap<SourceId, Source>,
     /// What people call a cell, where that is not its id.
     names: BTreeMap<Arc<str>, String>,
     /// The text that each cell was last run with: what was said about it may be shown later.
@@ -49,12 +49,12 @@ pub struct Session {
 }
 
 /// One shown expression, for as long as its cell shows it.
-struct Display {
+pub(super) struct Display {
     id: u64,
-    cell: Arc<str>,
+    pub(super) cell: Arc<str>,
     text: String,
     expression: Expression,
-    node: Result<Arc<Node>, Diagnostic>,
+    pub(super) node: Result<Arc<Node>, Diagnostic>,
     /// How many nodes were made for it, also in vain.
     cost: usize,
     fingerprint: Fingerprint,
@@ -372,6 +372,32 @@ impl Session {
             format!("({}) = {}", function.parameters.join(", "), canonical(&function.body))
         };
         self.definitions.functions.iter().map(|(name, function)| (name.clone(), text(function))).collect()
+    }
+
+    /// Look at the definitions in force with an evaluator, on a thread whose stack is deep enough; nothing where
+    /// that fails.
+    pub(super) fn consult<T: Send>(
+        &self,
+        ask: impl FnOnce(&Evaluator<'_>, &Environment) -> T + Send,
+    ) -> Option<T> {
+        let graph = Graph::of(&self.definitions);
+        let consulted = std::panic::AssertUnwindSafe(|| {
+            self.threads.install(|| {
+                let evaluator = Evaluator {
+                    definitions: &self.definitions,
+                    graph: &graph,
+                    inputs: &self.inputs,
+                    memo: &self.memo,
+                    cancellation: &self.cancellation,
+                    evaluations: &self.evaluations,
+                    caches: Caches::default(),
+                };
+                let environment = environment(&evaluator);
+                prepare(&evaluator, &environment);
+                ask(&evaluator, &environment)
+            })
+        });
+        std::panic::catch_unwind(consulted).ok()
     }
 
     fn evaluate(&mut self, cell: &Arc<str>, changed: &[String], reply: &mut CellReply) {

@@ -35,6 +35,11 @@ impl Inputs {
         Self { folder, limit, seen: Mutex::default(), changed: Mutex::default() }
     }
 
+    /// The folder that files are read from.
+    pub(super) fn folder(&self) -> &Path {
+        &self.folder
+    }
+
     /// Look at every file again when it is next asked for.
     pub(super) fn look_again(&self) {
         for seen in self.seen.lock().unwrap_or_else(PoisonError::into_inner).values_mut() {

@@ -9,6 +9,7 @@
 )]
 
 mod cell;
+mod completion;
 mod context;
 mod definitions;
 mod environment;
@@ -25,5 +26,6 @@ mod settings;
 mod show;
 
 pub use cell::{CellReply, Output, Session};
+pub use completion::{Completion, CompletionKind, Completions, InForce, Inspection, Subject};
 pub use fingerprint::Fingerprint;
 pub use outside::{OUTSIDE, Standing};

@@ -36,6 +36,18 @@ impl Era {
         }
     }
 
+    /// What a number in it counts.
+    pub fn meaning(self) -> &'static str {
+        match self {
+            Era::Ce => "year of the common era",
+            Era::Bce => "year before the common era; there is no year zero",
+            Era::Ka => "thousand years before 1950",
+            Era::Ma => "million years before 1950",
+            Era::CalBp => "calendar years before 1950",
+            Era::B2k => "years before 2000",
+        }
+    }
+
     /// The era written `symbol`, if it is one.
     pub fn parse(symbol: &str) -> Option<Self> {
         Self::ALL.into_iter().find(|era| era.symbol() == symbol)

@@ -30,7 +30,7 @@ pub use shown::{Shown, ShownSeries};
 pub use spread::Spread;
 pub use table::{Cell, Column, Table};
 pub use unit::{Unit, UnitFault};
-pub use unit_table::{UNITS, UnitEntry};
+pub use unit_table::{UNITS, UnitEntry, unit_spellings};
 
 use std::sync::Arc;
 

@@ -150,6 +150,11 @@ impl Unit {
         }
     }
 
+    /// The symbols it is made of, prefixes included, in the order they were written.
+    pub fn symbols(&self) -> impl Iterator<Item = &str> {
+        self.factors.iter().map(|factor| &*factor.symbol)
+    }
+
     /// The dimension.
     pub fn dimension(&self) -> Dimension {
         self.dimension

@@ -46,6 +46,19 @@ pub(super) const PREFIXES: [(&str, i32); 14] = [
     ("f", -15),
 ];
 
+/// Every way to write one unit, with what it is and its dimension: without prefix first, then with each that it takes.
+pub fn unit_spellings() -> Vec<(String, String, Dimension)> {
+    let plain = UNITS.iter().map(|unit| (unit.symbol.to_owned(), unit.meaning.to_owned(), unit.dimension));
+    let prefixed = UNITS.iter().flat_map(|unit| {
+        PREFIXES.iter().filter(|(prefix, _)| unit.prefixes.contains(prefix)).map(|(prefix, power)| {
+            let meaning = format!("10^{power} {}, {}", unit.symbol, unit.meaning);
+            (format!("{prefix}{}", unit.symbol), meaning, unit.dimension)
+        })
+    });
+    let mut seen = std::collections::BTreeSet::new();
+    plain.chain(prefixed).filter(|(symbol, _, _)| seen.insert(symbol.clone())).collect()
+}
+
 const ALL: &str = "EPTGMkhdcmunpf";
 const LARGE: &str = "EPTGMk";
 const AGES: &str = "GMk";
