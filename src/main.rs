@@ -9,7 +9,7 @@ use std::time::{Duration, Instant};
 
 use clap::{Parser, Subcommand, ValueEnum};
 
-use rhythmite::session::Session;
+use rhythmite::session::{Output, Session};
 use rhythmite::{catalogue, notebook};
 
 /// Climate forcing time series: compose drivers, respond, attribute a record.
@@ -32,6 +32,9 @@ enum Command {
         /// Write the results there instead of printing them.
         #[arg(long)]
         out: Option<PathBuf>,
+        /// Write each series and bundle that is shown as a figure (SVG) into this folder.
+        #[arg(long, value_name = "FOLDER")]
+        figures: Option<PathBuf>,
         /// How many threads to use; all processors by default. The numbers are the same for any.
         #[arg(long)]
         threads: Option<usize>,
@@ -67,9 +70,9 @@ const WRONG_CALL: u8 = 2;
 fn main() -> ExitCode {
     let arguments = Arguments::parse();
     let code = match arguments.command {
-        Command::Run { file, format, out, threads, file_limit } => {
+        Command::Run { file, format, out, figures, threads, file_limit } => {
             let (session_limit, memory) = (file_limit.saturating_mul(1024 * 1024), 512 * 1024 * 1024);
-            run(&file, format, out.as_deref(), threads, memory, session_limit)
+            run(&file, format, out.as_deref(), figures.as_deref(), threads, memory, session_limit)
         }
         Command::Explain { name } => explain(&name),
     };
@@ -110,6 +113,7 @@ fn run(
     file: &std::path::Path,
     format: Format,
     out: Option<&std::path::Path>,
+    figures: Option<&std::path::Path>,
     threads: Option<usize>,
     memory: usize,
     file_limit: u64,
@@ -176,7 +180,27 @@ fn run(
             }
         }
     }
+    if let Some(folder) = figures
+        && let Err(error) = write_figures(folder, &reply.outputs)
+    {
+        complain(&format!("figures cannot be written into {}: {error}\n", folder.display()));
+        return WRONG_CALL;
+    }
     if failed { WRONG_PROGRAM } else { SUCCESS }
+}
+
+/// Write what is drawn of the results into a folder, which is made where there is none, and say so.
+fn write_figures(folder: &std::path::Path, outputs: &[Output]) -> std::io::Result<()> {
+    let files = notebook::figure_files(outputs);
+    std::fs::create_dir_all(folder)?;
+    for file in &files {
+        std::fs::write(folder.join(&file.name), &file.svg)?;
+        complain(&format!("wrote {}\n", folder.join(&file.name).display()));
+    }
+    if files.is_empty() {
+        complain("no series or bundle is shown, so that no figure was written\n");
+    }
+    Ok(())
 }
 
 /// A line on standard error that says how long a run has taken, on a terminal and after half a second.
