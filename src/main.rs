@@ -36,6 +36,9 @@ enum Command {
         /// A definition that wins over those of the program, such as "members = 500"; may be given more than once.
         #[arg(long, value_name = "DEFINITION")]
         define: Vec<String>,
+        /// Write each series and bundle that is shown as a figure (SVG) into this folder.
+        #[arg(long, value_name = "FOLDER")]
+        figures: Option<PathBuf>,
         /// How many threads to use; all processors by default. The numbers are the same for any.
         #[arg(long)]
         threads: Option<usize>,
@@ -76,12 +79,13 @@ const WRONG_CALL: u8 = 2;
 fn main() -> ExitCode {
     let arguments = Arguments::parse();
     let code = match arguments.command {
-        Command::Run { file, format, out, define, threads, file_limit } => {
+        Command::Run { file, format, out, define, figures, threads, file_limit } => {
             let folder = file.parent().filter(|folder| !folder.as_os_str().is_empty());
             let folder = folder.unwrap_or(Path::new(".")).to_owned();
             let limit = file_limit.saturating_mul(1024 * 1024);
             let session = Session::with_limits(folder, threads, MEMORY, limit);
-            run(session, &file, format, out.as_deref(), &define)
+            let wanted = Wanted { format, out, figures };
+            run(session, &file, &wanted, &define)
         }
         Command::Explain { name } => explain(&name),
     };
@@ -156,7 +160,15 @@ fn read(file: &Path) -> Result<Program, String> {
     Ok(Program::Script(CodeCell { index: 0, id: name.clone(), name, source }))
 }
 
-fn run(mut session: Session, file: &Path, format: Format, out: Option<&Path>, define: &[String]) -> u8 {
+/// What a run is asked for.
+struct Wanted {
+    format: Format,
+    out: Option<PathBuf>,
+    figures: Option<PathBuf>,
+}
+
+fn run(mut session: Session, file: &Path, wanted: &Wanted, define: &[String]) -> u8 {
+    let format = wanted.format;
     let program = match read(file) {
         Ok(program) => program,
         Err(why) => {
@@ -180,8 +192,9 @@ fn run(mut session: Session, file: &Path, format: Format, out: Option<&Path>, de
     progress.end();
     let printed = match (format, &program) {
         (Format::Text, _) => {
-            let colour =
-                out.is_none() && std::io::stdout().is_terminal() && std::env::var_os("NO_COLOR").is_none();
+            let colour = wanted.out.is_none()
+                && std::io::stdout().is_terminal()
+                && std::env::var_os("NO_COLOR").is_none();
             let mut report = Report::new(colour, true);
             report.add_run(&session, &ran, matches!(program, Program::Notebook(_)));
             report.take()
@@ -198,7 +211,7 @@ fn run(mut session: Session, file: &Path, format: Format, out: Option<&Path>, de
             serde_json::to_string_pretty(&json).unwrap_or_default() + "\n"
         }
     };
-    match out {
+    match &wanted.out {
         None => print(&printed),
         Some(path) => {
             if let Err(error) = std::fs::write(path, printed) {
@@ -207,7 +220,27 @@ fn run(mut session: Session, file: &Path, format: Format, out: Option<&Path>, de
             }
         }
     }
+    if let Some(folder) = &wanted.figures
+        && let Err(error) = write_figures(folder, &ran)
+    {
+        complain(&format!("figures cannot be written into {}: {error}\n", folder.display()));
+        return WRONG_CALL;
+    }
     if ran.failed() { WRONG_PROGRAM } else { SUCCESS }
+}
+
+/// Write what is drawn of the results into a folder, which is made where there is none, and say so.
+fn write_figures(folder: &Path, ran: &Run) -> std::io::Result<()> {
+    let files = notebook::figure_files(ran.cells.iter().flat_map(|(_, reply)| &reply.outputs));
+    std::fs::create_dir_all(folder)?;
+    for file in &files {
+        std::fs::write(folder.join(&file.name), &file.svg)?;
+        complain(&format!("wrote {}\n", folder.join(&file.name).display()));
+    }
+    if files.is_empty() {
+        complain("no series or bundle is shown, so that no figure was written\n");
+    }
+    Ok(())
 }
 
 /// A line on standard error that says how long a run has taken, on a terminal and after half a second.

@@ -1,9 +1,17 @@
-//! Values and diagnostics as text for people.
+//! Values and diagnostics as text for people, and figures as SVG.
 
+mod chart;
 mod diagnostic;
+mod lettering;
+mod markup;
 mod number;
+mod svg;
 mod text;
+mod thinning;
+mod ticks;
 
+pub use chart::{Caption, chart};
 pub use diagnostic::{diagnostic, problem_line};
 pub use number::{plain, with_range};
+pub use svg::svg;
 pub use text::{line, table, text};

@@ -1,11 +1,13 @@
 //! Programs in and results out: scripts and notebook files, as text, as one JSON object, or as the notebook with its
 //! outputs.
 
+mod figures;
 mod ipynb;
 mod json;
 mod report;
 mod run;
 
+pub use figures::{FigureFile, figure_files};
 pub use ipynb::{Notebook, Unreadable};
 pub use json::run_to_json;
 pub use report::Report;

@@ -208,7 +208,7 @@ pub fn instant_of_date(year: i64, month: u32, day: u32) -> Result<Instant, Fault
 }
 
 /// The date of a decimal year, to the nearest day.
-pub(super) fn date_label(year: f64) -> String {
+pub(crate) fn date_label(year: f64) -> String {
     let whole = (year + 1e-6).floor();
     let length = if is_leap(whole as i64) { 366.0 } else { 365.0 };
     let mut day = ((year - whole) * length).round().max(0.0) as u32;

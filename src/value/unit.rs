@@ -192,6 +192,33 @@ impl Unit {
         Ok(if power >= 0 { ratio * 10f64.powi(power) } else { ratio / 10f64.powi(-power) })
     }
 
+    /// The unit as it is printed beside an axis: `W m⁻²`, `°C`, `‰`; nothing for a plain number.
+    pub fn typeset(&self) -> String {
+        let superscript = |digit: char| match digit {
+            '-' => '⁻',
+            '0' => '⁰',
+            '1' => '¹',
+            '2' => '²',
+            '3' => '³',
+            digit => digit.to_digit(10).and_then(|digit| char::from_u32(0x2070 + digit)).unwrap_or(digit),
+        };
+        let word = |factor: &Factor| {
+            let symbol = match &*factor.symbol {
+                "degC" => "°C".to_owned(),
+                "deg" => "°".to_owned(),
+                "percent" => "%".to_owned(),
+                "permil" => "‰".to_owned(),
+                "spots_v1" => "sunspot number, version 1".to_owned(),
+                "spots_v2" => "sunspot number, version 2".to_owned(),
+                micro if micro.len() > 1 && micro.starts_with('u') => micro.replacen('u', "µ", 1),
+                other => other.to_owned(),
+            };
+            let exponent = if factor.exponent == 1 { String::new() } else { factor.exponent.to_string() };
+            symbol + &exponent.chars().map(superscript).collect::<String>()
+        };
+        self.factors.iter().map(word).collect::<Vec<_>>().join(" ")
+    }
+
     fn mismatch(&self, target: &Self) -> Fault {
         let sunspots = [Dimension::SPOTS_V1, Dimension::SPOTS_V2];
         let names = [self.to_string(), target.to_string()];
@@ -325,6 +352,14 @@ mod tests {
         assert_eq!(Unit::parse("years").unwrap_err().near.as_deref(), Some("yr"));
         assert_eq!(Unit::parse("W/m2/celsius").unwrap_err().near.as_deref(), Some("degC"));
         assert_eq!(Unit::parse("T").unwrap_err(), UnitFault { word: "T".into(), near: Some("t".into()) });
+    }
+
+    #[test]
+    fn beside_an_axis_exponents_are_raised() {
+        assert_eq!(unit("W/m2").typeset(), "W m⁻²");
+        assert_eq!(unit("W*yr/m2/degC").typeset(), "W yr m⁻² °C⁻¹");
+        assert_eq!(unit("um").typeset(), "µm");
+        assert_eq!(Unit::number().typeset(), "");
     }
 
     #[test]
