@@ -11,9 +11,11 @@
 mod catalogue_examples;
 mod certified_science;
 mod command_line;
+mod events;
 mod grammar;
 mod layers;
 mod readme;
 mod real_record;
+mod rough_files;
 mod session;
 mod suite;
