@@ -419,7 +419,10 @@ fn expected_words(parameter: &Parameter) -> String {
     let mut words: Vec<String> = parameter
         .accepts
         .iter()
-        .map(|kind| format!("{} {kind}", if kind.starts_with(['a', 'i']) { "an" } else { "a" }))
+        .map(|kind| match *kind {
+            "events" => "events".to_owned(),
+            kind => format!("{} {kind}", if kind.starts_with(['a', 'i']) { "an" } else { "a" }),
+        })
         .collect();
     words.extend(parameter.choices.iter().map(|choice| format!("`{}`", choice.name)));
     let unit =

@@ -24,6 +24,7 @@ mod response;
 mod seasons;
 mod shapes;
 mod showing;
+mod tables;
 mod time;
 
 pub use call::{Call, Context, Given, InputFile, Path, Stop, What, check_arguments};
@@ -35,6 +36,7 @@ const FAMILIES: &[&[&Entry]] = &[
     operators::FAMILY,
     time::FAMILY,
     reading::FAMILY,
+    tables::FAMILY,
     shapes::FAMILY,
     algebra::FAMILY,
     filters::FAMILY,

@@ -42,7 +42,7 @@ static LOAD: Entry = Entry {
                 .in_unit("yr"),
         ],
     },
-    result: "a series on the file's own axis, in the file's unit",
+    result: "a series on the file's own axis, in the file's unit; a row a year with a column for each month is read as months",
     gaps: "Empty cells, NaN and infinities are gaps and are counted in a note; other oddities are errors with line and column.",
     shows: &[
         Shows { program: "load(\"spots.csv\")", gives: "6 steps, 1850 CE to 1855 CE: first 66, last 7 spots_v2" },
@@ -87,14 +87,7 @@ fn load(call: &Call<'_>) -> Result<Value, Stop> {
     }
     .map_err(|fault| placed_in_file(&path, fault))?;
     let unit = file_unit(call, read.unit_text.as_deref(), &path)?;
-    let era = match read.era {
-        ReadEra::CommonEra => Era::Ce,
-        ReadEra::BeforeCommonEra => Era::Bce,
-        ReadEra::Ka => Era::Ka,
-        ReadEra::Ma => Era::Ma,
-        ReadEra::CalBp => Era::CalBp,
-        ReadEra::B2k => Era::B2k,
-    };
+    let era = era_of(read.era);
     let axis = match read.form {
         AxisForm::Steps => Axis::steps(read.starts, read.ends, era),
         AxisForm::Instants => Axis::instants(read.starts, era),
@@ -115,6 +108,18 @@ fn load(call: &Call<'_>) -> Result<Value, Stop> {
         series.longest_gap_years = call.certain("longest_gap")?;
     }
     Ok(Value::Series(series))
+}
+
+/// The era in which times are shown that a file counts so.
+pub(super) fn era_of(era: ReadEra) -> Era {
+    match era {
+        ReadEra::CommonEra => Era::Ce,
+        ReadEra::BeforeCommonEra => Era::Bce,
+        ReadEra::Ka => Era::Ka,
+        ReadEra::Ma => Era::Ma,
+        ReadEra::CalBp => Era::CalBp,
+        ReadEra::B2k => Era::B2k,
+    }
 }
 
 /// What a file gave, one member or several.
@@ -165,25 +170,32 @@ fn ensemble_rows(members: &[Vec<f64>], path: Path) -> Block {
     }
 }
 
-fn placed_in_file(path: &str, fault: FileFault) -> Fault {
+pub(super) fn placed_in_file(path: &str, fault: FileFault) -> Fault {
     let place = fault.place.as_ref().map(|place| format!(", {place}")).unwrap_or_default();
     let mut placed = Fault::new(fault.code, format!("{path}{place}: {}", fault.message)).blame("file");
     placed.help = fault.help;
     placed
 }
 
+/// The unit that the call says, if it does.
+pub(super) fn given_unit(call: &Call<'_>) -> Result<Option<Unit>, Stop> {
+    let Some(text) = call.text("unit")? else { return Ok(None) };
+    let unit = Unit::parse(&text).map_err(|fault| {
+        let near = fault.near.map(|near| format!("did you mean `{near}`?"));
+        let fault = Fault::new("unknown-unit", format!("`{}` is no unit", fault.word)).blame("unit");
+        match near {
+            Some(near) => fault.help(near),
+            None => {
+                fault.help("units are written such as \"W/m2\", \"ppm\", \"degC\"; \"1\" is a plain number")
+            }
+        }
+    })?;
+    Ok(Some(unit))
+}
+
 /// The unit that the call says, else the one that the file says, else none, with a note.
 fn file_unit(call: &Call<'_>, in_file: Option<&str>, path: &str) -> Result<Unit, Stop> {
-    if let Some(text) = call.text("unit")? {
-        let unit = Unit::parse(&text).map_err(|fault| {
-            let near = fault.near.map(|near| format!("did you mean `{near}`?"));
-            let fault = Fault::new("unknown-unit", format!("`{}` is no unit", fault.word)).blame("unit");
-            match near {
-                Some(near) => fault.help(near),
-                None => fault
-                    .help("units are written such as \"W/m2\", \"ppm\", \"degC\"; \"1\" is a plain number"),
-            }
-        })?;
+    if let Some(unit) = given_unit(call)? {
         if let Some(other) =
             in_file.and_then(|text| Unit::parse_header(text).ok()).filter(|other| *other != unit)
         {
@@ -211,7 +223,7 @@ fn file_unit(call: &Call<'_>, in_file: Option<&str>, path: &str) -> Result<Unit,
 
 /// What a loaded or hand-made number measures: nobody has said whether a temperature is absolute, or of which
 /// kind a forcing is.
-fn loaded_measure(unit: Unit) -> Measure {
+pub(super) fn loaded_measure(unit: Unit) -> Measure {
     let reading =
         if unit.dimension() == Dimension::TEMPERATURE { Reading::Undeclared } else { Reading::Difference };
     Measure { reading, ..made_measure(unit) }

@@ -9,7 +9,7 @@ use super::onto::counted;
 use super::time::series_or_bundle;
 use crate::base::Fault;
 use crate::language::{MONTHS, Parameter, Signature};
-use crate::value::{Axis, Era, Series, Standing};
+use crate::value::{Axis, Era, Series, Standing, instant_of_date};
 
 static SEASON: Entry = Entry {
     name: "season",
@@ -40,6 +40,7 @@ static SEASON: Entry = Entry {
             says: "August",
         },
     ],
+    revision: 2,
     search: &["winter", "summer", "djf", "jja", "monsoon", "seasonal"],
     shape: |call| call.shape("series"),
     body: Body::PerMember(|call| {
@@ -70,6 +71,7 @@ static YEARLY: Entry = Entry {
         code: "unknown-choice",
         says: "no month",
     }],
+    revision: 2,
     search: &["hydrological year", "water year", "annual mean"],
     shape: |call| call.shape("series"),
     body: Body::PerMember(|call| {
@@ -113,18 +115,29 @@ fn stretch(
     }
     // Only stretches that the record touches on both sides can be complete; those it cuts are named as incomplete.
     let offset = first as f64 / 12.0;
-    let years = (begin - offset - length).ceil() as i64..=(end - offset).floor() as i64;
+    // Months of monthly values are twelfths of a year. Days know their months: June begins with its first day.
+    let by_days = series.axis.median_step() < LONGEST_OF_DAYS_YEARS;
+    let years = (begin - offset - length).floor() as i64..=(end - offset).ceil() as i64;
     let targets: Vec<(f64, f64)> = years
-        .map(|year| (year as f64 + offset, year as f64 + offset + length))
+        .map(|year| {
+            let from = year as f64 + offset;
+            if by_days {
+                (month_start(year, first), month_start(year, first + months))
+            } else {
+                (from, from + length)
+            }
+        })
         .filter(|(from, to)| *to > begin + 1e-6 && *from < end - 1e-6)
         .collect();
-    let mut incomplete: Vec<f64> = Vec::new();
+    // In decimal years a day is shorter in a leap year; all days count the same.
+    let scale = |year: f64| if by_days { day_number(year) } else { year };
+    let on_scale = |years: &[f64]| years.iter().map(|year| scale(*year)).collect::<Vec<_>>();
+    let (cell_starts, cell_ends) = (on_scale(&starts), on_scale(&ends));
+    let mean =
+        |row: &[f64], (from, to): &(f64, f64)| mean(&cell_starts, &cell_ends, row, scale(*from), scale(*to));
     let nominal = series.values.member(0);
-    for (from, to) in &targets {
-        if mean(&starts, &ends, nominal, *from, *to).is_none() {
-            incomplete.push(*to);
-        }
-    }
+    let incomplete: Vec<f64> =
+        targets.iter().filter(|target| mean(nominal, target).is_none()).map(|(_, to)| *to).collect();
     let whole: Vec<&(f64, f64)> =
         targets.iter().filter(|(from, to)| *from > begin - 1e-6 && *to < end + 1e-6).collect();
     if whole.is_empty() {
@@ -143,14 +156,15 @@ fn stretch(
         ));
     }
     let values = series.values.map_rows(whole.len(), |row, out| {
-        for (target, (from, to)) in out.iter_mut().zip(&whole) {
-            *target = mean(&starts, &ends, row, *from, *to).unwrap_or(f64::NAN);
+        for (value, target) in out.iter_mut().zip(&whole) {
+            *value = mean(row, target).unwrap_or(f64::NAN);
         }
     });
     if call.context.path() == Path::Nominal {
         let last = (first + months - 1) % 12;
         let (from, to) = (MONTHS.get(first).unwrap_or(&""), MONTHS.get(last).unwrap_or(&""));
-        call.context.note(format!("{name}: means from {from} to {to}, months weighted by their length"));
+        let months = if by_days { "of the calendar" } else { "each counting the same" };
+        call.context.note(format!("{name}: means from {from} to {to}, months {months}"));
     }
     let axis = Axis::steps(
         whole.iter().map(|(from, _)| *from).collect(),
@@ -162,6 +176,26 @@ fn stretch(
     // The other months of a year are no gap in the record.
     means.longest_gap_years = 3.0;
     Ok(means)
+}
+
+/// Values closer than this are taken to stand on days of the calendar rather than on months.
+const LONGEST_OF_DAYS_YEARS: f64 = 0.05;
+
+/// The decimal year at which a month begins; `month` counts from 0 for January of `year` and may run past it.
+fn month_start(year: i64, month: usize) -> f64 {
+    let (later, month) = ((month / 12) as i64, month % 12);
+    let date = instant_of_date(year + later, month as u32 + 1, 1);
+    date.map_or(f64::NAN, |date| date.year())
+}
+
+/// The days from the beginning of year 0 to a decimal year.
+fn day_number(year: f64) -> f64 {
+    let whole = (year + 1e-9).floor();
+    let before = |year: i64| {
+        365 * year + (year - 1).div_euclid(4) - (year - 1).div_euclid(100) + (year - 1).div_euclid(400)
+    };
+    let (first, next) = (before(whole as i64), before(whole as i64 + 1));
+    first as f64 + (year - whole) * (next - first) as f64
 }
 
 /// The mean over `from..to`; none unless values cover all of it.

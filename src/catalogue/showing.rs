@@ -18,7 +18,7 @@ static TABLE: Entry = Entry {
         parameters: &[
             Parameter::required(
                 "value",
-                &["attribution", "series", "bundle", "model", "quantity"],
+                &["attribution", "series", "bundle", "model", "quantity", "events"],
                 "what to show",
             ),
             Parameter::optional(
@@ -93,6 +93,7 @@ fn table(call: &Call<'_>) -> Result<Table, Stop> {
             Ok(Table { title: label.to_string(), rows: time_rows(&sum, &values), columns, notes: Vec::new() })
         }
         Value::Model(model) => Ok(model.table(&[])),
+        Value::Events(events) => Ok(events.table()),
         Value::Quantity(quantity) => {
             let mut columns = vec![Column::in_unit("value", &quantity.measure.unit)];
             let mut row = vec![Cell::number(quantity.first())];

@@ -1,6 +1,6 @@
 use super::number::{plain, rounded, significant, with_range};
 use crate::value::{
-    Attribution, Axis, Cell, Era, ForcingKind, Measure, Shown, ShownSeries, Spread, Table, Unit,
+    Attribution, Axis, Cell, Era, Events, ForcingKind, Measure, Shown, ShownSeries, Spread, Table, Unit,
 };
 
 /// The one line of text under an output: the numbers a person wants first.
@@ -30,6 +30,7 @@ pub fn line(shown: &Shown) -> String {
             format!("two-layer model: {}", parameters.join(", "))
         }
         Shown::Attribution(attribution) => attribution_line(attribution),
+        Shown::Events(events) => events_line(events),
         Shown::Table(table) => {
             let columns: Vec<String> = table.columns.iter().map(heading).collect();
             let word = if table.rows.len() == 1 { "row" } else { "rows" };
@@ -46,6 +47,7 @@ pub fn line(shown: &Shown) -> String {
 pub fn text(shown: &Shown) -> String {
     match shown {
         Shown::Attribution(attribution) => table(&attribution.table()) + &diagnostics(attribution),
+        Shown::Events(events) => table(&events.table()),
         Shown::Table(content) => table(content),
         Shown::Bundle { components, total } => {
             let width = components.iter().map(|(label, _)| label.chars().count()).max().unwrap_or(0).max(5);
@@ -157,6 +159,26 @@ fn extremes(series: &ShownSeries) -> String {
         ),
         _ => String::new(),
     }
+}
+
+fn events_line(events: &Events) -> String {
+    let axis = events.axis();
+    let word = if axis.len() == 1 { "event" } else { "events" };
+    let mut words = format!("{} {word}", axis.len());
+    if let Some(last) = axis.len().checked_sub(1) {
+        words += &format!(", {} to {}", axis.label(0), axis.label(last));
+    }
+    if let Some(sizes) = &events.sizes {
+        let known = || sizes.values.iter().copied().filter(|value| !value.is_nan());
+        let (low, high) = (known().fold(f64::INFINITY, f64::min), known().fold(f64::NEG_INFINITY, f64::max));
+        let unit = after(&sizes.measure.unit);
+        words += &if low <= high {
+            format!("; {} {} to {}{unit}", sizes.name, plain(low), plain(high))
+        } else {
+            format!("; {} not known", sizes.name)
+        };
+    }
+    words
 }
 
 fn attribution_line(attribution: &Attribution) -> String {

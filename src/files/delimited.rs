@@ -40,6 +40,17 @@ pub struct TextColumn {
     offset: usize,
 }
 
+impl TextColumn {
+    /// A column by its name and unit alone, apart from any table.
+    pub(super) fn headed(name: &str, unit_text: Option<&str>) -> Self {
+        let header = match unit_text {
+            Some(unit) => format!("{name} ({unit})"),
+            None => name.to_owned(),
+        };
+        Self { name: name.to_owned(), unit_text: unit_text.map(str::to_owned), header, offset: 0 }
+    }
+}
+
 impl DelimitedTable {
     /// How many rows of data there are.
     #[must_use]
@@ -56,10 +67,12 @@ impl DelimitedTable {
     /// The text of one cell, `""` when there is no such cell. `column` counts in `columns`.
     #[must_use]
     pub fn cell(&self, row: usize, column: usize) -> &str {
-        let Some(head) = self.columns.get(column) else {
-            return "";
-        };
-        let index = row * self.row_width + head.offset;
+        self.columns.get(column).map_or("", |head| self.cell_at(row, head.offset))
+    }
+
+    /// The text of one cell by its place in the row.
+    fn cell_at(&self, row: usize, offset: usize) -> &str {
+        let index = row * self.row_width + offset;
         let start = match index.checked_sub(1) {
             Some(before) => self.cell_ends.get(before).copied(),
             None => Some(0),
@@ -214,6 +227,9 @@ pub fn read_table(bytes: &[u8], options: &DelimitedOptions) -> Result<DelimitedT
         )
         .at_line(first_line));
     }
+    if let Some(fault) = second_header(&table) {
+        return Err(fault);
+    }
     if comments_inside.0 > 0 {
         table.notes.push(format!(
             "{} among the data rows skipped (first in line {})",
@@ -324,15 +340,34 @@ impl RowReader<'_> {
     }
 }
 
+fn is_number_or_date(cell: &str) -> bool {
+    let plain = cell.replace('−', "-").replace(',', ".");
+    let starts_as_number = plain.starts_with(|c: char| c.is_ascii_digit() || "+-.".contains(c));
+    starts_as_number && (plain.parse::<f64>().is_ok() || super::calendar::parse_date(&plain).is_some())
+}
+
+/// A first row of words alone above rows with numbers is a second line of names, or a line of units.
+fn second_header(table: &DelimitedTable) -> Option<FileFault> {
+    let cells = |row: usize| (0..table.row_width).map(move |offset| table.cell_at(row, offset));
+    let words: Vec<&str> = cells(0).filter(|cell| !super::numbers::is_missing_marker(cell)).collect();
+    let only_words = !words.is_empty() && !cells(0).any(is_number_or_date);
+    // Where later rows begin with words too, words are what the column holds.
+    let numbers_below =
+        table.row_count() > 1 && table.has_header && cells(1).next().is_some_and(is_number_or_date);
+    (only_words && numbers_below).then(|| {
+        FileFault::new(
+            "file-two-headers",
+            format!("the line below the column names holds no number: {}", quoted_names(words)),
+        )
+        .help("units go into the names, as in `co2 (ppm)`; take the line out, or begin it with #")
+        .at_line(table.line_of_row(0))
+    })
+}
+
 /// A first row is data when each cell is a number, a date or a gap, and not all are gaps.
 fn looks_like_data(cells: &[String]) -> bool {
-    let is_number = |cell: &String| {
-        let plain = cell.replace('−', "-").replace(',', ".");
-        let starts_as_number = plain.starts_with(|c: char| c.is_ascii_digit() || "+-.".contains(c));
-        starts_as_number && (plain.parse::<f64>().is_ok() || super::calendar::parse_date(&plain).is_some())
-    };
-    cells.iter().any(is_number)
-        && cells.iter().all(|cell| is_number(cell) || super::numbers::is_missing_marker(cell))
+    cells.iter().any(|cell| is_number_or_date(cell))
+        && cells.iter().all(|cell| is_number_or_date(cell) || super::numbers::is_missing_marker(cell))
 }
 
 fn columns_from(first: &[String], has_header: bool) -> Vec<TextColumn> {
@@ -382,7 +417,10 @@ fn row_length_fault(table: &DelimitedTable, rows: &RowReader<'_>, line: usize, d
         format!("the row has {}, {than} {expected}", counted(found, "field")),
     )
     .at_line(line);
-    if newlines(rows.row_text().trim_end()) > 0 {
+    let first_header = table.columns.first().map_or("", |head| head.header.as_str());
+    if first_header.starts_with(['%', '!', '/', ';', '*']) {
+        fault.help(format!("`{first_header}` was taken for the column names: comment lines begin with #"))
+    } else if newlines(rows.row_text().trim_end()) > 0 {
         fault.help("a quotation mark is opened in this line and not closed in it")
     } else if delimiter == b',' && found > expected {
         fault.help(

@@ -6,12 +6,15 @@
 //! Reading goes through four rooms, each using only those before it: `text_layout` and `delimited`
 //! (bytes to cells), `numbers` (cells to numbers and gaps), `time_column`, `time_stamps`,
 //! `time_grid` and `time_axis` (which columns tell the time, and what steps or instants they mean),
-//! `series` (the whole).
+//! `month_layout` (a row a year, a column a month), `series` and
+//! `whole_table` (the whole), `event_times` (columns of a table to the times of events).
 
 mod calendar;
 mod delimited;
 #[cfg(test)]
 mod delimited_tests;
+mod event_times;
+mod month_layout;
 mod numbers;
 mod series;
 #[cfg(test)]
@@ -25,12 +28,15 @@ mod time_grid;
 mod time_stamps;
 #[cfg(test)]
 mod whole_file_tests;
+mod whole_table;
 
 pub use delimited::{DelimitedOptions, DelimitedTable, TextColumn, read_table};
+pub use event_times::{EventColumns, EventTimes, TimeCell, TimeRole, event_times, time_role};
 pub use numbers::{NumberColumn, NumberOptions};
 pub use series::{ReadEnsemble, ReadSeries, SeriesOptions, read_ensemble, read_series};
 pub use time_axis::AxisForm;
 pub use time_column::ReadEra;
+pub use whole_table::{ReadCells, ReadColumn, ReadTable, read_whole_table};
 
 use std::fmt;
 

@@ -73,14 +73,28 @@ impl DelimitedTable {
     /// `file-not-a-number` with line and column, naming what was found and, where it looks like a
     /// missing marker, how to say so; `file-no-values` when nothing but gaps was found.
     pub fn numbers(&self, column: usize, options: &NumberOptions) -> Result<NumberColumn, FileFault> {
+        let name = self.columns.get(column).map_or("", |head| head.name.as_str());
+        self.numbers_in(name, (0..self.row_count()).map(|row| (row, column)), options)
+    }
+
+    /// Reads cells, each by its row and column, as the numbers of what is called `name`.
+    ///
+    /// # Errors
+    /// As [`DelimitedTable::numbers`].
+    pub(super) fn numbers_in(
+        &self,
+        name: &str,
+        cells: impl ExactSizeIterator<Item = (usize, usize)>,
+        options: &NumberOptions,
+    ) -> Result<NumberColumn, FileFault> {
         let missing_numbers: Vec<f64> = options
             .missing
             .iter()
             .filter_map(|marker| parse_number(marker.trim(), options.decimal_comma))
             .collect();
         let mut gaps: Vec<GapKind> = Vec::new();
-        let mut values = Vec::with_capacity(self.row_count());
-        for row in 0..self.row_count() {
+        let mut values = Vec::with_capacity(cells.len());
+        for (row, column) in cells {
             let cell = self.cell(row, column);
             let said_missing = || options.missing.iter().any(|marker| marker.trim() == cell);
             let value = match parse_number(cell, options.decimal_comma) {
@@ -107,7 +121,6 @@ impl DelimitedTable {
                 }
             }
         }
-        let name = self.columns.get(column).map_or("", |head| head.name.as_str());
         let gap_count: usize = gaps.iter().map(|kind| kind.count).sum();
         if gap_count == values.len() {
             return Err(FileFault::new(

@@ -1,9 +1,10 @@
 //! Bytes to a series: times, values, unit text, and the notes that say how they were read.
 
 use super::delimited::{DelimitedOptions, DelimitedTable, read_table};
+use super::month_layout::MonthLayout;
 use super::numbers::NumberOptions;
 use super::time_axis::{Axis, AxisForm, axis_from};
-use super::time_column::{ReadEra, TimeColumns, choose_time};
+use super::time_column::{ReadEra, TimeChoice, TimeColumns, choose_time};
 use super::time_stamps::read_stamps;
 use super::{FileFault, quoted_names};
 
@@ -73,7 +74,15 @@ pub struct ReadEnsemble {
 /// # Errors
 /// Whatever is wrong with the file, at its line and column: encoding, shape, times, values, names.
 pub fn read_series(bytes: &[u8], options: &SeriesOptions) -> Result<ReadSeries, FileFault> {
-    let read = read_columns(bytes, options, value_column)?;
+    let opened = Opened::new(bytes, options)?;
+    let layout = match &options.value {
+        None => MonthLayout::find(&opened.table, opened.time.columns, &opened.candidates()),
+        Some(_) => None,
+    };
+    let read = match layout {
+        Some(layout) => read_month_columns(opened, &layout, options)?,
+        None => read_columns(opened, options, value_column)?,
+    };
     let value_name = read.member_names.into_iter().next().unwrap_or_default();
     Ok(ReadSeries {
         form: read.form,
@@ -98,7 +107,7 @@ pub fn read_ensemble(
     members: &str,
     options: &SeriesOptions,
 ) -> Result<ReadEnsemble, FileFault> {
-    read_columns(bytes, options, |table, candidates, _, _| {
+    read_columns(Opened::new(bytes, options)?, options, |table, candidates, _, _| {
         let chosen: Vec<usize> = candidates
             .iter()
             .copied()
@@ -118,18 +127,77 @@ pub fn read_ensemble(
 /// The columns of values, in file order.
 type Chosen = Result<Vec<usize>, FileFault>;
 
+/// A file taken apart into cells, with its time columns chosen.
+struct Opened {
+    table: DelimitedTable,
+    time: TimeChoice,
+    notes: Vec<String>,
+}
+
+impl Opened {
+    fn new(bytes: &[u8], options: &SeriesOptions) -> Result<Self, FileFault> {
+        let table = read_table(bytes, &DelimitedOptions { decimal_comma: options.decimal_comma })?;
+        let time = choose_time(&table, options.time.as_deref())?;
+        let notes = table.notes.iter().chain(&time.notes).cloned().collect();
+        Ok(Self { table, time, notes })
+    }
+
+    /// The columns that tell no time; those without a single cell only where there are no others.
+    fn candidates(&self) -> Vec<usize> {
+        let table = &self.table;
+        let others = (0..table.columns.len()).filter(|column| !self.time.time_like.contains(column));
+        let (filled, empty): (Vec<usize>, Vec<usize>) =
+            others.partition(|&column| (0..table.row_count()).any(|row| !table.cell(row, column).is_empty()));
+        if filled.is_empty() { empty } else { filled }
+    }
+
+    /// The columns that hold nothing, in words.
+    fn empty_columns(&self, candidates: &[usize]) -> Option<String> {
+        let columns = (0..self.table.columns.len())
+            .filter(|column| !self.time.time_like.contains(column) && !candidates.contains(column));
+        let names = quoted_names(columns.map(|column| self.table.columns[column].header.as_str()));
+        (!names.is_empty()).then(|| format!("no row has anything in {names}, which is not read"))
+    }
+}
+
+/// A row a year with a column for each month, as one series of months.
+fn read_month_columns(
+    opened: Opened,
+    layout: &MonthLayout,
+    options: &SeriesOptions,
+) -> Result<ReadEnsemble, FileFault> {
+    let Opened { table, time, mut notes } = opened;
+    let unit_text = unit_of(&table, &layout.months, true, &mut notes)?;
+    notes.push(layout.note(&table));
+    let number_options =
+        NumberOptions { missing: options.missing.clone(), decimal_comma: options.decimal_comma };
+    let unfolded = layout.unfold(&table, time.columns, &number_options)?;
+    let axis = axis_from(unfolded.stamps, &table.columns[layout.year].header, options.form)?;
+    notes.extend(axis.notes.iter().cloned());
+    notes.extend(unfolded.numbers.notes);
+    Ok(ReadEnsemble {
+        values: vec![on_axis(&axis, &unfolded.numbers.values)],
+        form: axis.form,
+        starts: axis.starts,
+        ends: axis.ends,
+        member_names: vec!["value".to_owned()],
+        unit_text,
+        era: ReadEra::CommonEra,
+        comments: table.comments,
+        notes,
+    })
+}
+
 fn read_columns(
-    bytes: &[u8],
+    opened: Opened,
     options: &SeriesOptions,
     choose: impl Fn(&DelimitedTable, &[usize], &SeriesOptions, &mut Vec<String>) -> Chosen,
 ) -> Result<ReadEnsemble, FileFault> {
     let decimal_comma = options.decimal_comma;
-    let table = read_table(bytes, &DelimitedOptions { decimal_comma })?;
-    let mut notes = table.notes.clone();
-    let time = choose_time(&table, options.time.as_deref())?;
-    notes.extend(time.notes);
-    let candidates: Vec<usize> =
-        (0..table.columns.len()).filter(|column| !time.time_like.contains(column)).collect();
+    let candidates = opened.candidates();
+    let empty = opened.empty_columns(&candidates);
+    let Opened { table, time, mut notes } = opened;
+    notes.extend(empty);
     let chosen = choose(&table, &candidates, options, &mut notes)?;
     let unit_text = unit_of(&table, &chosen, candidates.len() == chosen.len(), &mut notes)?;
     let (era, time_name) = match time.columns {
@@ -198,6 +266,12 @@ fn value_column(
                 let list = headers(table, several);
                 notes.push(format!("`value` is taken of the columns {list}"));
                 return Ok(vec![**column]);
+            }
+            let header = |column: usize| table.columns[column].header.as_str();
+            if let Some(twice) = several.iter().find(|&&column| {
+                several.iter().any(|&other| other < column && header(other) == header(column))
+            }) {
+                table.column_named(header(*twice))?;
             }
             // A column with a unit is the likelier example.
             let example = several

@@ -252,12 +252,12 @@ impl Builder<'_> {
         } else {
             let first = axis.rows.iter().position(Option::is_none).unwrap_or(0);
             let first_missing = label(grid, indices[0] + i64::try_from(first).unwrap_or(0));
-            format!(
-                "{}: {stamped}{} {step}s of which {filled} have no row (first {first_missing}) and \
-                 become gaps, {decision}",
-                self.name,
-                axis.rows.len()
-            )
+            let become_gaps = if filled == 1 {
+                format!("1 has no row ({first_missing}) and becomes a gap")
+            } else {
+                format!("{filled} have no row (first {first_missing}) and become gaps")
+            };
+            format!("{}: {stamped}{} {step}s of which {become_gaps}, {decision}", self.name, axis.rows.len())
         });
         axis
     }

@@ -105,7 +105,7 @@ fn decimals_at_mid_month_are_months_and_missing_ones_gaps() {
     let series = read("year", &["1958.21", "1958.29", "1958.38", "1958.54", "1958.62"]);
     assert_eq!(gaps(&series), [3]);
     close(&[series.starts[0], series.ends[5]], &[1958.0 + 2.0 / 12.0, 1958.0 + 8.0 / 12.0]);
-    noted(&series, "6 months of which 1 have no row (first 1958-06)");
+    noted(&series, "6 months of which 1 has no row (1958-06) and becomes a gap");
     let fine = read("year", &["1850.042", "1850.125", "1850.208", "1850.292"]);
     assert!(gaps(&fine).is_empty());
     close(&[fine.starts[0], fine.ends[3]], &[1850.0, 1850.0 + 4.0 / 12.0]);
@@ -231,7 +231,7 @@ fn daily_dates_are_days_and_other_dates_instants() {
         &days.starts,
         &[2015.0 + 363.0 / 365.0, 2015.0 + 364.0 / 365.0, 2016.0, 2016.0 + 1.0 / 366.0, 2016.0 + 2.0 / 366.0],
     );
-    noted(&days, "first 2016-01-02");
+    noted(&days, "1 has no row (2016-01-02)");
     let other = read("date", &["2015-06-15", "2015-06-22", "2015-09-03"]);
     assert_eq!(other.form, AxisForm::Instants);
     // 15 June is day 166 of a common year.

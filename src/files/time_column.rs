@@ -150,6 +150,45 @@ fn used(columns: TimeColumns) -> [Option<usize>; 3] {
     }
 }
 
+/// What one column by itself tells about time.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum HeaderTime {
+    Calendar(ReadEra),
+    /// `datum_year − age · 10^unit_exponent`.
+    Age {
+        era: ReadEra,
+        datum_year: i32,
+        unit_exponent: i32,
+    },
+    Month,
+    Day,
+    Other,
+}
+
+/// What a column named so tells about time; `asked_for` where it was named as the time, whatever its name.
+///
+/// # Errors
+/// An age whose unit is missing, unknown or plain BP; a calendar that is not known.
+pub(super) fn time_of_header(
+    name: &str,
+    unit_text: Option<&str>,
+    asked_for: bool,
+) -> Result<HeaderTime, FileFault> {
+    let column = TextColumn::headed(name, unit_text);
+    let by_name = role_of(&column);
+    let role = if asked_for && by_name == Role::Other { role_when_asked_for(&column) } else { by_name };
+    match role {
+        Role::Calendar(era) => Ok(HeaderTime::Calendar(era)),
+        Role::Age(AgeScale { era, datum_year, unit_exponent }) => {
+            Ok(HeaderTime::Age { era, datum_year, unit_exponent })
+        }
+        Role::Month => Ok(HeaderTime::Month),
+        Role::Day => Ok(HeaderTime::Day),
+        Role::BadTime(reason) => Err(bad_time(&column.header, &reason)),
+        Role::Top(_) | Role::Bottom(_) | Role::Other => Ok(HeaderTime::Other),
+    }
+}
+
 /// The column to begin with when none was named: a date before a year, a decimal year before other
 /// calendars unless a `month` column stands by, then layers, then ages.
 fn find_first(table: &DelimitedTable, roles: &[Role]) -> Result<usize, FileFault> {

@@ -176,6 +176,7 @@ fn month_and_day(day_number: i64) -> (i64, i64, i64) {
 
 pub(super) fn label(grid: Grid, index: i64) -> String {
     match grid {
+        Grid::PartsOfYear(1) if index < 1 => format!("{} BCE", 1 - index),
         Grid::PartsOfYear(1) => index.to_string(),
         Grid::PartsOfYear(12) => {
             format!("{:04}-{:02}", index.div_euclid(12), index.rem_euclid(12) + 1)

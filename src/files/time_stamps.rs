@@ -271,7 +271,8 @@ impl CellReader<'_> {
             let cell = table.cell(row, column);
             let year = self.number(row, column).map_err(|fault| {
                 let numeric = cell.starts_with(|c: char| c.is_ascii_digit());
-                if numeric && cell.contains(['/', '-', '.']) { fault.help(DATE_HELP) } else { fault }
+                let date_like = !numeric || cell.contains(['/', '-', '.']);
+                if fault.code == "file-not-a-number" && date_like { fault.help(DATE_HELP) } else { fault }
             })?;
             decimals = decimals.max(printed_decimals(cell));
             years.push(if era == ReadEra::BeforeCommonEra { 1.0 - year } else { year });
@@ -282,10 +283,29 @@ impl CellReader<'_> {
                 .fault(0, column, format!("`{cell}` looks like a year and a month in one number"))
                 .help("write 2015-06 or 2015-06-15, or year, month and day in columns of their own"));
         }
+        if decimals == 2 && look_like_years_and_months_apart_by_a_point(&years) {
+            let cell = table.cell(0, column);
+            return Err(self
+                .fault(
+                    0,
+                    column,
+                    format!(
+                        "`{cell}` looks like a year and a month with a point between them, not a decimal year"
+                    ),
+                )
+                .help("write months as 1958-03, or decimal years with three decimals"));
+        }
         let unlikely_zero = years.iter().any(|&year| year < 0.0) && era == ReadEra::CommonEra;
         if unlikely_zero {
             notes.push(format!(
                 "{}: negative years are read as astronomical ones (0 is 1 BCE, −1 is 2 BCE)",
+                table.columns[column].header
+            ));
+        }
+        if era == ReadEra::CommonEra && decimals == 0 && years.iter().all(|&year| year > 9999.0) {
+            notes.push(format!(
+                "{}: all years are after 9999 CE: if these are the day numbers of a spreadsheet, write them as \
+                 dates",
                 table.columns[column].header
             ));
         }
@@ -361,6 +381,24 @@ fn looks_like_year_and_month(year: f64) -> bool {
         _ => return false,
     };
     whole && (1.0..=12.0).contains(&month)
+}
+
+/// `1958.01`, `1958.02`, … `1958.12`: read as decimal years, they would all lie in January and February.
+fn look_like_years_and_months_apart_by_a_point(years: &[f64]) -> bool {
+    let months: Vec<Option<i64>> = years
+        .iter()
+        .map(|year| {
+            let hundredths = (year * 100.0).round() as i64;
+            (1..=12)
+                .contains(&hundredths.rem_euclid(100))
+                .then(|| hundredths.div_euclid(100) * 12 + hundredths.rem_euclid(100))
+        })
+        .collect();
+    let neighbours = months.windows(2).filter(|pair| match pair {
+        [Some(before), Some(after)] => (after - before).abs() == 1,
+        _ => false,
+    });
+    years.len() >= 6 && !months.contains(&None) && neighbours.count() * 2 >= years.len()
 }
 
 /// How many decimals a number is printed with; an exponent makes them unknown, and counted as many.

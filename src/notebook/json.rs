@@ -3,7 +3,7 @@ use serde_json::{Map, Value as Json, json};
 use super::run::Run;
 use crate::base::{Diagnostic, LineIndex};
 use crate::session::{Output, Session};
-use crate::value::{Attribution, Axis, AxisKind, Cell, Shown, ShownSeries, Spread, Table};
+use crate::value::{Attribution, Axis, AxisKind, Cell, Events, Shown, ShownSeries, Spread, Table};
 
 /// The outputs of a run as one JSON object, format 1: full-precision numbers, `null` for a gap, and only the keys that
 /// a kind has. `cell` counts all cells of the file from 0; what is said of definitions from outside has `null` there.
@@ -113,6 +113,7 @@ fn shown(shown: &Shown) -> Map<String, Json> {
         Shown::Clock(clock) => object(vec![("time", time(&clock.axis))]),
         Shown::Model(model, spreads) => object(vec![("table", self::table(&model.table(spreads)))]),
         Shown::Attribution(attribution) => self::attribution(attribution),
+        Shown::Events(events) => self::events(events),
         Shown::Table(content) => object(vec![("table", self::table(content))]),
         Shown::Text(text) => object(vec![("text", json!(&**text))]),
         Shown::List(items) => {
@@ -168,6 +169,19 @@ fn time(axis: &Axis) -> Json {
         keys.insert("ends".to_owned(), numbers(axis.ends()));
     }
     Json::Object(keys)
+}
+
+/// The times, and names and sizes where the events have them.
+fn events(events: &Events) -> Map<String, Json> {
+    let mut keys = object(vec![("time", time(&events.axis()))]);
+    if let Some(names) = &events.names {
+        keys.insert("names".to_owned(), json!(names.iter().map(|name| &**name).collect::<Vec<_>>()));
+    }
+    if let Some(sizes) = &events.sizes {
+        keys.insert("unit".to_owned(), json!(sizes.measure.unit.to_string()));
+        keys.insert("nominal".to_owned(), numbers(&sizes.values));
+    }
+    keys
 }
 
 fn table(content: &Table) -> Json {

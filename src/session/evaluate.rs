@@ -476,6 +476,7 @@ fn holds_series(shape: &Shape) -> bool {
         | Shape::Clock
         | Shape::Model
         | Shape::Attribution
+        | Shape::Events(_)
         | Shape::Table
         | Shape::Text => false,
     }

@@ -213,6 +213,7 @@ fn constant(parts: &mut Parts, value: &Value) {
         | Value::Bundle(_)
         | Value::Model(_)
         | Value::Attribution(_)
+        | Value::Events(_)
         | Value::Table(_)
         | Value::List(_) => parts.text("no literal"),
     }

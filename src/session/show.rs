@@ -198,6 +198,7 @@ fn shown(nominal: &Value, members: &[&Value], names: &[Arc<str>]) -> Result<Show
         Value::Range(range) => Shown::Range(range.clone()),
         Value::Clock(clock) => Shown::Clock(clock.clone()),
         Value::Attribution(attribution) => Shown::Attribution(attribution.clone()),
+        Value::Events(events) => Shown::Events(events.clone()),
         Value::Table(table) => Shown::Table(table.clone()),
         Value::Text(text) => Shown::Text(text.clone()),
     })

@@ -6,6 +6,7 @@ mod axis;
 mod block;
 mod dimension;
 mod era;
+mod events;
 mod figure;
 mod measure;
 mod model;
@@ -24,6 +25,7 @@ pub use block::Block;
 pub use dimension::Dimension;
 pub(crate) use era::date_label;
 pub use era::{Era, Instant, decimal_year, instant_of_date};
+pub use events::{Events, Sizes};
 pub use figure::{Band, Figure, Ink, Line, Mark, Panel, PlotAxis, Tick};
 pub use measure::{Forcing, ForcingKind, Measure, Reading};
 pub use model::Model;
@@ -61,6 +63,8 @@ pub enum Value {
     Model(Model),
     /// How much each driver explains.
     Attribution(Arc<Attribution>),
+    /// Things that happened at known times.
+    Events(Arc<Events>),
     /// Rows and columns.
     Table(Arc<Table>),
     /// Words.
@@ -119,6 +123,7 @@ impl Value {
             Value::Bundle(bundle) => Shape::Bundle(bundle.shapes()),
             Value::Model(_) => Shape::Model,
             Value::Attribution(_) => Shape::Attribution,
+            Value::Events(events) => Shape::Events(events.sizes.as_ref().map(|sizes| sizes.measure.clone())),
             Value::Table(_) => Shape::Table,
             Value::Text(_) => Shape::Text,
             Value::List(items) => Shape::List(items.iter().map(|item| item.shape()).collect()),
@@ -135,6 +140,7 @@ impl Value {
             Value::Bundle(bundle) => bundle.numbers(),
             Value::Model(model) => model.parameters().iter().map(|(_, _, block)| block.len()).sum(),
             Value::Attribution(attribution) => attribution.numbers(),
+            Value::Events(events) => events.numbers(),
             Value::Table(table) => table.rows.len() * table.columns.len() * 4,
             Value::Text(text) => text.len() / 8,
             Value::List(items) => return items.iter().map(|item| item.bytes()).sum::<usize>() + 64,

@@ -25,6 +25,8 @@ pub enum Shape {
     Model,
     /// An attribution.
     Attribution,
+    /// Events, with the measure of their sizes where they have any.
+    Events(Option<Measure>),
     /// A table.
     Table,
     /// Words.
@@ -47,6 +49,7 @@ impl Shape {
             Shape::Bundle(_) => "bundle",
             Shape::Model => "model",
             Shape::Attribution => "attribution",
+            Shape::Events(_) => "events",
             Shape::Table => "table",
             Shape::Text => "text",
             Shape::List(_) => "list",
@@ -66,6 +69,7 @@ impl Shape {
             }
             Shape::Range(unit) if unit.is_bare() => "a range of plain numbers".to_owned(),
             Shape::Range(unit) => format!("a range in {unit}"),
+            Shape::Events(_) => "events".to_owned(),
             Shape::Instant(_)
             | Shape::Span
             | Shape::Clock
@@ -93,6 +97,7 @@ impl Shape {
             | Shape::Clock
             | Shape::Model
             | Shape::Attribution
+            | Shape::Events(_)
             | Shape::Table
             | Shape::Text
             | Shape::List(_) => None,

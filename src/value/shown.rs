@@ -3,6 +3,7 @@ use std::sync::Arc;
 use super::attribution::Attribution;
 use super::axis::{Axis, Clock, Span};
 use super::era::Era;
+use super::events::Events;
 use super::measure::Measure;
 use super::model::Model;
 use super::spread::Spread;
@@ -49,6 +50,8 @@ pub enum Shown {
     Model(Model, Vec<Option<Arc<Spread>>>),
     /// An attribution.
     Attribution(Arc<Attribution>),
+    /// Events.
+    Events(Arc<Events>),
     /// A table.
     Table(Arc<Table>),
     /// Words.
@@ -83,6 +86,7 @@ impl Shown {
             Shown::Clock(_) => "clock",
             Shown::Model(..) => "model",
             Shown::Attribution(_) => "attribution",
+            Shown::Events(_) => "events",
             Shown::Table(_) => "table",
             Shown::Text(_) => "text",
             Shown::List(_) => "list",

@@ -11,9 +11,13 @@
 mod catalogue_examples;
 mod certified_science;
 mod command_line;
+mod events;
 mod grammar;
 mod layers;
+mod python_reference;
 mod readme;
 mod real_record;
+mod rough_files;
+mod series_properties;
 mod session;
 mod suite;

@@ -1,0 +1,232 @@
+use super::Refused;
+
+const fn refused(file: &'static str, code: &'static str, says: &'static str, help: &'static str) -> Refused {
+    Refused { file, options: "", code, says, help }
+}
+
+/// The files that must be refused, and how.
+pub(super) const REFUSED: &[Refused] = &[
+    refused(
+        "semicolons_decimal_commas.csv",
+        "file-not-a-number",
+        ", line 3, column `temperature (degC)`: expected a number, found `3,25`",
+        "decimals: comma",
+    ),
+    refused(
+        "quoted_newlines_bad_number.csv",
+        "file-not-a-number",
+        ", line 5, column `value`: expected a number, found `three`",
+        "",
+    ),
+    refused(
+        "thousands_commas.csv",
+        "file-not-a-number",
+        ", line 2, column `runoff (mm)`: expected a number, found `1,234`",
+        "if they group thousands, take them out",
+    ),
+    refused(
+        "thousands_spaces.csv",
+        "file-not-a-number",
+        ", line 3, column `runoff (mm)`: expected a number, found `1 234.5`",
+        "write 1234.5",
+    ),
+    refused("unit_unknown.csv", "unknown-unit", "gives its unit as \"mmHg\"", "unit:"),
+    refused(
+        "missing_words.csv",
+        "file-not-a-number",
+        ", line 3, column `value`: expected a number, found `n/a`",
+        "say missing: \"n/a\"",
+    ),
+    refused(
+        "footnote_marks.csv",
+        "file-not-a-number",
+        ", line 3, column `value`: expected a number, found `2.5*`",
+        "write only the number 2.5",
+    ),
+    refused(
+        "unit_in_cells.csv",
+        "file-not-a-number",
+        ", line 2, column `co2`: expected a number, found `296 ppm`",
+        "a unit goes into the column name",
+    ),
+    refused(
+        "fortran_exponents.csv",
+        "file-not-a-number",
+        ", line 3, column `value`: expected a number, found `2.0D+01`",
+        "write the exponent with e: 2.0e+01",
+    ),
+    refused("all_missing.csv", "file-no-values", "column `value` holds no number", ""),
+    refused(
+        "duplicate_year.csv",
+        "file-time-twice",
+        ", line 5, column `year`: the time 1902 occurs twice, in line 3 and in line 5",
+        "each time needs one row",
+    ),
+    refused(
+        "unsorted.csv",
+        "file-time-order",
+        ", line 4, column `year`: the time 1902 is out of order after 1903 in line 3",
+        "sort the rows by time",
+    ),
+    refused(
+        "month_13.csv",
+        "file-time",
+        ", line 4, column `month`: there is no month 13",
+        "months are 1 to 12",
+    ),
+    refused(
+        "february_30.csv",
+        "file-time",
+        ", line 4, column `date`: there is no day 30 in 1901-02, which has 28 days",
+        "",
+    ),
+    refused(
+        "year_missing.csv",
+        "file-time",
+        ", line 3, column `year`: the time is missing",
+        "every row needs its time",
+    ),
+    refused(
+        "slashed_dates.csv",
+        "file-not-a-number",
+        ", line 2, column `date`: expected a number, found `03/04/1901`",
+        "day and month cannot be told apart",
+    ),
+    refused(
+        "month_name_dates.csv",
+        "file-not-a-number",
+        ", line 2, column `date`: expected a number, found `Jan-1958`",
+        "write dates as 2015-06-15 or 2015-06",
+    ),
+    refused(
+        "dotted_months.csv",
+        "file-time",
+        ", line 2, column `date`: `1958.01` looks like a year and a month with a point between them",
+        "write months as 1958-03",
+    ),
+    refused(
+        "packed_months.csv",
+        "file-time",
+        ", line 2, column `date`: `195801` looks like a year and a month in one number",
+        "write 2015-06",
+    ),
+    refused(
+        "ragged_row.csv",
+        "file-row-length",
+        ", line 4: the row has 2 fields, the header has 3",
+        "keep its delimiter",
+    ),
+    refused(
+        "ragged_decimal_comma.csv",
+        "file-row-length",
+        ", line 2: the row has 3 fields, the header has 2",
+        "decimals: comma",
+    ),
+    refused(
+        "percent_comments.csv",
+        "file-row-length",
+        ", line 2: the row has 1 field, the header has 2",
+        "comment lines begin with #",
+    ),
+    refused(
+        "two_header_lines.csv",
+        "file-two-headers",
+        ", line 2: the line below the column names holds no number: `CE`, `ppm`",
+        "units go into the names",
+    ),
+    refused(
+        "open_quote.csv",
+        "file-open-quote",
+        ", line 3: a quotation mark opened in this row is never closed",
+        "",
+    ),
+    refused(
+        "names_twice.csv",
+        "file-column-twice",
+        "columns 2 and 3 are both named `value`",
+        "different names",
+    ),
+    refused("several_values.csv", "file-which-value-column", "`level (mm)`, `flow (mm)`", "value: \"level\""),
+    refused("members_with_gap.csv", "file-which-value-column", "`m1 (mm)`, `m2 (mm)`", "members: \"m*\""),
+    refused(
+        "spaces.txt",
+        "file-no-time-column",
+        "no column tells the time; the columns are `year   value`",
+        "not by spaces",
+    ),
+    refused(
+        "age_plain_bp.csv",
+        "file-age-bp",
+        "uncalibrated ages are not calendar years",
+        "write `cal BP` if the ages are calibrated",
+    ),
+    refused(
+        "age_without_unit.csv",
+        "file-age-unit",
+        "the age column `age` does not say its unit",
+        "as in `age (ka)`",
+    ),
+    refused(
+        "layers_overlapping.csv",
+        "file-age-layers",
+        ", line 3: the layer overlaps the one in line 2",
+        "end where the next begins",
+    ),
+    refused(
+        "year_by_month_bad_cell.csv",
+        "file-not-a-number",
+        ", line 3, column `Mar`: expected a number, found `15?`",
+        "write only the number 15",
+    ),
+    refused(
+        "year_by_month_decimal_years.csv",
+        "file-time",
+        ", line 2, column `year`: a row with a column for each month needs a whole year, found `1901.5`",
+        "write the year alone",
+    ),
+    refused(
+        "latin_1.csv",
+        "file-not-utf8",
+        ", line 1: byte 19 of the line (0xB0) is not UTF-8; in Latin-1 the byte is `°`",
+        "save the file as UTF-8",
+    ),
+    refused("utf_16.csv", "file-not-utf8", "UTF-16", "save it as CSV in UTF-8"),
+    refused(
+        "spreadsheet.csv",
+        "file-not-utf8",
+        "this is a spreadsheet or an archive",
+        "save it as CSV in UTF-8",
+    ),
+    refused(
+        "empty.csv",
+        "file-empty",
+        "the file is empty",
+        "a line of column names and a line for each time",
+    ),
+    refused(
+        "comments_only.csv",
+        "file-empty",
+        "the file holds comments and no data",
+        "a line of column names",
+    ),
+    refused(
+        "header_only.csv",
+        "file-empty",
+        ", line 2: the file has column names (`year`, `value`) and no rows below them",
+        "",
+    ),
+    Refused {
+        file: "years_left_out.csv",
+        options: "missing: \"-9\", value: \"valeu\"",
+        code: "file-no-such-column",
+        says: "there is no column `valeu`; the columns are `year`, `value`",
+        help: "did you mean `value`?",
+    },
+    Refused {
+        file: "irregular_years.csv",
+        options: "unit: \"furlong\"",
+        code: "unknown-unit",
+        says: "`furlong` is no unit",
+        help: "units are written such as",
+    },
+];
