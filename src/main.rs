@@ -3,13 +3,11 @@
 use std::io::{IsTerminal, Read, Write};
 use std::path::PathBuf;
 use std::process::ExitCode;
-use std::sync::Arc;
-use std::sync::atomic::{AtomicBool, Ordering};
-use std::time::{Duration, Instant};
 
 use clap::{Parser, Subcommand, ValueEnum};
 
 use rhythmite::session::Session;
+use rhythmite::talk::{self, Ending, Progress};
 use rhythmite::{catalogue, notebook};
 
 /// Climate forcing time series: compose drivers, respond, attribute a record.
@@ -32,6 +30,18 @@ enum Command {
         /// Write the results there instead of printing them.
         #[arg(long)]
         out: Option<PathBuf>,
+        /// How many threads to use; all processors by default. The numbers are the same for any.
+        #[arg(long)]
+        threads: Option<usize>,
+        /// The largest input file that is read, in MiB.
+        #[arg(long, default_value_t = 256)]
+        file_limit: u64,
+    },
+    /// Talk in the terminal: type expressions and see them at once; lines can be piped in, too.
+    Talk {
+        /// The folder whose files may be read, and those below.
+        #[arg(default_value = ".")]
+        folder: PathBuf,
         /// How many threads to use; all processors by default. The numbers are the same for any.
         #[arg(long)]
         threads: Option<usize>,
@@ -71,6 +81,10 @@ fn main() -> ExitCode {
             let (session_limit, memory) = (file_limit.saturating_mul(1024 * 1024), 512 * 1024 * 1024);
             run(&file, format, out.as_deref(), threads, memory, session_limit)
         }
+        Command::Talk { folder, threads, file_limit } => {
+            let (session_limit, memory) = (file_limit.saturating_mul(1024 * 1024), 512 * 1024 * 1024);
+            talk_in(&folder, threads, memory, session_limit)
+        }
         Command::Explain { name } => explain(&name),
     };
     ExitCode::from(code)
@@ -101,6 +115,22 @@ fn explain(name: &str) -> u8 {
                 Some(near) => format!("there is no function `{name}`; did you mean `{near}`?\n"),
                 None => format!("there is no function `{name}`; there are {}\n", names.join(", ")),
             });
+            WRONG_CALL
+        }
+    }
+}
+
+fn talk_in(folder: &std::path::Path, threads: Option<usize>, memory: usize, file_limit: u64) -> u8 {
+    if !folder.is_dir() {
+        complain(&format!("{} is no folder\n", folder.display()));
+        return WRONG_CALL;
+    }
+    let session = Session::with_limits(folder, threads, memory, file_limit);
+    match talk::talk(session, folder) {
+        Ok(Ending::Well) => SUCCESS,
+        Ok(Ending::Failed) => WRONG_PROGRAM,
+        Err(error) => {
+            complain(&format!("the terminal cannot be read: {error}\n"));
             WRONG_CALL
         }
     }
@@ -177,45 +207,4 @@ fn run(
         }
     }
     if failed { WRONG_PROGRAM } else { SUCCESS }
-}
-
-/// A line on standard error that says how long a run has taken, on a terminal and after half a second.
-struct Progress {
-    done: Arc<AtomicBool>,
-    ticker: Option<std::thread::JoinHandle<()>>,
-}
-
-impl Progress {
-    fn begin() -> Self {
-        let done = Arc::new(AtomicBool::new(false));
-        if !std::io::stderr().is_terminal() {
-            return Self { done, ticker: None };
-        }
-        let flag = done.clone();
-        let ticker = std::thread::spawn(move || {
-            let began = Instant::now();
-            let mut shown = false;
-            while !flag.load(Ordering::Relaxed) {
-                std::thread::sleep(Duration::from_millis(100));
-                if began.elapsed() > Duration::from_millis(500) && !flag.load(Ordering::Relaxed) {
-                    shown = true;
-                    complain(&format!(
-                        "\rcomputing, {:.1} s; Ctrl-C stops it",
-                        began.elapsed().as_secs_f64()
-                    ));
-                }
-            }
-            if shown {
-                complain("\r\x1b[K");
-            }
-        });
-        Self { done, ticker: Some(ticker) }
-    }
-
-    fn end(self) {
-        self.done.store(true, Ordering::Relaxed);
-        if let Some(ticker) = self.ticker {
-            let _ = ticker.join();
-        }
-    }
 }
