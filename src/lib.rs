@@ -1,7 +1,7 @@
 //! Rhythmite: a language for climate forcing time series.
 //!
 //! The layers, each of which uses only those before it, are `base`, `science`, `value`, `files`, `display`,
-//! `language`, `catalogue`, `session` and `notebook`; `DEVELOPERS.md` says what each is for.
+//! `language`, `catalogue`, `session`, `notebook` and `talk`; `DEVELOPERS.md` says what each is for.
 
 pub mod base;
 pub mod catalogue;
@@ -11,4 +11,5 @@ pub mod language;
 pub mod notebook;
 pub mod science;
 pub mod session;
+pub mod talk;
 pub mod value;

@@ -3,14 +3,12 @@
 use std::io::{IsTerminal, Read, Write};
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
-use std::sync::Arc;
-use std::sync::atomic::{AtomicBool, Ordering};
-use std::time::{Duration, Instant};
 
 use clap::{Parser, Subcommand, ValueEnum};
 
 use rhythmite::notebook::{CodeCell, Notebook, Report, Run};
 use rhythmite::session::{OUTSIDE, Session};
+use rhythmite::talk::{self, Ending, Progress};
 use rhythmite::{catalogue, display, notebook};
 
 /// Climate forcing time series: compose drivers, respond, attribute a record.
@@ -39,6 +37,18 @@ enum Command {
         /// Write each series and bundle that is shown as a figure (SVG) into this folder.
         #[arg(long, value_name = "FOLDER")]
         figures: Option<PathBuf>,
+        /// How many threads to use; all processors by default. The numbers are the same for any.
+        #[arg(long)]
+        threads: Option<usize>,
+        /// The largest input file that is read, in MiB.
+        #[arg(long, default_value_t = 256)]
+        file_limit: u64,
+    },
+    /// Talk in the terminal: type expressions and see them at once; lines can be piped in, too.
+    Talk {
+        /// The folder whose files may be read, and those below.
+        #[arg(default_value = ".")]
+        folder: PathBuf,
         /// How many threads to use; all processors by default. The numbers are the same for any.
         #[arg(long)]
         threads: Option<usize>,
@@ -87,6 +97,9 @@ fn main() -> ExitCode {
             let wanted = Wanted { format, out, figures };
             run(session, &file, &wanted, &define)
         }
+        Command::Talk { folder, threads, file_limit } => {
+            talk_in(&folder, threads, MEMORY, file_limit.saturating_mul(1024 * 1024))
+        }
         Command::Explain { name } => explain(&name),
     };
     ExitCode::from(code)
@@ -117,6 +130,22 @@ fn explain(name: &str) -> u8 {
                 Some(near) => format!("there is no function `{name}`; did you mean `{near}`?\n"),
                 None => format!("there is no function `{name}`; there are {}\n", names.join(", ")),
             });
+            WRONG_CALL
+        }
+    }
+}
+
+fn talk_in(folder: &Path, threads: Option<usize>, memory: usize, file_limit: u64) -> u8 {
+    if !folder.is_dir() {
+        complain(&format!("{} is no folder\n", folder.display()));
+        return WRONG_CALL;
+    }
+    let session = Session::with_limits(folder, threads, memory, file_limit);
+    match talk::talk(session, folder) {
+        Ok(Ending::Well) => SUCCESS,
+        Ok(Ending::Failed) => WRONG_PROGRAM,
+        Err(error) => {
+            complain(&format!("the terminal cannot be read: {error}\n"));
             WRONG_CALL
         }
     }
@@ -241,45 +270,4 @@ fn write_figures(folder: &Path, ran: &Run) -> std::io::Result<()> {
         complain("no series or bundle is shown, so that no figure was written\n");
     }
     Ok(())
-}
-
-/// A line on standard error that says how long a run has taken, on a terminal and after half a second.
-struct Progress {
-    done: Arc<AtomicBool>,
-    ticker: Option<std::thread::JoinHandle<()>>,
-}
-
-impl Progress {
-    fn begin() -> Self {
-        let done = Arc::new(AtomicBool::new(false));
-        if !std::io::stderr().is_terminal() {
-            return Self { done, ticker: None };
-        }
-        let flag = done.clone();
-        let ticker = std::thread::spawn(move || {
-            let began = Instant::now();
-            let mut shown = false;
-            while !flag.load(Ordering::Relaxed) {
-                std::thread::sleep(Duration::from_millis(100));
-                if began.elapsed() > Duration::from_millis(500) && !flag.load(Ordering::Relaxed) {
-                    shown = true;
-                    complain(&format!(
-                        "\rcomputing, {:.1} s; Ctrl-C stops it",
-                        began.elapsed().as_secs_f64()
-                    ));
-                }
-            }
-            if shown {
-                complain("\r\x1b[K");
-            }
-        });
-        Self { done, ticker: Some(ticker) }
-    }
-
-    fn end(self) {
-        self.done.store(true, Ordering::Relaxed);
-        if let Some(ticker) = self.ticker {
-            let _ = ticker.join();
-        }
-    }
 }

@@ -20,6 +20,11 @@ impl Cancellation {
         self.0.store(true, Ordering::Relaxed);
     }
 
+    /// The flag itself, for a handler of signals, which may do no more than raise it.
+    pub fn flag(&self) -> Arc<AtomicBool> {
+        self.0.clone()
+    }
+
     /// Lower the flag again, before the next computation.
     pub fn reset(&self) {
         self.0.store(false, Ordering::Relaxed);

@@ -4,6 +4,7 @@ use std::sync::Arc;
 use super::run::{Run, is_told};
 use crate::display;
 use crate::session::{CellReply, Output, Session};
+use crate::value::Shown;
 
 /// How many columns the line over a cell takes.
 const HEADING_WIDTH: usize = 80;
@@ -17,6 +18,12 @@ pub struct Report {
     pub colour: bool,
     /// Whether each result is followed by its fingerprint.
     pub fingerprints: bool,
+    /// Whether a result stands under the expression it is of; a terminal shows what was typed anyway.
+    pub echo: bool,
+    /// How wide the charts of series are, in columns of a terminal; none where no chart is drawn.
+    pub chart_columns: Option<usize>,
+    /// Whether a result of another cell that moved is told in one line.
+    pub brief_moves: bool,
     said: HashSet<Arc<str>>,
     text: String,
 }
@@ -24,7 +31,7 @@ pub struct Report {
 impl Report {
     /// An empty report.
     pub fn new(colour: bool, fingerprints: bool) -> Self {
-        Self { colour, fingerprints, ..Self::default() }
+        Self { colour, fingerprints, echo: true, ..Self::default() }
     }
 
     /// The text so far; the report is empty afterwards, but remembers the notes it printed.
@@ -59,10 +66,38 @@ impl Report {
         for output in &reply.outputs {
             self.output(session, reply, output);
         }
+        if self.brief_moves {
+            return self.moves(session, reply);
+        }
         for output in &reply.moved {
             let by = output.refreshed_by.join(", ");
             self.text += &format!("{}, refreshed by {by}:\n", session.cell_name(&output.cell));
             self.output(session, reply, output);
+        }
+    }
+
+    /// What moved in other cells, one line each: the last result of an expression that was shown more than once.
+    fn moves(&mut self, session: &Session, reply: &CellReply) {
+        let (bold, plain) = if self.colour { ("\x1b[1m", "\x1b[0m") } else { ("", "") };
+        let sources = |id| session.source(id);
+        for (number, output) in reply.moved.iter().enumerate() {
+            let later = reply.moved.get(number + 1..).unwrap_or(&[]);
+            if later.iter().any(|other| other.expression == output.expression) {
+                continue;
+            }
+            let by = output.refreshed_by.join(", ");
+            let (cell, expression) = (&output.cell, &output.expression);
+            self.text += &format!("{bold}{expression}{plain}, shown in {cell}, refreshed by {by}:\n");
+            self.text += &match &output.result {
+                Ok(shown) => format!("  {}\n", display::line(shown)),
+                Err(problem) => {
+                    let line = display::problem_line(problem, &sources);
+                    format!("  an error now, at {line}: {}\n", problem.message)
+                }
+            };
+        }
+        if !reply.moved.is_empty() {
+            self.text.push('\n');
         }
     }
 
@@ -72,11 +107,14 @@ impl Report {
         let sources = |id| session.source(id);
         match &output.result {
             Ok(shown) => {
-                self.text += &format!("{bold}{}{plain}\n", output.expression);
+                if self.echo {
+                    self.text += &format!("{bold}{}{plain}\n", output.expression);
+                }
                 for line in display::text(shown).lines() {
                     let indent = if line.starts_with("  ") { "" } else { "  " };
                     self.text += &format!("{indent}{line}\n");
                 }
+                self.chart(shown);
                 for note in &output.notes {
                     if self.said.insert(note.clone()) {
                         self.text += &format!("  {dim}– {note}{plain}\n");
@@ -102,6 +140,29 @@ impl Report {
                 self.text += &display::diagnostic(problem, &sources, self.colour);
                 self.text.push('\n');
             }
+        }
+    }
+
+    /// The chart of a series, or of a bundle's sum.
+    fn chart(&mut self, shown: &Shown) {
+        let Some(columns) = self.chart_columns else { return };
+        let (title, series) = match shown {
+            Shown::Series(series) => ("", series),
+            Shown::Bundle { total, .. } => ("  total\n", total),
+            Shown::Quantity { .. }
+            | Shown::Instant { .. }
+            | Shown::Span(_)
+            | Shown::Range(_)
+            | Shown::Clock(_)
+            | Shown::Model(..)
+            | Shown::Attribution(_)
+            | Shown::Table(_)
+            | Shown::Text(_)
+            | Shown::List(_) => return,
+        };
+        if let Some(chart) = display::terminal_chart(series, columns.saturating_sub(2), self.colour) {
+            self.text += title;
+            self.text.extend(chart.lines().map(|line| format!("  {line}\n")));
         }
     }
 }

@@ -380,6 +380,7 @@ impl Session {
         &self,
         ask: impl FnOnce(&Evaluator<'_>, &Environment) -> T + Send,
     ) -> Option<T> {
+        self.cancellation.reset();
         let graph = Graph::of(&self.definitions);
         let consulted = std::panic::AssertUnwindSafe(|| {
             self.threads.install(|| {

@@ -4,15 +4,17 @@ use std::fs;
 use std::path::{Path, PathBuf};
 
 /// The layers in order, as DEVELOPERS.md has them.
-const LAYERS: [&str; 9] =
-    ["base", "science", "value", "files", "display", "language", "catalogue", "session", "notebook"];
+const LAYERS: [&str; 10] =
+    ["base", "science", "value", "files", "display", "language", "catalogue", "session", "notebook", "talk"];
 
 /// Crates that only one layer may use.
-const KEPT_INSIDE: [(&str, &str); 4] = [
+const KEPT_INSIDE: [(&str, &str); 6] = [
     ("nom::", "language"),
     ("annotate_snippets::", "display"),
     ("csv::", "files"),
     ("serde_json::", "notebook"),
+    ("rustyline::", "talk"),
+    ("signal_hook::", "talk"),
 ];
 
 fn rust_files(folder: &Path, found: &mut Vec<PathBuf>) {
