@@ -9,7 +9,7 @@ use std::time::{Duration, Instant};
 
 use clap::{Parser, Subcommand, ValueEnum};
 
-use rhythmite::session::{Output, Session};
+use rhythmite::session::Session;
 use rhythmite::{catalogue, notebook};
 
 /// Climate forcing time series: compose drivers, respond, attribute a record.
@@ -158,6 +158,7 @@ fn run(
     let failed = !reply.problems.is_empty()
         || !reply.waiting.is_empty()
         || reply.outputs.iter().any(|output| output.result.is_err());
+    let drawn = figures.map(|folder| (folder, notebook::figure_files(&reply.outputs)));
     let printed = match format {
         Format::Text => {
             let colour =
@@ -180,8 +181,8 @@ fn run(
             }
         }
     }
-    if let Some(folder) = figures
-        && let Err(error) = write_figures(folder, &reply.outputs)
+    if let Some((folder, files)) = drawn
+        && let Err(error) = write_figures(folder, &files)
     {
         complain(&format!("figures cannot be written into {}: {error}\n", folder.display()));
         return WRONG_CALL;
@@ -189,11 +190,10 @@ fn run(
     if failed { WRONG_PROGRAM } else { SUCCESS }
 }
 
-/// Write what is drawn of the results into a folder, which is made where there is none, and say so.
-fn write_figures(folder: &std::path::Path, outputs: &[Output]) -> std::io::Result<()> {
-    let files = notebook::figure_files(outputs);
+/// Write figures into a folder, which is made where there is none, and say so.
+fn write_figures(folder: &std::path::Path, files: &[notebook::FigureFile]) -> std::io::Result<()> {
     std::fs::create_dir_all(folder)?;
-    for file in &files {
+    for file in files {
         std::fs::write(folder.join(&file.name), &file.svg)?;
         complain(&format!("wrote {}\n", folder.join(&file.name).display()));
     }

@@ -55,7 +55,7 @@ fn axis_number(value: f64, decimals: usize) -> String {
     let (whole, rest) = text.split_at(text.find('.').unwrap_or(text.len()));
     let mut grouped = String::new();
     for (index, digit) in whole.chars().enumerate() {
-        if whole.len() > 4 && index > 0 && (whole.len() - index) % 3 == 0 {
+        if whole.len() > 4 && index > 0 && (whole.len() - index).is_multiple_of(3) {
             grouped.push('\u{202f}');
         }
         grouped.push(digit);
@@ -185,7 +185,7 @@ fn day_ticks(start: f64, end: f64, letters: usize) -> Vec<Tick> {
     let ticks = |every: u32| -> Vec<Tick> {
         let wanted = |label: &str| {
             let day: u32 = label.rsplit('-').next().and_then(|day| day.parse().ok()).unwrap_or(1);
-            (day - 1) % every == 0 && (every == 1 || day < 30)
+            (day - 1).is_multiple_of(every) && (every == 1 || day < 30)
         };
         days.iter()
             .filter(|(_, label)| wanted(label))
@@ -254,11 +254,11 @@ mod tests {
 
     #[test]
     fn short_spans_are_labelled_by_months_and_days() {
-        let (ticks, title) = time_ticks(Era::Ce, 2015.0, 2017.0, 90);
+        let (ticks, title) = time_ticks(Era::Ce, 2015.0, 2017.0, 100);
         assert_eq!(labels(&ticks)[..2], ["2015-01", "2015-04"]);
         assert_eq!(title, "date");
         let start = decimal_year(2016, 40);
-        let (ticks, _) = time_ticks(Era::Ce, start, start + 30.0 / 366.0, 90);
+        let (ticks, _) = time_ticks(Era::Ce, start, start + 30.0 / 366.0, 100);
         assert_eq!(labels(&ticks)[..2], ["2016-02-11", "2016-02-16"]);
     }
 }

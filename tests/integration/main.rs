@@ -11,6 +11,7 @@
 mod catalogue_examples;
 mod certified_science;
 mod command_line;
+mod figures;
 mod grammar;
 mod layers;
 mod readme;
