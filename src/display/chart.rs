@@ -32,12 +32,12 @@ pub fn chart(shown: &Shown, caption: &Caption<'_>) -> Option<Figure> {
     match shown {
         Shown::Series(series) => {
             let marks = [band(series, 1.0, Ink::Numbered(0)), line(series, 1.0, Ink::Numbered(0), None)];
-            let description = text::text(shown).replace('\n', ". ");
-            figure(caption, series, kind_words(&series.measure), description, marks.into(), Vec::new())
+            figure(caption, series, "series", &text::text(shown), marks.into(), Vec::new())
         }
-        Shown::Bundle { components, total } => bundle(components, total, caption, text::text(shown)),
+        Shown::Bundle { components, total } => bundle(components, total, caption, &text::text(shown)),
         Shown::Quantity { .. }
         | Shown::Instant { .. }
+        | Shown::Events(_)
         | Shown::Span(_)
         | Shown::Range(_)
         | Shown::Clock(_)
@@ -53,7 +53,7 @@ fn bundle(
     components: &[(std::sync::Arc<str>, ShownSeries)],
     total: &ShownSeries,
     caption: &Caption<'_>,
-    description: String,
+    numbers: &str,
 ) -> Option<Figure> {
     // A component may have been given in another unit than the sum.
     let factor = |part: &ShownSeries| part.measure.unit.factor_to(&total.measure.unit).unwrap_or(f64::NAN);
@@ -85,10 +85,9 @@ fn bundle(
         lines.push(line(total, 1.0, Ink::Foremost, Some("total".to_owned())));
     }
     let marks = bands.into_iter().chain(faint).chain(lines).collect();
-    let count = components.len();
-    let kind = kind_words(&total.measure);
-    let kind = if count == 1 { kind } else { format!("{count} components and their total, {kind}") };
-    figure(caption, total, kind, description.replace('\n', ". "), marks, notes)
+    let word = if components.len() == 1 { "component" } else { "components" };
+    let kind = format!("bundle of {} {word}", components.len());
+    figure(caption, total, &kind, numbers, marks, notes)
 }
 
 fn largest(series: &ShownSeries) -> f64 {
@@ -98,8 +97,8 @@ fn largest(series: &ShownSeries) -> f64 {
 fn figure(
     caption: &Caption<'_>,
     series: &ShownSeries,
-    kind: String,
-    description: String,
+    kind: &str,
+    numbers: &str,
     marks: Vec<Mark>,
     mut notes: Vec<String>,
 ) -> Option<Figure> {
@@ -109,44 +108,38 @@ fn figure(
         notes.push("all gaps: there is nothing to draw".to_owned());
     }
     let title: Vec<&str> = caption.expression.split_whitespace().collect();
-    let mut subtitle = format!("{kind}: {}", series.axis.describe());
-    if let Some(spread) = &series.spread {
-        subtitle += &format!("; band: 5–95 % of {} members", spread.members);
+    let mut subtitle = format!("{kind}, {}", series.axis.describe());
+    if let Some(reference) = series.measure.forcing.as_ref().and_then(|forcing| forcing.reference.as_ref()) {
+        subtitle += &format!(", change from {reference}");
     }
-    let mut footer = caption.fingerprint.to_owned();
+    if let Some(spread) = &series.spread {
+        subtitle += &format!("; band 5–95 %, {} members", spread.members);
+    }
+    let mut footer = format!("fingerprint {}", caption.fingerprint);
     if !caption.refreshed_by.is_empty() {
         footer += &format!(", refreshed by {}", caption.refreshed_by.join(", "));
     }
     Some(Figure {
         title: title.join(" "),
         subtitle,
-        description: format!(
-            "Line chart; along: {}, up: {}. {description}",
-            horizontal.title, vertical.title
-        ),
+        description: description(&horizontal.title, &vertical.title, numbers),
         notes,
         footer,
         panels: vec![Panel { horizontal, vertical, marks }],
     })
 }
 
+/// The figure in words: what is drawn against what, and the numbers that stand under it.
+fn description(along: &str, up: &str, numbers: &str) -> String {
+    let lines: Vec<String> =
+        numbers.lines().map(|line| line.split_whitespace().collect::<Vec<_>>().join(" ")).collect();
+    format!("Line chart of {up} by {along}. {}.", lines.join(". "))
+}
+
 fn is_empty(mark: &Mark) -> bool {
     match mark {
         Mark::Band(band) => band.runs.is_empty(),
         Mark::Line(line) => line.runs.is_empty(),
-    }
-}
-
-/// What the numbers are, for the line under the title.
-fn kind_words(measure: &Measure) -> String {
-    match &measure.forcing {
-        Some(forcing) => {
-            let reference =
-                forcing.reference.as_ref().map_or(String::new(), |from| format!(", change from {from}"));
-            format!("{}{reference}", forcing_words(forcing.kind))
-        }
-        None if measure.unit.dimension() == Dimension::TEMPERATURE => temperature_words(measure).to_owned(),
-        None => "series".to_owned(),
     }
 }
 
@@ -183,7 +176,7 @@ fn value_axis(measure: &Measure, marks: &[Mark]) -> PlotAxis {
         }
     }
     let (low, high) = with_room(range.unwrap_or((0.0, 1.0)));
-    let (ticks, power) = value_ticks(low, high, 6);
+    let (ticks, power) = value_ticks(low, high, 8);
     let unit = measure.unit.typeset();
     let raised: String = power.to_string().chars().map(superscript).collect();
     let unit = match (power, unit.as_str()) {
@@ -215,7 +208,7 @@ fn with_room((mut low, mut high): (f64, f64)) -> (f64, f64) {
     // Half of the range, so that the range of the largest numbers is finite.
     let half = high / 2.0 - low / 2.0;
     let size = low.abs().max(high.abs());
-    if half <= size * 1e-9 || half < 1e-306 {
+    if half <= size * 1e-12 || half < 1e-306 {
         // One value is no range: it stands in the middle of one that suits its size.
         let about = if size < 1e-305 { 1.0 } else { size * 0.1 };
         let middle = low / 2.0 + high / 2.0;

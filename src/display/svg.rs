@@ -11,10 +11,10 @@ use crate::value::{Band, Figure, Ink, Line, Mark, Panel, PlotAxis};
 /// Colours of the numbered inks. Found by a search for the six colours that lie farthest apart in the OKLab space for
 /// normal sight and for the three kinds of colour deficiency, between the lightness that a white and the one that a
 /// dark ground allow; a test holds them to it.
-const COLOURS: [&str; 6] = ["#1e87ff", "#f0691e", "#007f6e", "#8052bd", "#c378b4", "#bd3411"];
+const COLOURS: [&str; 6] = ["#2891ff", "#e6752e", "#007c6f", "#843eb9", "#bd80ab", "#c12607"];
 
 /// Line styles of the numbered inks, which tell the same apart without colour: lengths of dash and gap.
-const DASHES: [&str; 7] = ["", "8 3", "2.5 2.5", "9 3 2 3", "15 4", "5 2 2 2 2 2", "1 4"];
+const DASHES: [&str; 7] = ["", "8 3", "3 2.2", "9 3 2 3", "15 4", "5 2 2 2 2 2", "1 4"];
 
 const WIDTH: f64 = 720.0;
 const MARGIN: f64 = 16.0;
@@ -73,7 +73,7 @@ pub fn svg(figure: &Figure) -> String {
     let mut frames = Vec::new();
     let mut bottom = MARGIN + title.len() as f64 * 20.0 + subtitle.len() as f64 * LEADING;
     for panel in &figure.panels {
-        let top = bottom + 30.0;
+        let top = bottom + 36.0;
         let labels = labelled(panel).count() as f64;
         let frame = Frame { left, right, top, bottom: top + PLOT_HEIGHT.max(labels * LEADING) };
         frames.push(frame);
@@ -152,7 +152,7 @@ fn draw(markup: &mut Markup, panel: &Panel, frame: Frame) {
     let across = Scale::new(&panel.horizontal, frame.left, frame.right);
     let up = Scale::new(&panel.vertical, frame.bottom, frame.top);
     let caption = cut(&panel.vertical.title, TEXT_SIZE, WIDTH - 2.0 * MARGIN);
-    markup.element("text").at("x", MARGIN).at("y", frame.top - 12.0).saying(&caption);
+    markup.element("text").at("x", MARGIN).at("y", frame.top - 16.0).saying(&caption);
     vertical_axis(markup, &panel.vertical, up, frame);
     horizontal_axis(markup, &panel.horizontal, across, frame);
     for mark in &panel.marks {
@@ -210,7 +210,7 @@ fn dashes(ink: Ink) -> &'static str {
 fn thickness(ink: Ink) -> f64 {
     match ink {
         Ink::Foremost => 2.2,
-        Ink::Numbered(_) => 1.6,
+        Ink::Numbered(_) => 1.8,
         Ink::Faint => 0.8,
     }
 }
@@ -279,7 +279,7 @@ fn draw_band(markup: &mut Markup, band: &Band, across: Scale, up: Scale) {
     }
     if !areas.is_empty() {
         let element = markup.element("path").with("d", &areas).with("fill", colour(band.ink));
-        drop(element.with("fill-opacity", "0.2"));
+        drop(element.with("fill-opacity", if band.ink == Ink::Foremost { "0.2" } else { "0.16" }));
     }
     if !bars.is_empty() {
         let element = markup.element("path").with("d", &bars).with("stroke", colour(band.ink));
@@ -301,5 +301,82 @@ fn draw_labels(markup: &mut Markup, panel: &Panel, frame: Frame, across: Scale, 
         stroke(markup, &polyline(&[[x, *y], [x + SAMPLE, *y]]), line.ink);
         let text = markup.element("text").at("x", x + SAMPLE + 4.0).at("y", y + 4.0);
         text.saying(&cut(label, TEXT_SIZE, LABEL_ROOM));
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn linear(colour: &str) -> [f64; 3] {
+        [1, 3, 5].map(|at| {
+            let part = f64::from(u8::from_str_radix(&colour[at..at + 2], 16).unwrap()) / 255.0;
+            if part <= 0.04045 { part / 12.92 } else { ((part + 0.055) / 1.055).powf(2.4) }
+        })
+    }
+
+    fn mix(rows: [[f64; 3]; 3], colour: [f64; 3]) -> [f64; 3] {
+        rows.map(|row| row.iter().zip(colour).map(|(part, light)| part * light).sum::<f64>().max(0.0))
+    }
+
+    /// The OKLab space (Ottosson 2020), its matrices from memory.
+    fn oklab(colour: [f64; 3]) -> [f64; 3] {
+        let cones = mix(
+            [
+                [0.412_221_470_8, 0.536_332_536_3, 0.051_445_992_9],
+                [0.211_903_498_2, 0.680_699_545_1, 0.107_396_956_6],
+                [0.088_302_461_9, 0.281_718_837_6, 0.629_978_700_5],
+            ],
+            colour.map(|light| light.min(1.0)),
+        );
+        let [long, middle, short] = cones.map(f64::cbrt);
+        [
+            0.210_454_255_3 * long + 0.793_617_785 * middle - 0.004_072_046_8 * short,
+            1.977_998_495_1 * long - 2.428_592_205 * middle + 0.450_593_709_9 * short,
+            0.025_904_037_1 * long + 0.782_771_766_2 * middle - 0.808_675_766 * short,
+        ]
+    }
+
+    /// Normal sight and the complete deficiencies of Machado and others (2009), the matrices from memory.
+    const SIGHTS: [[[f64; 3]; 3]; 4] = [
+        [[1.0, 0.0, 0.0], [0.0, 1.0, 0.0], [0.0, 0.0, 1.0]],
+        [[0.152286, 1.052583, -0.204868], [0.114503, 0.786281, 0.099216], [-0.003882, -0.048116, 1.051998]],
+        [[0.367322, 0.860646, -0.227968], [0.280085, 0.672501, 0.047413], [-0.01182, 0.04294, 0.968881]],
+        [[1.255528, -0.076749, -0.178779], [-0.078411, 0.930809, 0.147602], [0.004733, 0.691367, 0.3039]],
+    ];
+
+    #[test]
+    fn colours_are_told_apart_with_any_sight() {
+        for sight in SIGHTS {
+            for (index, one) in COLOURS.iter().enumerate() {
+                for other in &COLOURS[..index] {
+                    let [one, other] = [one, other].map(|colour| oklab(mix(sight, linear(colour))));
+                    let distance =
+                        one.iter().zip(other).map(|(one, other)| (one - other).powi(2)).sum::<f64>().sqrt();
+                    // Two per cent is about what can just be seen side by side.
+                    assert!(distance > 0.1, "{distance:.3}");
+                }
+            }
+        }
+    }
+
+    #[test]
+    fn colours_stand_out_from_white_and_from_dark_grounds() {
+        let luminance = |colour| mix([[0.2126, 0.7152, 0.0722]; 3], linear(colour))[0] + 0.05;
+        for colour in COLOURS {
+            // Contrast of 3:1, as WCAG 2 asks of what is drawn.
+            assert!(1.05 / luminance(colour) >= 3.0, "{colour} on white");
+            assert!(luminance(colour) / luminance("#111111") >= 3.0, "{colour} on dark");
+        }
+    }
+
+    #[test]
+    fn every_numbered_ink_up_to_twelve_differs_in_colour_or_line_style() {
+        for one in 0..12 {
+            for other in 0..one {
+                let look = |index| (colour(Ink::Numbered(index)), dashes(Ink::Numbered(index)));
+                assert_ne!(look(one), look(other));
+            }
+        }
     }
 }

@@ -55,7 +55,7 @@ fn axis_number(value: f64, decimals: usize) -> String {
     let (whole, rest) = text.split_at(text.find('.').unwrap_or(text.len()));
     let mut grouped = String::new();
     for (index, digit) in whole.chars().enumerate() {
-        if whole.len() > 4 && index > 0 && (whole.len() - index) % 3 == 0 {
+        if whole.len() > 4 && index > 0 && (whole.len() - index).is_multiple_of(3) {
             grouped.push('\u{202f}');
         }
         grouped.push(digit);
@@ -254,11 +254,11 @@ mod tests {
 
     #[test]
     fn short_spans_are_labelled_by_months_and_days() {
-        let (ticks, title) = time_ticks(Era::Ce, 2015.0, 2017.0, 90);
+        let (ticks, title) = time_ticks(Era::Ce, 2015.0, 2017.0, 100);
         assert_eq!(labels(&ticks)[..2], ["2015-01", "2015-04"]);
         assert_eq!(title, "date");
         let start = decimal_year(2016, 40);
-        let (ticks, _) = time_ticks(Era::Ce, start, start + 30.0 / 366.0, 90);
+        let (ticks, _) = time_ticks(Era::Ce, start, start + 30.0 / 366.0, 100);
         assert_eq!(labels(&ticks)[..2], ["2016-02-11", "2016-02-16"]);
     }
 }

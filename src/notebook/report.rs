@@ -151,6 +151,7 @@ impl Report {
             Shown::Bundle { total, .. } => ("  total\n", total),
             Shown::Quantity { .. }
             | Shown::Instant { .. }
+            | Shown::Events(_)
             | Shown::Span(_)
             | Shown::Range(_)
             | Shown::Clock(_)

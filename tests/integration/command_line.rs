@@ -244,3 +244,34 @@ fn any_number_of_threads_gives_the_same_bytes() {
     }
     assert!(one.out.matches("\"high\"").count() >= 8, "the script is about members");
 }
+
+#[test]
+fn figures_are_written_into_a_folder_under_safe_names() {
+    let folder = folder("figures");
+    let text = "clock = 1850..1900 CE by 1 yr\nwave = sinusoid(11 yr, 1 ± 0.1 W/m2, crest: 1850 CE)\nwave\n2 W/m2\nmean(wave)\ncompose(wave)\n";
+    fs::write(folder.join("script.rhy"), text).unwrap();
+    let run = finish(program().current_dir(&folder).args(["run", "script.rhy", "--figures", "plots/new"]));
+    assert_eq!(run.code, Some(0), "{run:?}");
+    let mut names: Vec<String> = fs::read_dir(folder.join("plots/new"))
+        .unwrap()
+        .map(|entry| entry.unwrap().file_name().into_string().unwrap())
+        .collect();
+    names.sort();
+    assert_eq!(names, ["01-wave.svg", "02-compose-wave.svg"]);
+    assert!(run.err.contains("wrote plots/new/01-wave.svg\n"), "{run:?}");
+    let svg = fs::read_to_string(folder.join("plots/new/01-wave.svg")).unwrap();
+    let document = roxmltree::Document::parse(&svg).unwrap();
+    assert!(document.descendants().any(|node| node.text() == Some("forcing (W m⁻²)")), "{svg}");
+}
+
+#[test]
+fn a_folder_that_cannot_be_made_is_said_and_the_results_are_printed_all_the_same() {
+    let run = script(
+        "no-figures",
+        "clock = 1850..1900 CE by 1 yr\nconstant(1 K)\n",
+        &["--figures", "script.rhy/plots"],
+    );
+    assert_eq!(run.code, Some(2), "{run:?}");
+    assert!(run.err.contains("figures cannot be written into script.rhy/plots"), "{run:?}");
+    assert!(run.out.contains("51 steps"), "{run:?}");
+}

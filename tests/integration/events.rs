@@ -6,7 +6,7 @@ use std::path::{Path, PathBuf};
 use serde_json::Value as Json;
 
 use rhythmite::display;
-use rhythmite::notebook::run_to_json;
+use rhythmite::notebook::{CodeCell, Run, run_to_json};
 use rhythmite::session::Session;
 use rhythmite::value::{Cell, Era, Events, Shown, Table};
 
@@ -89,7 +89,9 @@ fn events_are_one_object_in_json_and_rows_in_text() {
     let text = display::text(reply.outputs[0].result.as_ref().unwrap());
     assert!(text.contains("Kaltenberg") && text.contains("ash (m3)") && text.contains("age (ka)"), "{text}");
     assert_eq!(text, display::text(reply.outputs[1].result.as_ref().unwrap()));
-    let json = run_to_json(&session, &[(0, reply)]);
+    let cell = CodeCell { index: 0, id: "again".into(), name: "again".into(), source: "e".into() };
+    let run = Run::of(&mut session, &[cell]);
+    let json = run_to_json(&session, &run);
     let output = &json["outputs"][0];
     assert_eq!(output["kind"], "events");
     assert_eq!(output["unit"], "m3");

@@ -12,6 +12,7 @@ mod catalogue_examples;
 mod certified_science;
 mod command_line;
 mod events;
+mod figures;
 mod grammar;
 mod layers;
 mod python_reference;
