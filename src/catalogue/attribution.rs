@@ -444,11 +444,34 @@ fn grouped(call: &Call<'_>) -> Result<Vec<(Arc<str>, Content)>, Stop> {
         regressors.push((Arc::from(label.join(" + ")), content));
     }
     let used: Vec<&Arc<str>> = groups.iter().flatten().collect();
-    let top: Vec<&str> = labels.iter().filter(|label| !used.contains(label)).map(|label| &**label).collect();
-    if !top.is_empty() {
-        call.context.note(format!("not in any group, and so left out or part of one: {}", top.join(", ")));
+    for (index, label) in used.iter().enumerate() {
+        if used.iter().take(index).any(|other| other == label) {
+            return Err(Fault::new("argument-twice", format!("`{label}` stands in the groups twice"))
+                .blame("groups")
+                .into());
+        }
+    }
+    let mut left = Vec::new();
+    for (label, content) in listed(call, "to", to.as_ref())? {
+        left_out(&label, &content, &used, &mut left);
+    }
+    if !left.is_empty() {
+        call.context.note(format!("in no group, and so left out: {}", left.join(", ")));
     }
     Ok(regressors)
+}
+
+/// The drivers that no group names, neither themselves nor the bundle they stand in.
+fn left_out(label: &Arc<str>, content: &Content, used: &[&Arc<str>], left: &mut Vec<String>) {
+    match content {
+        _ if used.contains(&label) => {}
+        Content::Series(_) => left.push(label.to_string()),
+        Content::Bundle(bundle) => {
+            for part in &bundle.components {
+                left_out(&part.label, &part.content, used, left);
+            }
+        }
+    }
 }
 
 /// A component and, where it is a bundle, those inside it: a group may name either.

@@ -86,10 +86,10 @@ fn table(call: &Call<'_>) -> Result<Table, Stop> {
             for (label, series) in bundle.leaves() {
                 let series = onto_clock(call.context, series, &label)?;
                 columns.push(Column::in_unit(&label, &series.measure.unit));
-                values.push(series.values.member(0).to_vec());
+                values.push(numbers(series.values.member(0)));
             }
             columns.push(Column::in_unit("total", &sum.measure.unit));
-            values.push(sum.values.member(0).to_vec());
+            values.push(numbers(sum.values.member(0)));
             Ok(Table { title: label.to_string(), rows: time_rows(&sum, &values), columns, notes: Vec::new() })
         }
         Value::Model(model) => Ok(model.table(&[])),
@@ -123,30 +123,45 @@ fn time_column(series: &Series) -> Column {
     }
 }
 
-/// Calendar steps are named by the year they begin in, as they were written; ages by their number.
-fn time_rows(series: &Series, values: &[Vec<f64>]) -> Vec<Vec<Cell>> {
+/// Calendar steps are named by the year they begin in, as they were written; ages by their number. They show as
+/// many decimals as tell them exactly, three at most.
+fn time_rows(series: &Series, values: &[Vec<Cell>]) -> Vec<Vec<Cell>> {
     let axis = &series.axis;
     let named = |start: &f64| if axis.era.is_age() { axis.era.of_year(*start) } else { *start };
+    let exact = |decimals: &i32| {
+        let scale = 10f64.powi(*decimals);
+        axis.starts().iter().all(|start| (named(start) * scale - (named(start) * scale).round()).abs() < 1e-4)
+    };
+    let decimals = (0..3).find(exact).unwrap_or(3);
     axis.starts()
         .iter()
         .enumerate()
         .map(|(row, start)| {
-            let numbers =
-                values.iter().map(|column| Cell::number(column.get(row).copied().unwrap_or(f64::NAN)));
-            std::iter::once(Cell::number(named(start))).chain(numbers).collect()
+            let numbers = values.iter().map(|column| column.get(row).cloned().unwrap_or(Cell::Empty));
+            std::iter::once(Cell::Rounded(named(start), decimals)).chain(numbers).collect()
         })
         .collect()
+}
+
+fn numbers(values: &[f64]) -> Vec<Cell> {
+    values.iter().map(|value| Cell::number(*value)).collect()
 }
 
 fn series_table(call: &Call<'_>, series: &Series, label: &str) -> Result<Table, Stop> {
     let unit = &series.measure.unit;
     let mut columns = vec![time_column(series), Column::in_unit("value", unit)];
-    let mut values = vec![series.values.member(0).to_vec()];
+    let mut values = vec![numbers(series.values.member(0))];
     let mut notes = Vec::new();
     if let Some(spread) = call.slot("value").map(|slot| call.context.spread(slot)).transpose()?.flatten() {
+        let half: Vec<f64> =
+            spread.low.iter().zip(&spread.high).map(|(low, high)| 0.5 * (high - low)).collect();
+        let to_spread = |column: &[f64]| -> Vec<Cell> {
+            column.iter().zip(&half).map(|(value, half)| Cell::to_uncertainty(*value, *half)).collect()
+        };
+        values = vec![to_spread(series.values.member(0))];
         for (name, column) in [("median", &spread.median), ("low", &spread.low), ("high", &spread.high)] {
             columns.push(Column::in_unit(name, unit));
-            values.push(column.clone());
+            values.push(to_spread(column));
         }
         notes.push(format!("low and high are the 5–95 % range of {} members", spread.members));
     }

@@ -294,7 +294,7 @@ mod tests {
         assert!(plot.windows(2).all(|pair| first_ink(pair[0]) > first_ink(pair[1])), "{chart}");
         assert!(chart.lines().all(|line| line.chars().count() <= 70), "{chart}");
         assert!(
-            chart.starts_with("W/m2\n") && chart.contains("2000 CE") && chart.contains("  50 ┤"),
+            chart.starts_with("W/m2\n") && chart.contains("2000 CE") && chart.contains("50 ┤"),
             "{chart}"
         );
         assert!(!chart.contains("CE  "), "{chart}");

@@ -1,4 +1,4 @@
-use super::number::{plain, rounded, significant, with_range};
+use super::number::{plain, rounded, with_range};
 use crate::value::{
     Attribution, Axis, Cell, Era, Events, ForcingKind, Measure, Shown, ShownSeries, Spread, Table, Unit,
 };
@@ -311,7 +311,7 @@ fn aligned(cells: &[&Cell]) -> Vec<String> {
         .iter()
         .map(|cell| match cell {
             Cell::Text(text) => text.to_string(),
-            Cell::Number(value) => compact(*value),
+            Cell::Number(value) => plain(*value),
             Cell::Rounded(value, decimals) => rounded(*value, *decimals),
             Cell::Empty => String::new(),
         })
@@ -344,14 +344,4 @@ fn aligned(cells: &[&Cell]) -> Vec<String> {
             text + &" ".repeat(missing)
         })
         .collect()
-}
-
-/// Four significant digits for a table; whole numbers whole.
-fn compact(value: f64) -> String {
-    if (value - value.round()).abs() < 1e-9 && value.abs() < 1e7 {
-        // Minus nothing is nothing.
-        return format!("{}", value.round() + 0.0);
-    }
-    let digits = 4 - 1 - value.abs().log10().floor() as i32;
-    if (0..8).contains(&digits) { format!("{value:.*}", digits as usize) } else { significant(value, 4) }
 }
