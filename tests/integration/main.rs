@@ -15,6 +15,7 @@ mod events;
 mod figures;
 mod grammar;
 mod layers;
+mod notebooks;
 mod python_reference;
 mod readme;
 mod real_record;
