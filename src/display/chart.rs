@@ -4,7 +4,7 @@ use super::text;
 use super::ticks::{time_ticks, value_ticks};
 use crate::value::{
     Axis, AxisKind, Band, Dimension, Figure, ForcingKind, Ink, Line, Mark, Measure, Panel, PlotAxis, Reading,
-    Shown, ShownSeries,
+    Shown, ShownSeries, superscript,
 };
 
 /// What a figure says about where its result comes from.
@@ -178,7 +178,7 @@ fn value_axis(measure: &Measure, marks: &[Mark]) -> PlotAxis {
     let (low, high) = with_room(range.unwrap_or((0.0, 1.0)));
     let (ticks, power) = value_ticks(low, high, 8);
     let unit = measure.unit.typeset();
-    let raised: String = power.to_string().chars().map(superscript).collect();
+    let raised = superscript(&power.to_string());
     let unit = match (power, unit.as_str()) {
         (0, unit) => unit.to_owned(),
         (_, "") => format!("10{raised}"),
@@ -196,11 +196,6 @@ fn value_axis(measure: &Measure, marks: &[Mark]) -> PlotAxis {
         (words, unit) => format!("{words} ({unit})"),
     };
     PlotAxis { title, low, high, turned: false, ticks }
-}
-
-fn superscript(digit: char) -> char {
-    const RAISED: [char; 10] = ['⁰', '¹', '²', '³', '⁴', '⁵', '⁶', '⁷', '⁸', '⁹'];
-    digit.to_digit(10).and_then(|digit| RAISED.get(digit as usize).copied()).unwrap_or('⁻')
 }
 
 /// The range of the values with some room about them, and down to nothing where that is near.

@@ -146,7 +146,8 @@ fn year_ticks(start: f64, end: f64, most: usize) -> Vec<Tick> {
             let (at, number, word) = if number < 0.0 {
                 (number + 1.0, -number, " BCE")
             } else if number < 1.0 {
-                (1.0, 1.0, " CE")
+                // Between the eras stands the beginning of 1 CE; an axis that ends there begins its last year in 1 BCE.
+                (if both || start >= 1.0 { 1.0 } else { 0.0 }, 1.0, " CE")
             } else {
                 (number, number, " CE")
             };
@@ -176,12 +177,17 @@ fn month_ticks(start: f64, end: f64, letters: usize) -> Vec<Tick> {
 
 /// The beginnings of days.
 fn day_ticks(start: f64, end: f64, letters: usize) -> Vec<Tick> {
-    let days: Vec<(f64, String)> = (start.floor() as i64..=end.floor() as i64)
+    let mut days: Vec<(f64, String)> = (start.floor() as i64..=end.floor() as i64)
         .flat_map(|year| (0..366).map(move |day| (year, day)))
         .map(|(year, day)| decimal_year(year, day))
         .filter(|at| *at >= start - 1e-9 && *at <= end + 1e-9)
         .map(|at| (at, crate::value::date_label(at)))
         .collect();
+    // Day 366 of a common year is the next New Year again.
+    days.dedup_by(|one, before| one.1 == before.1);
+    if days.is_empty() {
+        return vec![Tick { at: start, label: crate::value::date_label(start) }];
+    }
     let ticks = |every: u32| -> Vec<Tick> {
         let wanted = |label: &str| {
             let day: u32 = label.rsplit('-').next().and_then(|day| day.parse().ok()).unwrap_or(1);
@@ -247,6 +253,12 @@ mod tests {
         assert_eq!((ticks[1].at, title.as_str()), (-499.0, "year"));
         let (ticks, title) = time_ticks(Era::Bce, -299.0, -99.0, 90);
         assert_eq!((labels(&ticks)[0], title.as_str()), ("300", "year BCE"));
+        let (ticks, _) = time_ticks(Era::Bce, -9.0, 1.0, 90);
+        assert_eq!(
+            (ticks.last().map(|tick| (tick.at, &*tick.label))),
+            Some((0.0, "1")),
+            "the last year before 1 CE"
+        );
         let (ticks, title) = time_ticks(Era::Ce, 1850.0, 2021.0, 90);
         assert_eq!(labels(&ticks), ["1860", "1880", "1900", "1920", "1940", "1960", "1980", "2000", "2020"]);
         assert_eq!(title, "year CE");
@@ -260,5 +272,12 @@ mod tests {
         let start = decimal_year(2016, 40);
         let (ticks, _) = time_ticks(Era::Ce, start, start + 30.0 / 366.0, 100);
         assert_eq!(labels(&ticks)[..2], ["2016-02-11", "2016-02-16"]);
+        let (ticks, _) = time_ticks(Era::Ce, 2015.0 - 3.0 / 365.0, 2015.0 + 2.5 / 365.0, 100);
+        assert_eq!(
+            labels(&ticks),
+            ["2014-12-29", "2014-12-30", "2014-12-31", "2015-01-01", "2015-01-02", "2015-01-03"]
+        );
+        let (ticks, _) = time_ticks(Era::Ce, 2015.0 + 0.25 / 365.0, 2015.0 + 0.75 / 365.0, 100);
+        assert_eq!(labels(&ticks), ["2015-01-01"]);
     }
 }

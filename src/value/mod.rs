@@ -34,6 +34,7 @@ pub use shape::Shape;
 pub use shown::{Shown, ShownSeries};
 pub use spread::Spread;
 pub use table::{Cell, Column, Table};
+pub(crate) use unit::superscript;
 pub use unit::{Unit, UnitFault};
 pub use unit_table::{UNITS, UnitEntry, unit_spellings};
 

@@ -194,14 +194,6 @@ impl Unit {
 
     /// The unit as it is printed beside an axis: `W m⁻²`, `°C`, `‰`; nothing for a plain number.
     pub fn typeset(&self) -> String {
-        let superscript = |digit: char| match digit {
-            '-' => '⁻',
-            '0' => '⁰',
-            '1' => '¹',
-            '2' => '²',
-            '3' => '³',
-            digit => digit.to_digit(10).and_then(|digit| char::from_u32(0x2070 + digit)).unwrap_or(digit),
-        };
         let word = |factor: &Factor| {
             let symbol = match &*factor.symbol {
                 "degC" => "°C".to_owned(),
@@ -214,7 +206,7 @@ impl Unit {
                 other => other.to_owned(),
             };
             let exponent = if factor.exponent == 1 { String::new() } else { factor.exponent.to_string() };
-            symbol + &exponent.chars().map(superscript).collect::<String>()
+            symbol + &superscript(&exponent)
         };
         self.factors.iter().map(word).collect::<Vec<_>>().join(" ")
     }
@@ -235,6 +227,18 @@ impl Unit {
         }
         fault
     }
+}
+
+/// The digits of a whole number and its sign, raised.
+pub(crate) fn superscript(number: &str) -> String {
+    let raised = |digit: char| match digit {
+        '-' => '⁻',
+        '1' => '¹',
+        '2' => '²',
+        '3' => '³',
+        digit => digit.to_digit(10).and_then(|digit| char::from_u32(0x2070 + digit)).unwrap_or(digit),
+    };
+    number.chars().map(raised).collect()
 }
 
 fn is_kelvin(symbol: &str) -> bool {
