@@ -1,25 +1,22 @@
-//! The session's face: what running a cell installs, shows and moves. Longer than most files, because the steps of one
-//! execution stand in it in their order.
+//! The session's face: what running a cell installs. What it shows and moves stands in `displays`.
 
 use std::collections::{BTreeMap, BTreeSet};
 use std::path::PathBuf;
-use std::sync::Arc;
 use std::sync::atomic::{AtomicU64, Ordering};
+use std::sync::{Arc, OnceLock};
 
 use super::definitions::{Definitions, Function, SESSION_LIMIT};
+use super::displays::{Audience, Display, Output, Postponed, Silent};
 use super::environment::Environment;
-use super::evaluate::{Caches, Evaluator};
-use super::fingerprint::{Fingerprint, Parts};
+use super::evaluate::{Caches, Evaluator, internal};
 use super::graph::Graph;
 use super::inputs::{FILE_LIMIT, Inputs};
 use super::memo::Memo;
-use super::node::Node;
 use super::outside::function_key;
-use super::resolve::{SETTINGS, SIZE_LIMIT, resolve};
+use super::resolve::{SIZE_LIMIT, resolve};
+use super::settings::environment;
 use crate::base::{Cancellation, Diagnostic, Fault, Source, SourceId, Span};
-use crate::catalogue::{Path, Stop};
 use crate::language::{Expression, Program, Statement, StatementKind, canonical, parse};
-use crate::value::{Shown, Value};
 
 /// How many bytes of values a session remembers where nobody says otherwise.
 const MEMORY: usize = 512 * 1024 * 1024;
@@ -46,18 +43,8 @@ pub struct Session {
     pub(super) cancellation: Cancellation,
     pub(super) evaluations: AtomicU64,
     pub(super) threads: Arc<rayon::ThreadPool>,
-}
-
-/// One shown expression, for as long as its cell shows it.
-pub(super) struct Display {
-    id: u64,
-    pub(super) cell: Arc<str>,
-    text: String,
-    expression: Expression,
-    pub(super) node: Result<Arc<Node>, Diagnostic>,
-    /// How many nodes were made for it, also in vain.
-    cost: usize,
-    fingerprint: Fingerprint,
+    /// A thread to look at definitions on while the others compute; made when it is first needed.
+    desk: OnceLock<rayon::ThreadPool>,
 }
 
 /// What running a cell gave.
@@ -65,8 +52,10 @@ pub(super) struct Display {
 pub struct CellReply {
     /// The shown expressions of the cell, in order.
     pub outputs: Vec<Output>,
-    /// Displays of other cells whose results moved, in the order they were first shown.
+    /// Displays of other cells whose results moved, each after those of what it follows from.
     pub moved: Vec<Output>,
+    /// Displays of other cells whose results moved and are not evaluated afresh yet; the next execution does it.
+    pub postponed: Vec<Postponed>,
     /// What is wrong with the text or the definitions of the cell.
     pub problems: Vec<Diagnostic>,
     /// Definitions of the cell that wait for a name that is not defined yet.
@@ -77,25 +66,6 @@ pub struct CellReply {
     pub incomplete: bool,
     /// Whether the text could be read and its definitions are in force.
     pub installed: bool,
-}
-
-/// One shown result.
-#[derive(Debug)]
-pub struct Output {
-    /// Names the display for as long as its cell shows it.
-    pub display: u64,
-    /// The cell it stands in.
-    pub cell: Arc<str>,
-    /// The expression, as it was written.
-    pub expression: String,
-    /// What the result follows from.
-    pub fingerprint: Fingerprint,
-    /// The result, or why there is none.
-    pub result: Result<Shown, Diagnostic>,
-    /// What was decided and done on the way.
-    pub notes: Vec<Arc<str>>,
-    /// The names whose change moved it; none on execution.
-    pub refreshed_by: Vec<String>,
 }
 
 impl Session {
@@ -112,15 +82,6 @@ impl Session {
         memory: usize,
         file_limit: u64,
     ) -> Self {
-        let builder = rayon::ThreadPoolBuilder::new().stack_size(STACK).num_threads(threads.unwrap_or(0));
-        // Where the system gives no further threads, the calling one does the work.
-        let threads = builder
-            .build()
-            .or_else(|_| rayon::ThreadPoolBuilder::new().num_threads(1).use_current_thread().build());
-        let threads = match threads {
-            Ok(threads) => Arc::new(threads),
-            Err(error) => unreachable!("a pool of the current thread alone: {error}"),
-        };
         Self {
             definitions: Definitions::default(),
             displays: Vec::new(),
@@ -133,7 +94,8 @@ impl Session {
             memo: Memo::new(memory),
             cancellation: Cancellation::new(),
             evaluations: AtomicU64::new(0),
-            threads,
+            threads: Arc::new(pool(threads.unwrap_or(0))),
+            desk: OnceLock::new(),
         }
     }
 
@@ -172,7 +134,8 @@ impl Session {
         self.names.get(cell).map_or(cell, String::as_str)
     }
 
-    /// Say that cells are gone from the notebook: what they define stays, and what depends on it says so.
+    /// Say that cells are gone from the notebook: what they define stays, and what depends on it says so. What they
+    /// show is evaluated no more.
     pub fn mark_deleted(&mut self, cells: &[&str]) {
         for definition in self.definitions.values.values_mut() {
             definition.deleted |= cells.contains(&&*definition.cell);
@@ -184,6 +147,17 @@ impl Session {
             function.rivals.retain(|cell| !cells.contains(&&**cell));
         }
         self.displays.retain(|display| !cells.contains(&&*display.cell));
+    }
+
+    /// Forget a cell that is not run again: its displays, and its text where nothing is defined in it.
+    pub fn retire_cell(&mut self, cell: &str) {
+        self.displays.retain(|display| &*display.cell != cell);
+        let homes = self.definitions.values.values().map(|definition| &definition.cell);
+        let homes = homes.chain(self.definitions.functions.values().map(|function| &function.cell));
+        if homes.into_iter().all(|home| &**home != cell) {
+            self.names.remove(cell);
+            self.newest.remove(cell);
+        }
     }
 
     /// Names that more than one cell defines, with the cell in force and the others.
@@ -205,17 +179,42 @@ impl Session {
     ///
     /// A cell with a syntax error installs nothing. A name that the cell defined before and no longer does is removed.
     pub fn run_cell(&mut self, cell: &str, text: &str) -> CellReply {
-        // On a thread of the pool, whose stack is deep enough for everything that the caps let through.
-        let threads = self.threads.clone();
-        let run = std::panic::AssertUnwindSafe(|| threads.install(|| self.run_here(cell, text)));
-        std::panic::catch_unwind(run).unwrap_or_else(|_| {
-            let fault = super::evaluate::internal("this cell could not be run to its end");
-            let span = Span::new(SourceId(self.next_source.saturating_sub(1)), 0, text.len());
-            CellReply { problems: vec![fault.at(span)], ..CellReply::default() }
-        })
+        let mut reply = self.install_cell(cell, text);
+        self.show_cell(cell, &mut reply, &mut Silent);
+        self.settle(&reply);
+        reply
     }
 
-    fn run_here(&mut self, cell: &str, text: &str) -> CellReply {
+    /// The first step of [`Session::run_cell`]: read the text and put its definitions in force. Takes no longer than
+    /// reading; [`Session::show_cell`] and [`Session::settle`] follow.
+    pub fn install_cell(&mut self, cell: &str, text: &str) -> CellReply {
+        // On a thread of the pool, whose stack is deep enough for everything that the caps let through.
+        let threads = self.threads.clone();
+        let install = std::panic::AssertUnwindSafe(|| threads.install(|| self.install_here(cell, text)));
+        std::panic::catch_unwind(install).unwrap_or_else(|_| self.broken(text.len()))
+    }
+
+    /// The second step of [`Session::run_cell`]: check the cell's definitions, evaluate what it shows and what moved
+    /// elsewhere, and tell each result as soon as it is there. Whoever holds the session may look things up meanwhile.
+    pub fn show_cell(&self, cell: &str, reply: &mut CellReply, audience: &mut dyn Audience) {
+        if !reply.installed {
+            return audience.checked(self, reply);
+        }
+        let show = std::panic::AssertUnwindSafe(|| {
+            self.threads.install(|| self.show_here(cell, reply, audience));
+        });
+        if std::panic::catch_unwind(show).is_err() {
+            reply.problems.extend(self.broken(0).problems);
+        }
+    }
+
+    fn broken(&self, length: usize) -> CellReply {
+        let fault = internal("this cell could not be run to its end");
+        let span = Span::new(SourceId(self.next_source.saturating_sub(1)), 0, length);
+        CellReply { problems: vec![fault.at(span)], ..CellReply::default() }
+    }
+
+    fn install_here(&mut self, cell: &str, text: &str) -> CellReply {
         let text = text.strip_prefix('\u{feff}').unwrap_or(text);
         let source = self.add_source(cell, text);
         self.cancellation.reset();
@@ -241,28 +240,20 @@ impl Session {
             }
         };
         reply.installed = true;
-        let changed = changed(&before, &self.bindings());
         self.displays.retain(|display| display.cell != cell);
+        let changed = changed(&before, &self.bindings());
+        for display in &mut self.displays {
+            display.add_changes(&changed);
+        }
         let mut used: usize = self.displays.iter().map(|display| display.cost).sum();
-        for (expression, span_text) in shown {
+        for (expression, text) in shown {
             let (node, cost) =
                 resolve(&self.definitions, None, &expression, SESSION_LIMIT.saturating_sub(used));
             used += cost;
-            let fingerprint = Parts::new("not evaluated").finish();
             let id = self.next_display;
             self.next_display += 1;
-            self.displays.push(Display {
-                id,
-                cell: cell.clone(),
-                text: span_text,
-                expression,
-                node,
-                cost,
-                fingerprint,
-            });
+            self.displays.push(Display::new(id, cell.clone(), text, expression, node, cost));
         }
-        self.evaluate(&cell, &changed, &mut reply);
-        self.forget_sources(&reply);
         reply
     }
 
@@ -374,63 +365,49 @@ impl Session {
         self.definitions.functions.iter().map(|(name, function)| (name.clone(), text(function))).collect()
     }
 
-    /// Look at the definitions in force with an evaluator, on a thread whose stack is deep enough; nothing where
-    /// that fails.
+    /// Look at the definitions in force with an evaluator, on a thread of its own whose stack is deep enough; nothing
+    /// where that fails. A computation that is going on is not disturbed.
     pub(super) fn consult<T: Send>(
         &self,
         ask: impl FnOnce(&Evaluator<'_>, &Environment) -> T + Send,
     ) -> Option<T> {
-        self.cancellation.reset();
-        let graph = Graph::of(&self.definitions);
+        let desk = self.desk.get_or_init(|| pool(1));
         let consulted = std::panic::AssertUnwindSafe(|| {
-            self.threads.install(|| {
-                let evaluator = Evaluator {
-                    definitions: &self.definitions,
-                    graph: &graph,
-                    inputs: &self.inputs,
-                    memo: &self.memo,
-                    cancellation: &self.cancellation,
-                    evaluations: &self.evaluations,
-                    caches: Caches::default(),
-                };
+            desk.install(|| {
+                let graph = Graph::of(&self.definitions);
+                let never = Cancellation::new();
+                let evaluator = self.evaluator(&graph, &never);
                 let environment = environment(&evaluator);
-                prepare(&evaluator, &environment);
+                evaluator.prepare(&environment);
                 ask(&evaluator, &environment)
             })
         });
         std::panic::catch_unwind(consulted).ok()
     }
 
-    fn evaluate(&mut self, cell: &Arc<str>, changed: &[String], reply: &mut CellReply) {
-        let graph = Graph::of(&self.definitions);
-        let evaluator = Evaluator {
+    pub(super) fn evaluator<'s>(&'s self, graph: &'s Graph, cancellation: &'s Cancellation) -> Evaluator<'s> {
+        Evaluator {
             definitions: &self.definitions,
-            graph: &graph,
+            graph,
             inputs: &self.inputs,
             memo: &self.memo,
-            cancellation: &self.cancellation,
+            cancellation,
             evaluations: &self.evaluations,
             caches: Caches::default(),
-        };
-        let (own, others): (Vec<&mut Display>, Vec<&mut Display>) =
-            self.displays.iter_mut().partition(|display| display.cell == *cell);
-        let environment = environment(&evaluator);
-        prepare(&evaluator, &environment);
-        check(&evaluator, cell, &environment, reply);
-        for display in own {
-            let output = show(&evaluator, display, &environment, &[]);
-            reply.outputs.push(output);
         }
-        for display in others {
-            let print = print_of(&evaluator, display, &environment);
-            if print != display.fingerprint {
-                let used = words_behind(&self.definitions, display);
-                let files = self.inputs.changed();
-                let by: Vec<String> =
-                    changed.iter().chain(&files).filter(|name| used.contains(bare(name))).cloned().collect();
-                reply.moved.push(show(&evaluator, display, &environment, &by));
+    }
+
+    /// The last step of [`Session::run_cell`]: remember what was told, so that only what differs from it moves.
+    pub fn settle(&mut self, reply: &CellReply) {
+        let files = self.inputs.changed();
+        for display in &mut self.displays {
+            display.add_changes(&files);
+            let told = reply.outputs.iter().chain(&reply.moved).find(|output| output.display == display.id);
+            if let Some(output) = told {
+                display.settle(output);
             }
         }
+        self.forget_sources(reply);
     }
 
     /// Keep the texts that definitions, displays or the reply still point into.
@@ -448,26 +425,17 @@ impl Session {
     }
 }
 
-/// A function's name without its parameters.
-fn bare(name: &str) -> &str {
-    name.split('(').next().unwrap_or(name)
-}
-
-/// Every name, function and text that a display's result can follow from, and the settings.
-fn words_behind(definitions: &Definitions, display: &Display) -> BTreeSet<String> {
-    let mut words: BTreeSet<String> = SETTINGS.iter().map(|name| (*name).to_owned()).collect();
-    let mut waiting: Vec<&Expression> = vec![&display.expression];
-    while let Some(expression) = waiting.pop() {
-        let mut found = Vec::new();
-        expression.words(&mut found);
-        for word in found {
-            if words.insert(word.clone()) {
-                waiting.extend(definitions.values.get(&*word).map(|definition| &definition.expression));
-                waiting.extend(definitions.functions.get(&word).map(|function| &function.body));
-            }
-        }
+/// A pool of so many threads with deep stacks, one for each processor where it is 0.
+fn pool(threads: usize) -> rayon::ThreadPool {
+    let builder = rayon::ThreadPoolBuilder::new().stack_size(STACK).num_threads(threads);
+    // Where the system gives no further threads, the calling one does the work.
+    let pool = builder
+        .build()
+        .or_else(|_| rayon::ThreadPoolBuilder::new().num_threads(1).use_current_thread().build());
+    match pool {
+        Ok(pool) => pool,
+        Err(error) => unreachable!("a pool of the current thread alone: {error}"),
     }
-    words
 }
 
 fn taken_over(name: &str, cell: &str) -> String {
@@ -478,160 +446,4 @@ fn taken_over(name: &str, cell: &str) -> String {
 fn changed(before: &BTreeMap<String, String>, after: &BTreeMap<String, String>) -> Vec<String> {
     let names: BTreeSet<&String> = before.keys().chain(after.keys()).collect();
     names.into_iter().filter(|name| before.get(*name) != after.get(*name)).cloned().collect()
-}
-
-/// The settings in force.
-pub(super) fn environment(evaluator: &Evaluator<'_>) -> Environment {
-    let mut environment = Environment::empty();
-    let setting = |name: &str| -> Option<Result<Arc<Value>, Stop>> {
-        let definition = evaluator.definitions.values.get(name)?;
-        if let Some(problem) = evaluator.graph.problems.get(name) {
-            return Some(Err(Stop::Placed(Box::new(problem.clone()))));
-        }
-        let node = match &definition.node {
-            Ok(node) => node,
-            Err(problem) => return Some(Err(Stop::Placed(Box::new(problem.clone())))),
-        };
-        Some(evaluator.shape(node, &Environment::empty()).and_then(|_| {
-            evaluator.value(node, &Environment::empty(), Path::Nominal).map(|(value, _)| value)
-        }))
-    };
-    for name in ["members", "seed"] {
-        let problem = evaluator.definitions.values.get(name).and_then(|definition| match &definition.node {
-            Ok(node) => super::settings::check(evaluator, name, node),
-            Err(problem) => Some(problem.clone()),
-        });
-        if let Some(problem) = problem {
-            environment.members_problem = Some(Arc::new(problem));
-            continue;
-        }
-        if let Some(Ok(value)) = setting(name)
-            && let Value::Quantity(number) = value.as_ref()
-        {
-            match name {
-                "members" => environment.members = number.first() as u64,
-                _ => environment.seed = number.first() as u64,
-            }
-        }
-    }
-    match setting("clock") {
-        None => {}
-        Some(Ok(value)) => {
-            if let Value::Clock(clock) = value.as_ref() {
-                environment = environment.with_clock(clock.clone());
-            }
-        }
-        Some(Err(Stop::Placed(problem))) => environment = environment.without_clock(Arc::from(problem)),
-        Some(Err(Stop::Fault(_))) => {}
-    }
-    environment
-}
-
-/// Evaluate shapes along the order of references, so that no chain of definitions is walked by recursion.
-pub(super) fn prepare(evaluator: &Evaluator<'_>, environment: &Environment) {
-    for name in &evaluator.graph.order {
-        let Some(definition) = evaluator.definitions.values.get(name) else { continue };
-        if let (Ok(node), false) = (&definition.node, evaluator.graph.problems.contains_key(name)) {
-            // What is wrong is told where the name is defined or shown.
-            let _ = evaluator.shape(node, environment);
-            let _ = evaluator.fingerprint(node, environment);
-        }
-    }
-}
-
-/// Check the definitions of a cell, so that their errors do not wait to be shown.
-pub(super) fn check(evaluator: &Evaluator<'_>, cell: &str, environment: &Environment, reply: &mut CellReply) {
-    for (name, definition) in &evaluator.definitions.values {
-        if &*definition.cell != cell {
-            continue;
-        }
-        let stem = |name: &str| name.to_lowercase().trim_end_matches('s').to_owned();
-        if let Some(setting) =
-            SETTINGS.iter().find(|setting| **setting != &**name && stem(setting) == stem(name))
-        {
-            reply.notices.push(format!("`{name}` is a name of yours; the setting is called `{setting}`"));
-        }
-        let problem = match (&definition.node, evaluator.graph.problems.get(name)) {
-            (_, Some(problem)) | (Err(problem), None) => Some(problem.clone()),
-            (Ok(node), None) => match super::settings::check(evaluator, name, node) {
-                Some(problem) => Some(problem),
-                None => match evaluator.shape(node, environment) {
-                    Ok(_) => None,
-                    Err(Stop::Placed(problem)) => Some(*problem),
-                    Err(Stop::Fault(fault)) => Some(fault.at(node.span)),
-                },
-            },
-        };
-        match problem {
-            Some(problem) if problem.code == "not-defined" => reply.waiting.push(problem),
-            // A fault in another cell's definition is told there.
-            Some(problem) if reply.problems.contains(&problem) => {}
-            Some(problem) => reply.problems.push(problem),
-            None => {}
-        }
-    }
-}
-
-fn print_of(evaluator: &Evaluator<'_>, display: &Display, environment: &Environment) -> Fingerprint {
-    match &display.node {
-        Ok(node) => {
-            let shape = evaluator.shape(node, environment);
-            match shape {
-                Ok(_) => evaluator.fingerprint(node, environment),
-                Err(stop) => broken(&stop),
-            }
-        }
-        Err(problem) => broken(&Stop::Placed(Box::new(problem.clone()))),
-    }
-}
-
-/// The fingerprint of a display that shows an error.
-fn broken(stop: &Stop) -> Fingerprint {
-    let mut parts = Parts::new("error");
-    match stop {
-        Stop::Placed(problem) => {
-            parts.text(problem.code);
-            parts.text(&problem.message);
-        }
-        Stop::Fault(fault) => {
-            parts.text(fault.code);
-            parts.text(&fault.message);
-        }
-    }
-    parts.finish()
-}
-
-fn show(
-    evaluator: &Evaluator<'_>,
-    display: &mut Display,
-    environment: &Environment,
-    changed: &[String],
-) -> Output {
-    display.fingerprint = print_of(evaluator, display, environment);
-    let result = match &display.node {
-        Ok(node) => evaluator.shape(node, environment).and_then(|_| evaluator.shown(node, environment)),
-        Err(problem) => Err(Stop::Placed(Box::new(problem.clone()))),
-    };
-    let (result, mut notes) = match result {
-        Ok((shown, notes)) => (Ok(shown), notes.to_vec()),
-        Err(Stop::Placed(problem)) => (Err(*problem), Vec::new()),
-        Err(Stop::Fault(fault)) => (Err(fault.at(display.expression.span)), Vec::new()),
-    };
-    for word in words_behind(evaluator.definitions, display) {
-        let name = evaluator.definitions.values.get(&*word).filter(|definition| definition.deleted);
-        let function = evaluator.definitions.functions.get(&word).filter(|function| function.deleted);
-        let word = if function.is_some() { function_key(&word) } else { word };
-        if name.is_some() || function.is_some() {
-            notes.push(Arc::from(format!("`{word}` is defined in a cell that was deleted")));
-        }
-    }
-    Output {
-        display: display.id,
-        cell: display.cell.clone(),
-        expression: display.text.clone(),
-        fingerprint: display.fingerprint,
-        result,
-        notes,
-        refreshed_by: changed.to_vec(),
-    }
 }

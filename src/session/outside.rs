@@ -3,10 +3,9 @@
 use std::collections::BTreeMap;
 use std::sync::Arc;
 
-use super::cell::{Session, check, environment, prepare};
+use super::cell::Session;
 use super::definitions::Definitions;
-use super::evaluate::{Caches, Evaluator, internal};
-use super::graph::Graph;
+use super::evaluate::internal;
 use super::resolve::SETTINGS;
 use crate::base::{Diagnostic, Fault, SourceId, Span};
 use crate::catalogue::nearest;
@@ -133,38 +132,21 @@ impl Session {
     /// What is wrong with cells now, which may be less than when they were run: a name they waited for has come, or
     /// another cell has put a definition right. The mistakes of a cell that was not installed are not among them.
     pub fn standing(&self, cells: &[&str]) -> Vec<Standing> {
-        let threads = self.threads.clone();
-        let check = std::panic::AssertUnwindSafe(|| threads.install(|| self.standing_here(cells)));
-        std::panic::catch_unwind(check).unwrap_or_else(|_| {
+        let standing = self.consult(|evaluator, environment| {
+            let stand = |cell: &&str| {
+                let mut reply = super::CellReply::default();
+                evaluator.check(cell, environment, &mut reply);
+                Standing { problems: reply.problems, waiting: reply.waiting }
+            };
+            cells.iter().map(stand).collect()
+        });
+        standing.unwrap_or_else(|| {
             let problem = internal("these cells could not be checked").at(Span::new(SourceId(0), 0, 0));
             cells
                 .iter()
                 .map(|_| Standing { problems: vec![problem.clone()], ..Standing::default() })
                 .collect()
         })
-    }
-
-    fn standing_here(&self, cells: &[&str]) -> Vec<Standing> {
-        let graph = Graph::of(&self.definitions);
-        let evaluator = Evaluator {
-            definitions: &self.definitions,
-            graph: &graph,
-            inputs: &self.inputs,
-            memo: &self.memo,
-            cancellation: &self.cancellation,
-            evaluations: &self.evaluations,
-            caches: Caches::default(),
-        };
-        let environment = environment(&evaluator);
-        prepare(&evaluator, &environment);
-        cells
-            .iter()
-            .map(|cell| {
-                let mut reply = super::CellReply::default();
-                check(&evaluator, cell, &environment, &mut reply);
-                Standing { problems: reply.problems, waiting: reply.waiting }
-            })
-            .collect()
     }
 
     /// Whether a definition from outside wins over one that a cell makes for this key: says so.

@@ -110,7 +110,7 @@ impl Evaluator<'_> {
     }
 
     /// The environment of the first argument: another clock, where the entry says that it is evaluated under one.
-    fn environment_of_first(
+    pub(super) fn environment_of_first(
         &self,
         node: &Arc<Node>,
         call: &CallNode,

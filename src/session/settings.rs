@@ -1,4 +1,4 @@
-//! The three settings: what they may be bound to.
+//! The three settings: what they may be bound to, and what is in force.
 
 use std::sync::Arc;
 
@@ -9,6 +9,53 @@ use super::show::MEMBERS_LIMIT;
 use crate::base::{Diagnostic, Fault};
 use crate::catalogue::{Path, Stop};
 use crate::value::Value;
+
+/// The settings in force.
+pub(super) fn environment(evaluator: &Evaluator<'_>) -> Environment {
+    let mut environment = Environment::empty();
+    let setting = |name: &str| -> Option<Result<Arc<Value>, Stop>> {
+        let definition = evaluator.definitions.values.get(name)?;
+        if let Some(problem) = evaluator.graph.problems.get(name) {
+            return Some(Err(Stop::Placed(Box::new(problem.clone()))));
+        }
+        let node = match &definition.node {
+            Ok(node) => node,
+            Err(problem) => return Some(Err(Stop::Placed(Box::new(problem.clone())))),
+        };
+        Some(evaluator.shape(node, &Environment::empty()).and_then(|_| {
+            evaluator.value(node, &Environment::empty(), Path::Nominal).map(|(value, _)| value)
+        }))
+    };
+    for name in ["members", "seed"] {
+        let problem = evaluator.definitions.values.get(name).and_then(|definition| match &definition.node {
+            Ok(node) => check(evaluator, name, node),
+            Err(problem) => Some(problem.clone()),
+        });
+        if let Some(problem) = problem {
+            environment.members_problem = Some(Arc::new(problem));
+            continue;
+        }
+        if let Some(Ok(value)) = setting(name)
+            && let Value::Quantity(number) = value.as_ref()
+        {
+            match name {
+                "members" => environment.members = number.first() as u64,
+                _ => environment.seed = number.first() as u64,
+            }
+        }
+    }
+    match setting("clock") {
+        None => {}
+        Some(Ok(value)) => {
+            if let Value::Clock(clock) = value.as_ref() {
+                environment = environment.with_clock(clock.clone());
+            }
+        }
+        Some(Err(Stop::Placed(problem))) => environment = environment.without_clock(Arc::from(problem)),
+        Some(Err(Stop::Fault(_))) => {}
+    }
+    environment
+}
 
 /// What is wrong with the definition of a setting; nothing for other names.
 pub(super) fn check(evaluator: &Evaluator<'_>, name: &str, node: &Arc<Node>) -> Option<Diagnostic> {

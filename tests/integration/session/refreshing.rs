@@ -4,7 +4,7 @@ use std::fs;
 use std::time::{Duration, SystemTime};
 
 use super::{folder, place, run, session, value};
-use rhythmite::session::{CellReply, Session};
+use rhythmite::session::{Audience, CellReply, Output, Session};
 
 /// The expressions of the displays that moved.
 fn moved(reply: &CellReply) -> Vec<&str> {
@@ -320,4 +320,79 @@ fn texts_that_nothing_points_into_are_forgotten() {
     run(&mut session, "home", "x = 2");
     let kept = (0..100).filter(|id| session.source(rhythmite::base::SourceId(*id)).is_some()).count();
     assert_eq!(kept, 1);
+}
+
+#[test]
+fn a_setting_that_is_not_read_moves_nothing_and_is_not_named() {
+    let mut session = session();
+    run(&mut session, "settings", "start = 1850 CE\nclock = start..1853 CE by 1 yr\nseed = 1\nx = 2");
+    run(
+        &mut session,
+        "shown",
+        "x ± 0.1\nconstant(1 W/m2) |> mean()\nconstant(1 W/m2) |> on(0..2 ka by 1 kyr)",
+    );
+    let settings = "start = 1851 CE\nclock = start..1853 CE by 1 yr\nseed = 2\nx = 3";
+    let reply = run(&mut session, "settings", settings);
+    assert_eq!(moved(&reply), ["constant(1 W/m2) |> mean()", "x ± 0.1"]);
+    assert_eq!(refreshed_by(&reply), [vec!["start"], vec!["seed", "x"]]);
+}
+
+#[test]
+fn moved_displays_come_after_those_of_what_they_follow_from() {
+    let mut session = session();
+    run(&mut session, "one", "a = 1");
+    session.run_cell("late", "c * 100");
+    run(&mut session, "two", "b = a + 1\nc = b + 1\nb * 10");
+    assert_eq!(moved(&run(&mut session, "one", "a = 5")), ["b * 10", "c * 100"]);
+}
+
+/// An audience that lets so many displays of other cells be refreshed.
+struct Patience(usize);
+
+impl Audience for Patience {
+    fn checked(&mut self, _: &Session, _: &CellReply) {}
+    fn shown(&mut self, _: &Session, _: &CellReply, _: &Output) {}
+    fn answered(&mut self, _: &Session, _: &CellReply) -> bool {
+        self.0 > 0
+    }
+    fn refreshed(&mut self, _: &Session, _: &CellReply, _: &Output) -> bool {
+        self.0 -= 1;
+        self.0 > 0
+    }
+}
+
+fn run_with_patience(session: &mut Session, cell: &str, text: &str, patience: usize) -> CellReply {
+    let mut reply = session.install_cell(cell, text);
+    session.show_cell(cell, &mut reply, &mut Patience(patience));
+    session.settle(&reply);
+    reply
+}
+
+#[test]
+fn what_is_postponed_is_refreshed_with_the_next_cell_and_names_all_that_moved_it() {
+    let mut session = session();
+    run(&mut session, "home", "a = 1\nb = 2");
+    run(&mut session, "shown", "a + b\na * 10\nb * 10");
+    let first = run_with_patience(&mut session, "home", "a = 5\nb = 2", 1);
+    assert_eq!(moved(&first), ["a + b"]);
+    assert_eq!(first.postponed.iter().map(|late| late.expression.as_str()).collect::<Vec<_>>(), ["a * 10"]);
+    let second = run_with_patience(&mut session, "home", "a = 5\nb = 3", 0);
+    assert!(second.moved.is_empty() && second.postponed.len() == 3);
+    let third = run(&mut session, "other", "z = 1");
+    assert_eq!(moved(&third), ["a + b", "a * 10", "b * 10"]);
+    assert_eq!(refreshed_by(&third), [vec!["b"], vec!["a"], vec!["b"]]);
+    assert!(run(&mut session, "other", "z = 1").moved.is_empty());
+}
+
+#[test]
+fn only_what_names_nothing_and_reads_nothing_is_fixed() {
+    let mut session = session();
+    run(&mut session, "names", "x = 1\nf(y) = y + 1\nclock = 1850..1851 CE by 1 yr");
+    let fixed = |session: &mut Session, text: &str| run(session, "shown", text).outputs[0].fixed;
+    for text in ["1 + 1", "[1, 2] degC", "\"hello\"", "1850 CE - 3 yr", "[2 * e for e in [1, 2]]"] {
+        assert!(fixed(&mut session, text), "{text}");
+    }
+    for text in ["x", "f(1)", "1 ± 0.1", "constant(1 W/m2)", "[x * e for e in [1, 2]]", "seed"] {
+        assert!(!fixed(&mut session, text), "{text}");
+    }
 }
