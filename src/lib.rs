@@ -1,12 +1,14 @@
 //! Rhythmite: a language for climate forcing time series.
 //!
 //! The layers, each of which uses only those before it, are `base`, `science`, `value`, `files`, `display`,
-//! `language`, `catalogue`, `session`, `notebook` and `talk`; `DEVELOPERS.md` says what each is for.
+//! `language`, `catalogue`, `session`, `notebook`, `kernel` and `talk`; `DEVELOPERS.md` says what each is for.
 
 pub mod base;
 pub mod catalogue;
 pub mod display;
 pub mod files;
+#[cfg(unix)]
+pub mod kernel;
 pub mod language;
 pub mod notebook;
 pub mod science;

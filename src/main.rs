@@ -44,6 +44,12 @@ enum Command {
         #[arg(long, default_value_t = 256)]
         file_limit: u64,
     },
+    /// Serve Jupyter front ends; what Jupyter calls with its connection file.
+    #[cfg(unix)]
+    Kernel {
+        /// The connection file.
+        connection: PathBuf,
+    },
     /// Talk in the terminal: type expressions and see them at once; lines can be piped in, too.
     Talk {
         /// The folder whose files may be read, and those below.
@@ -101,8 +107,22 @@ fn main() -> ExitCode {
             talk_in(&folder, threads, MEMORY, file_limit.saturating_mul(1024 * 1024))
         }
         Command::Explain { name } => explain(&name),
+        #[cfg(unix)]
+        Command::Kernel { connection } => serve(&connection),
     };
     ExitCode::from(code)
+}
+
+/// Serve Jupyter front ends; files are read in the folder where Jupyter starts the program, the notebook's own.
+#[cfg(unix)]
+fn serve(connection: &Path) -> u8 {
+    match rhythmite::kernel::serve(connection, Session::new(".")) {
+        Ok(()) => 0,
+        Err(refusal) => {
+            complain(&format!("{refusal}\n"));
+            2
+        }
+    }
 }
 
 /// Print to standard output; a reader that has gone (`| head`) is no mistake.

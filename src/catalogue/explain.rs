@@ -83,6 +83,35 @@ pub fn explain(entry: &Entry) -> String {
     out
 }
 
+/// The help of one function, in Markdown with equations.
+pub fn markdown(entry: &Entry) -> String {
+    let mut out = format!("`{}`\n\n{}\n\n", usage(entry), entry.summary);
+    out += &format!("**Result:** {}.\n\n", entry.result);
+    out += "| argument | takes | meaning |\n|---|---|---|\n";
+    for parameter in entry.signature.parameters {
+        let default = match parameter.presence {
+            Presence::Default(text) => format!(" Default: `{text}`."),
+            Presence::Optional => " May be left out.".to_owned(),
+            Presence::Required | Presence::Repeated { .. } => String::new(),
+        };
+        out +=
+            &format!("| `{}` | {} | {}.{default} |\n", parameter.name, takes(parameter), parameter.meaning);
+    }
+    if let Some(equation) = entry.equation {
+        out += &format!("\n$${equation}$$\n");
+    }
+    out += &format!("\n**Gaps:** {}\n", entry.gaps);
+    for example in entry.shows {
+        out +=
+            &format!("\n```rhythmite\n{}\n# {}\n```\n", example.program, example.gives.replace('\n', "\n# "));
+    }
+    if !entry.citations.is_empty() {
+        let sources: Vec<&str> = entry.citations.iter().map(|citation| citation.reference).collect();
+        out += &format!("\n**Sources:** {}\n", sources.join("; "));
+    }
+    out
+}
+
 /// The reference of the whole language, in Markdown.
 pub fn reference() -> String {
     let mut out = String::from(
@@ -94,37 +123,7 @@ pub fn reference() -> String {
             out += &format!("\n## {}\n", entry.room.title());
             room = Some(entry.room);
         }
-        out += &format!("\n### `{}`\n\n{}\n\n", usage(entry), entry.summary);
-        out += &format!("**Result:** {}.\n\n", entry.result);
-        out += "| argument | takes | meaning |\n|---|---|---|\n";
-        for parameter in entry.signature.parameters {
-            let default = match parameter.presence {
-                Presence::Default(text) => format!(" Default: `{text}`."),
-                Presence::Optional => " May be left out.".to_owned(),
-                Presence::Required | Presence::Repeated { .. } => String::new(),
-            };
-            out += &format!(
-                "| `{}` | {} | {}.{default} |\n",
-                parameter.name,
-                takes(parameter),
-                parameter.meaning
-            );
-        }
-        if let Some(equation) = entry.equation {
-            out += &format!("\n$${equation}$$\n");
-        }
-        out += &format!("\n**Gaps:** {}\n", entry.gaps);
-        for example in entry.shows {
-            out += &format!(
-                "\n```rhythmite\n{}\n# {}\n```\n",
-                example.program,
-                example.gives.replace('\n', "\n# ")
-            );
-        }
-        if !entry.citations.is_empty() {
-            let sources: Vec<&str> = entry.citations.iter().map(|citation| citation.reference).collect();
-            out += &format!("\n**Sources:** {}\n", sources.join("; "));
-        }
+        out += &format!("\n### {}", markdown(entry));
     }
     out
 }

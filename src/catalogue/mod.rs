@@ -29,7 +29,7 @@ mod time;
 
 pub use call::{Call, Context, Given, InputFile, Path, Stop, What, check_arguments};
 pub use entry::{Body, Citation, Entry, Fails, ReadsClock, Room, Shows};
-pub use explain::{explain, explain_parameter, reference};
+pub use explain::{explain, explain_parameter, markdown, reference};
 pub use onto::{onto_clock, total};
 
 const FAMILIES: &[&[&Entry]] = &[

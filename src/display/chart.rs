@@ -27,6 +27,14 @@ const DOTS: usize = 60;
 /// How many components of a bundle have a style and a label of their own.
 const NUMBERED: usize = 12;
 
+/// The small print under a result: the fingerprint, and what it was refreshed by.
+pub fn footer(caption: &Caption<'_>) -> String {
+    match caption.refreshed_by {
+        [] => format!("fingerprint {}", caption.fingerprint),
+        names => format!("fingerprint {}, refreshed by {}", caption.fingerprint, names.join(", ")),
+    }
+}
+
 /// The figure of a series or a bundle; nothing for other results, and for axes without any value.
 pub fn chart(shown: &Shown, caption: &Caption<'_>) -> Option<Figure> {
     match shown {
@@ -115,16 +123,12 @@ fn figure(
     if let Some(spread) = &series.spread {
         subtitle += &format!("; band 5–95 %, {} members", spread.members);
     }
-    let mut footer = format!("fingerprint {}", caption.fingerprint);
-    if !caption.refreshed_by.is_empty() {
-        footer += &format!(", refreshed by {}", caption.refreshed_by.join(", "));
-    }
     Some(Figure {
         title: title.join(" "),
         subtitle,
         description: description(&horizontal.title, &vertical.title, numbers),
         notes,
-        footer,
+        footer: footer(caption),
         panels: vec![Panel { horizontal, vertical, marks }],
     })
 }

@@ -1,3 +1,6 @@
+use std::borrow::Cow;
+
+use super::html::Page;
 use super::number::{plain, rounded, with_range};
 use crate::value::{
     Attribution, Axis, Cell, Era, Events, ForcingKind, Measure, Shown, ShownSeries, Spread, Table, Unit,
@@ -46,9 +49,10 @@ pub fn line(shown: &Shown) -> String {
 /// All of an output as text: the line, and the table where there is one.
 pub fn text(shown: &Shown) -> String {
     match shown {
-        Shown::Attribution(attribution) => table(&attribution.table()) + &diagnostics(attribution),
-        Shown::Events(events) => table(&events.table()),
-        Shown::Table(content) => table(content),
+        Shown::Attribution(_) | Shown::Events(_) | Shown::Table(_) => match tabulated(shown) {
+            Some((content, beneath)) => table(&content) + &beneath,
+            None => String::new(),
+        },
         Shown::Bundle { components, total } => {
             let width = components.iter().map(|(label, _)| label.chars().count()).max().unwrap_or(0).max(5);
             let row =
@@ -71,6 +75,39 @@ pub fn text(shown: &Shown) -> String {
         | Shown::Clock(_)
         | Shown::Model(..)
         | Shown::Text(_) => line(shown) + "\n",
+    }
+}
+
+/// All of an output as text, as it stands on a page.
+pub fn page(shown: &Shown, page: &Page<'_>) -> String {
+    let mut out = String::new();
+    if let Some(expression) = page.expression {
+        out += &format!("{expression}\n");
+    }
+    out += &text(shown);
+    for note in page.notes {
+        out += &format!("– {note}\n");
+    }
+    out += page.footer;
+    out.trim_end().to_owned()
+}
+
+/// The table of an output that is one, with the lines beneath it.
+pub(super) fn tabulated(shown: &Shown) -> Option<(Cow<'_, Table>, String)> {
+    match shown {
+        Shown::Attribution(attribution) => Some((Cow::Owned(attribution.table()), diagnostics(attribution))),
+        Shown::Events(events) => Some((Cow::Owned(events.table()), String::new())),
+        Shown::Table(content) => Some((Cow::Borrowed(content), String::new())),
+        Shown::Quantity { .. }
+        | Shown::Instant { .. }
+        | Shown::Series(_)
+        | Shown::Bundle { .. }
+        | Shown::Span(_)
+        | Shown::Range(_)
+        | Shown::Clock(_)
+        | Shown::Model(..)
+        | Shown::Text(_)
+        | Shown::List(_) => None,
     }
 }
 
@@ -230,18 +267,26 @@ fn heading(column: &crate::value::Column) -> String {
 const HEAD: usize = 20;
 const TAIL: usize = 5;
 
-/// A table as text: aligned on the decimal point, a long one cut with a count, notes beneath.
-pub fn table(content: &Table) -> String {
-    let merged = with_ranges(content);
-    let content = &merged;
+/// A table laid out for reading: a long one is cut.
+pub(super) struct Layout {
+    /// Column by column, the heading first; numbers of a column have trailing spaces in place of missing decimals.
+    pub(super) columns: Vec<Vec<String>>,
+    /// How many rows there are.
+    pub(super) rows: usize,
+    /// After so many rows, so many were left out.
+    pub(super) cut: Option<(usize, usize)>,
+}
+
+/// Lay out a table: the ends of ranges in one column with their middle, empty columns left out.
+pub(super) fn layout(content: &Table) -> Layout {
+    let content = &with_ranges(content);
     let rows = content.rows.len();
-    let cut = rows > HEAD + TAIL + 1;
-    let shown: Vec<&Vec<Cell>> = if cut {
-        content.rows.iter().take(HEAD).chain(content.rows.iter().skip(rows - TAIL)).collect()
-    } else {
-        content.rows.iter().collect()
+    let cut = (rows > HEAD + TAIL + 1).then(|| (HEAD, rows - HEAD - TAIL));
+    let shown: Vec<&Vec<Cell>> = match cut {
+        Some(_) => content.rows.iter().take(HEAD).chain(content.rows.iter().skip(rows - TAIL)).collect(),
+        None => content.rows.iter().collect(),
     };
-    let columns: Vec<Vec<String>> = content
+    let columns = content
         .columns
         .iter()
         .enumerate()
@@ -253,12 +298,18 @@ pub fn table(content: &Table) -> String {
             std::iter::once(heading(column)).chain(aligned(&cells)).collect()
         })
         .collect();
+    Layout { columns, rows: shown.len(), cut }
+}
+
+/// A table as text: aligned on the decimal point, a long one cut with a count, notes beneath.
+pub fn table(content: &Table) -> String {
+    let Layout { columns, rows, cut } = layout(content);
     let widths: Vec<usize> = columns
         .iter()
         .map(|cells| cells.iter().map(|cell| cell.chars().count()).max().unwrap_or(0))
         .collect();
     let mut out = String::new();
-    for line in 0..=shown.len() {
+    for line in 0..=rows {
         let cells: Vec<String> = columns
             .iter()
             .zip(&widths)
@@ -271,14 +322,21 @@ pub fn table(content: &Table) -> String {
             })
             .collect();
         out += &format!("  {}\n", cells.join("  ").trim_end());
-        if cut && line == HEAD {
-            out += &format!("  … {} rows more …\n", rows - HEAD - TAIL);
+        if let Some((after, left_out)) = cut
+            && line == after
+        {
+            out += &format!("  {}\n", left_out_words(left_out));
         }
     }
     for note in &content.notes {
         out += &format!("  {note}\n");
     }
     out
+}
+
+/// What stands where rows were left out.
+pub(super) fn left_out_words(rows: usize) -> String {
+    format!("… {rows} rows more …")
 }
 
 /// The same table with `x`, `x_low` and `x_high` in one column: `0.81 [0.66, 0.96]`.

@@ -8,11 +8,11 @@ use std::fmt;
 
 use serde_json::{Map, Value as Json, json};
 
-use super::report::Report;
+use super::bundle::{Bundle, Pieces, pieces, result_metadata, words_bundle};
 use super::run::{CodeCell, Run, is_told};
 use crate::base::Diagnostic;
 use crate::display;
-use crate::session::{CellReply, Output, Session};
+use crate::session::{CellReply, Session};
 
 /// The language of the code cells, as a notebook's metadata names it.
 const LANGUAGE: &str = "rhythmite";
@@ -101,7 +101,6 @@ impl Notebook {
     /// The file with what its cells gave, in place of the outputs it had.
     pub fn with_outputs(&self, session: &Session, run: &Run) -> String {
         let mut whole = self.whole.clone();
-        let mut report = Report::new(false, true);
         let mut ran = run.cells.iter().enumerate().peekable();
         let cells = whole.get_mut("cells").and_then(Json::as_array_mut);
         for (index, cell) in cells.into_iter().flatten().enumerate() {
@@ -110,7 +109,7 @@ impl Notebook {
             }
             let Some(cell) = cell.as_object_mut() else { continue };
             let (count, outputs) = match ran.next_if(|(_, (code, _))| code.index == index) {
-                Some((number, (_, reply))) => (json!(number + 1), outputs(session, reply, &mut report)),
+                Some((number, (_, reply))) => (json!(number + 1), outputs(session, reply)),
                 None => (Json::Null, Vec::new()),
             };
             cell.insert("execution_count".to_owned(), count);
@@ -236,48 +235,36 @@ fn source(cell: &Json, index: usize) -> Result<String, Unreadable> {
     }
 }
 
-fn outputs(session: &Session, reply: &CellReply, report: &mut Report) -> Vec<Json> {
+fn outputs(session: &Session, reply: &CellReply) -> Vec<Json> {
     let mut outputs = Vec::new();
     for problem in reply.problems.iter().chain(&reply.waiting) {
         outputs.push(error(session, problem));
     }
     for notice in &reply.notices {
-        outputs.push(display_data(text_data(notice), json!({"rhythmite": {"kind": "notice"}})));
+        outputs.push(display_data(words_bundle(notice), &json!({"rhythmite": {"kind": "notice"}})));
     }
+    let several = reply.outputs.len() > 1;
     for output in &reply.outputs {
         match &output.result {
             Err(problem) if !is_told(reply, problem) => outputs.push(error(session, problem)),
             Ok(_) | Err(_) => {
-                outputs.push(display_data(data(session, reply, output, report), metadata(output)));
+                let metadata = json!({"rhythmite": result_metadata(output)});
+                let Pieces { figure, words } = pieces(session, output, several);
+                outputs.extend(figure.map(|figure| display_data(figure, &metadata)));
+                outputs.push(display_data(words, &metadata));
             }
         }
     }
     outputs
 }
 
-/// A result by media type, from the plainest to the richest that there is: a figure adds `image/svg+xml` here.
-fn data(session: &Session, reply: &CellReply, output: &Output, report: &mut Report) -> Map<String, Json> {
-    report.output(session, reply, output);
-    text_data(&report.take())
-}
-
-fn text_data(text: &str) -> Map<String, Json> {
-    let lines: Vec<&str> = text.trim_end_matches('\n').split_inclusive('\n').collect();
-    [("text/plain".to_owned(), json!(lines))].into_iter().collect()
-}
-
-/// What a result followed from, so that a later run can be held against it.
-fn metadata(output: &Output) -> Json {
-    let mut own = Map::new();
-    own.insert("expression".to_owned(), json!(output.expression));
-    own.insert("fingerprint".to_owned(), json!(output.fingerprint.to_string()));
-    if !output.refreshed_by.is_empty() {
-        own.insert("refreshed_by".to_owned(), json!(output.refreshed_by));
-    }
-    json!({"rhythmite": own})
-}
-
-fn display_data(data: Map<String, Json>, metadata: Json) -> Json {
+/// An output; long texts are lists of lines, as notebook files have them.
+fn display_data(bundle: Bundle, metadata: &Json) -> Json {
+    let lines = |text: Json| match text.as_str() {
+        Some(text) => json!(text.split_inclusive('\n').collect::<Vec<_>>()),
+        None => text,
+    };
+    let data: Map<String, Json> = bundle.into_iter().map(|(kind, text)| (kind, lines(text))).collect();
     json!({"data": data, "metadata": metadata, "output_type": "display_data"})
 }
 

@@ -1,12 +1,14 @@
 //! Programs in and results out: scripts and notebook files, as text, as one JSON object, or as the notebook with its
 //! outputs.
 
+mod bundle;
 mod figures;
 mod ipynb;
 mod json;
 mod report;
 mod run;
 
+pub use bundle::{Bundle, Pieces, pieces, result_metadata, words_bundle};
 pub use figures::{FigureFile, figure_files};
 pub use ipynb::{Notebook, Unreadable};
 pub use json::run_to_json;

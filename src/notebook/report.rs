@@ -86,7 +86,7 @@ impl Report {
                 continue;
             }
             let by = output.refreshed_by.join(", ");
-            let (cell, expression) = (&output.cell, &output.expression);
+            let (cell, expression) = (session.cell_name(&output.cell), &output.expression);
             self.text += &format!("{bold}{expression}{plain}, shown in {cell}, refreshed by {by}:\n");
             self.text += &match &output.result {
                 Ok(shown) => format!("  {}\n", display::line(shown)),

@@ -6,7 +6,7 @@ use std::sync::atomic::{AtomicU64, Ordering};
 use std::sync::{Arc, OnceLock};
 
 use super::definitions::{Definitions, Function, SESSION_LIMIT};
-use super::displays::{Audience, Display, Output, Postponed, Silent};
+use super::displays::{Audience, Display, Output, Pending, Silent};
 use super::environment::Environment;
 use super::evaluate::{Caches, Evaluator, internal};
 use super::graph::Graph;
@@ -15,6 +15,7 @@ use super::memo::Memo;
 use super::outside::function_key;
 use super::resolve::{SIZE_LIMIT, resolve};
 use super::settings::environment;
+use super::show::Progress;
 use crate::base::{Cancellation, Diagnostic, Fault, Source, SourceId, Span};
 use crate::language::{Expression, Program, Statement, StatementKind, canonical, parse};
 
@@ -45,6 +46,7 @@ pub struct Session {
     pub(super) threads: Arc<rayon::ThreadPool>,
     /// A thread to look at definitions on while the others compute; made when it is first needed.
     desk: OnceLock<rayon::ThreadPool>,
+    progress: Progress,
 }
 
 /// What running a cell gave.
@@ -55,7 +57,7 @@ pub struct CellReply {
     /// Displays of other cells whose results moved, each after those of what it follows from.
     pub moved: Vec<Output>,
     /// Displays of other cells whose results moved and are not evaluated afresh yet; the next execution does it.
-    pub postponed: Vec<Postponed>,
+    pub postponed: Vec<Pending>,
     /// What is wrong with the text or the definitions of the cell.
     pub problems: Vec<Diagnostic>,
     /// Definitions of the cell that wait for a name that is not defined yet.
@@ -96,6 +98,7 @@ impl Session {
             evaluations: AtomicU64::new(0),
             threads: Arc::new(pool(threads.unwrap_or(0))),
             desk: OnceLock::new(),
+            progress: Progress::default(),
         }
     }
 
@@ -107,6 +110,11 @@ impl Session {
     /// How many bodies of catalogue entries have been called since the session began.
     pub fn evaluations(&self) -> u64 {
         self.evaluations.load(Ordering::Relaxed)
+    }
+
+    /// How many blocks of members are done, and of how many, of what is being computed; 0 of 0 where that is not known.
+    pub fn progress(&self) -> (u64, u64) {
+        self.progress.read()
     }
 
     /// How many bytes of values are remembered now.
@@ -393,6 +401,7 @@ impl Session {
             memo: &self.memo,
             cancellation,
             evaluations: &self.evaluations,
+            progress: &self.progress,
             caches: Caches::default(),
         }
     }

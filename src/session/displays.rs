@@ -4,18 +4,19 @@ use std::collections::{BTreeMap, BTreeSet};
 use std::sync::Arc;
 
 use super::cell::{CellReply, Session};
+use super::definitions::SESSION_LIMIT;
 use super::environment::Environment;
-use super::evaluate::Evaluator;
+use super::evaluate::{Evaluator, internal};
 use super::fingerprint::{Fingerprint, Parts};
 use super::graph::Graph;
 use super::node::Node;
 use super::outside::function_key;
 use super::readings::Readings;
-use super::resolve::SETTINGS;
+use super::resolve::{SETTINGS, resolve};
 use super::settings::{self, environment};
-use crate::base::{Diagnostic, INTERRUPTED};
+use crate::base::{Diagnostic, Fault, INTERRUPTED, SourceId, Span};
 use crate::catalogue::Stop;
-use crate::language::Expression;
+use crate::language::{Expression, Statement, StatementKind, parse};
 use crate::value::Shown;
 
 /// One shown expression, for as long as its cell shows it.
@@ -61,9 +62,9 @@ impl Output {
     }
 }
 
-/// A display that moved and waits to be evaluated afresh.
+/// A display that is to be evaluated.
 #[derive(Clone, Debug, PartialEq, Eq)]
-pub struct Postponed {
+pub struct Pending {
     /// Names the display.
     pub display: u64,
     /// The cell it stands in.
@@ -76,6 +77,8 @@ pub struct Postponed {
 pub trait Audience: Send {
     /// The definitions are in force and checked; problems, waiting definitions and notices are in the reply.
     fn checked(&mut self, session: &Session, reply: &CellReply);
+    /// A display is about to be evaluated, which may take long.
+    fn begun(&mut self, display: &Pending);
     /// A result of the cell is there; it is added to the reply afterwards.
     fn shown(&mut self, session: &Session, reply: &CellReply, output: &Output);
     /// All results of the cell are there. Whether those that moved elsewhere are evaluated afresh now.
@@ -88,6 +91,7 @@ pub trait Audience: Send {
 pub(super) struct Silent;
 
 impl Audience for Silent {
+    fn begun(&mut self, _: &Pending) {}
     fn checked(&mut self, _: &Session, _: &CellReply) {}
     fn shown(&mut self, _: &Session, _: &CellReply, _: &Output) {}
     fn answered(&mut self, _: &Session, _: &CellReply) -> bool {
@@ -120,6 +124,10 @@ impl Display {
         }
     }
 
+    fn pending(&self) -> Pending {
+        Pending { display: self.id, cell: self.cell.clone(), expression: self.text.clone() }
+    }
+
     /// Note what was told.
     pub(super) fn settle(&mut self, output: &Output) {
         self.fingerprint = output.fingerprint;
@@ -136,6 +144,7 @@ impl Session {
         evaluator.check(cell, &environment, reply);
         audience.checked(self, reply);
         for display in self.displays.iter().filter(|display| &*display.cell == cell) {
+            audience.begun(&display.pending());
             let output = evaluator.output(display, &environment, Vec::new());
             audience.shown(self, reply, &output);
             reply.outputs.push(output);
@@ -144,6 +153,7 @@ impl Session {
         let files = self.inputs.changed();
         for display in evaluator.moved(&self.displays, cell, &environment) {
             if go_on && !self.cancellation.is_cancelled() {
+                audience.begun(&display.pending());
                 let by = evaluator.moved_by(display, &files, &environment);
                 let output = evaluator.output(display, &environment, by);
                 if !output.is_interrupted() {
@@ -152,12 +162,39 @@ impl Session {
                     continue;
                 }
             }
-            reply.postponed.push(Postponed {
-                display: display.id,
-                cell: display.cell.clone(),
-                expression: display.text.clone(),
-            });
+            reply.postponed.push(display.pending());
         }
+    }
+}
+
+impl Session {
+    /// How many bare expressions a cell shows.
+    pub fn shown_in(&self, cell: &str) -> usize {
+        self.displays.iter().filter(|display| &*display.cell == cell).count()
+    }
+
+    /// The result of an expression on the definitions in force, which nothing follows from and nobody remembers.
+    ///
+    /// # Errors
+    /// What is wrong with the text, or why it has no result. Spans point into a text that the session does not keep.
+    pub fn peek(&self, text: &str) -> Result<Output, Diagnostic> {
+        let source = SourceId::default();
+        let whole = Span::new(source, 0, text.len());
+        let nothing = || Fault::new("no-expression", "this is no single expression").at(whole);
+        let program = parse(text, source)
+            .map_err(|error| error.diagnostics.into_iter().next().unwrap_or_else(nothing))?;
+        let mut statements = program.statements.into_iter();
+        let (Some(Statement { kind: StatementKind::Show(expression), .. }), None) =
+            (statements.next(), statements.next())
+        else {
+            return Err(nothing());
+        };
+        let output = self.consult(|evaluator, environment| {
+            let (node, cost) = resolve(&self.definitions, None, &expression, SESSION_LIMIT);
+            let display = Display::new(0, Arc::from(""), text.to_owned(), expression, node, cost);
+            evaluator.output(&display, environment, Vec::new())
+        });
+        output.ok_or_else(|| internal("this expression could not be evaluated").at(whole))
     }
 }
 

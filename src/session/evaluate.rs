@@ -14,6 +14,7 @@ use super::memo::{Memo, Notes};
 use super::node::{CallNode, Node, NodeKind};
 use super::prints::Names;
 use super::resolve::{SETTINGS, SIZE_LIMIT};
+use super::show::Progress;
 use crate::base::{Blame, Cancellation, Diagnostic, Fault, INTERRUPTED, Span};
 use crate::catalogue::{self, Body, Call, Given, Path, ReadsClock, Stop, What, check_arguments, nearest};
 use crate::language::{Parameter, Presence};
@@ -42,6 +43,7 @@ pub(super) struct Evaluator<'s> {
     pub(super) cancellation: &'s Cancellation,
     /// Counts the bodies that were called.
     pub(super) evaluations: &'s AtomicU64,
+    pub(super) progress: &'s Progress,
     pub(super) caches: Caches,
 }
 

@@ -29,6 +29,6 @@ mod show;
 
 pub use cell::{CellReply, Session};
 pub use completion::{Completion, CompletionKind, Completions, InForce, Inspection, Subject};
-pub use displays::{Audience, Output, Postponed};
+pub use displays::{Audience, Output, Pending};
 pub use fingerprint::Fingerprint;
 pub use outside::{OUTSIDE, Standing};

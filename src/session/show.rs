@@ -1,6 +1,7 @@
 //! Results as they are shown: the nominal path beside the members' medians and ranges.
 
 use std::sync::Arc;
+use std::sync::atomic::{AtomicU64, Ordering};
 
 use rayon::prelude::*;
 
@@ -24,6 +25,30 @@ pub(super) const MEMBERS_LIMIT: u64 = 10_000_000;
 const BYTES_LIMIT: f64 = 2e9;
 
 const PROBABILITIES: [f64; 3] = [0.05, 0.5, 0.95];
+
+/// How far the members of what is shown are, for whoever waits.
+#[derive(Default)]
+pub(super) struct Progress {
+    done: AtomicU64,
+    total: AtomicU64,
+}
+
+impl Progress {
+    fn begin(&self, total: u64) {
+        self.done.store(0, Ordering::Relaxed);
+        self.total.store(total, Ordering::Relaxed);
+    }
+
+    fn step(&self) {
+        self.done.fetch_add(1, Ordering::Relaxed);
+    }
+
+    /// How many blocks are done, and of how many.
+    pub(super) fn read(&self) -> (u64, u64) {
+        let total = self.total.load(Ordering::Relaxed);
+        (self.done.load(Ordering::Relaxed).min(total), total)
+    }
+}
 
 impl Evaluator<'_> {
     /// A node's result as it is shown, with the notes made on the way.
@@ -81,14 +106,19 @@ impl Evaluator<'_> {
                 Path::Block { first, count: BLOCK.min(environment.members - first) as usize }
             })
             .collect();
-        blocks
+        self.progress.begin(blocks.len() as u64);
+        let members = blocks
             .into_par_iter()
             .map(|path| {
                 let (value, _) = self.value(node, environment, path)?;
                 let context = NodeContext::showing(self, node, environment, path);
-                Ok(Arc::new(ready(&context, &value)?))
+                let value = Arc::new(ready(&context, &value)?);
+                self.progress.step();
+                Ok(value)
             })
-            .collect()
+            .collect();
+        self.progress.begin(0);
+        members
     }
 }
 

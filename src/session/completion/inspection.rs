@@ -68,6 +68,17 @@ pub struct InForce {
 
 type Found = (Subject, String, String);
 
+impl Inspection {
+    /// All of it in Markdown; `text` is the text that was inspected.
+    pub fn markdown(&self, text: &str) -> String {
+        let word = text.get(self.start..self.end).unwrap_or("");
+        match (self.subject, catalogue::find(word)) {
+            (Subject::Function | Subject::Sign, Some(entry)) => catalogue::markdown(entry),
+            _ => format!("{}\n\n```text\n{}\n```\n", self.summary, self.text.trim_end()),
+        }
+    }
+}
+
 impl Session {
     /// What the thing at byte `cursor` of `text` is; where nothing is known about it, the call around it.
     pub fn inspect(&self, text: &str, cursor: usize) -> Option<Inspection> {
@@ -234,12 +245,16 @@ impl Session {
             &mut text,
             &[
                 ("kind", "a function of yours".to_owned()),
-                ("home", home(&function.cell, function.deleted, &function.rivals)),
+                ("home", self.home(&function.cell, function.deleted, &function.rivals)),
                 ("depends on", listed(&uses)),
                 ("used by", listed(&used_by)),
             ],
         );
-        Some((Subject::OwnFunction, format!("a function of yours, defined in {}", function.cell), text))
+        Some((
+            Subject::OwnFunction,
+            format!("a function of yours, defined in {}", self.cell_name(&function.cell)),
+            text,
+        ))
     }
 
     fn about_definition(&self, name: &str) -> Option<Found> {
@@ -284,7 +299,11 @@ impl Session {
             .collect();
         used_by.extend(self.displays.iter().filter_map(|display| {
             let shows = |node: &Arc<Node>| node.references().iter().any(|found| &**found == name);
-            display.node.as_ref().is_ok_and(shows).then(|| format!("what {} shows", display.cell))
+            display
+                .node
+                .as_ref()
+                .is_ok_and(shows)
+                .then(|| format!("what {} shows", self.cell_name(&display.cell)))
         }));
         used_by.dedup();
         let mut text = format!("{}\n\n", self.statement(definition.name_span, definition.expression.span));
@@ -292,7 +311,7 @@ impl Session {
             &mut text,
             &[
                 ("kind", kind.clone()),
-                ("home", home(&definition.cell, definition.deleted, &definition.rivals)),
+                ("home", self.home(&definition.cell, definition.deleted, &definition.rivals)),
                 ("depends on", listed(&depends)),
                 ("used by", listed(&used_by)),
                 (
@@ -301,7 +320,19 @@ impl Session {
                 ),
             ],
         );
-        Some((Subject::Name, format!("{kind}, defined in {}", definition.cell), text))
+        Some((Subject::Name, format!("{kind}, defined in {}", self.cell_name(&definition.cell)), text))
+    }
+
+    fn home(&self, cell: &str, deleted: bool, rivals: &std::collections::BTreeSet<Arc<str>>) -> String {
+        let mut words = self.cell_name(cell).to_owned();
+        if deleted {
+            words += ", which was deleted";
+        }
+        if !rivals.is_empty() {
+            let others: Vec<&str> = rivals.iter().map(|cell| self.cell_name(cell)).collect();
+            words += &format!("; also defined in {}", others.join(", "));
+        }
+        words
     }
 
     /// Which of the words are defined, each once, in their order.
@@ -352,18 +383,6 @@ fn listed(names: &[String]) -> String {
         (_, 0) => shown,
         _ => format!("{shown} and {more} more"),
     }
-}
-
-fn home(cell: &str, deleted: bool, rivals: &std::collections::BTreeSet<Arc<str>>) -> String {
-    let mut words = cell.to_owned();
-    if deleted {
-        words += ", which was deleted";
-    }
-    if !rivals.is_empty() {
-        let others: Vec<&str> = rivals.iter().map(|cell| &**cell).collect();
-        words += &format!("; also defined in {}", others.join(", "));
-    }
-    words
 }
 
 fn about_argument(call: &str, name: &str, parameters: &Parameters) -> Option<Found> {

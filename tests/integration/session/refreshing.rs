@@ -4,7 +4,7 @@ use std::fs;
 use std::time::{Duration, SystemTime};
 
 use super::{folder, place, run, session, value};
-use rhythmite::session::{Audience, CellReply, Output, Session};
+use rhythmite::session::{Audience, CellReply, Output, Pending, Session};
 
 /// The expressions of the displays that moved.
 fn moved(reply: &CellReply) -> Vec<&str> {
@@ -350,6 +350,7 @@ fn moved_displays_come_after_those_of_what_they_follow_from() {
 struct Patience(usize);
 
 impl Audience for Patience {
+    fn begun(&mut self, _: &Pending) {}
     fn checked(&mut self, _: &Session, _: &CellReply) {}
     fn shown(&mut self, _: &Session, _: &CellReply, _: &Output) {}
     fn answered(&mut self, _: &Session, _: &CellReply) -> bool {
@@ -395,4 +396,15 @@ fn only_what_names_nothing_and_reads_nothing_is_fixed() {
     for text in ["x", "f(1)", "1 ± 0.1", "constant(1 W/m2)", "[x * e for e in [1, 2]]", "seed"] {
         assert!(!fixed(&mut session, text), "{text}");
     }
+}
+
+#[test]
+fn a_peek_shows_a_result_and_leaves_nothing_behind() {
+    let mut session = session();
+    run(&mut session, "home", "x = 2");
+    assert_eq!(value(&session.peek("x * 3").unwrap()), 6.0);
+    assert_eq!(session.peek("y").unwrap().result.unwrap_err().code, "not-defined");
+    assert_eq!(session.peek("x = 3").unwrap_err().code, "no-expression");
+    assert!(session.peek("1 +").is_err() && session.peek("").is_err());
+    assert!(run(&mut session, "home", "x = 5").moved.is_empty(), "a peek is no display");
 }
