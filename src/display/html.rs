@@ -13,6 +13,9 @@ const SMALL: &str = "opacity:0.75;font-size:smaller";
 /// Digits of one width, so that numbers stand under each other.
 const DIGITS: &str = "font-variant-numeric:tabular-nums;white-space:pre";
 
+/// More notes than this are folded away, for whoever wants to know.
+const UNFOLDED: usize = 2;
+
 /// What stands with a result on a page.
 #[derive(Clone, Copy, Debug)]
 pub struct Page<'a> {
@@ -43,14 +46,25 @@ pub fn html(shown: &Shown, page: &Page<'_>) -> String {
                 }
             }
         }
-        for note in page.notes {
-            markup.element("div").with("style", SMALL).saying(&format!("– {note}"));
+        if page.notes.len() > UNFOLDED {
+            markup.element("details").with("style", SMALL).holding(|markup| {
+                markup.element("summary").saying(&format!("{} notes on how this was made", page.notes.len()));
+                notes(markup, page.notes);
+            });
+        } else if !page.notes.is_empty() {
+            markup.element("div").with("style", SMALL).holding(|markup| notes(markup, page.notes));
         }
         if !page.footer.is_empty() {
             markup.element("div").with("style", SMALL).saying(page.footer);
         }
     });
     markup.finish()
+}
+
+fn notes(markup: &mut Markup, notes: &[Arc<str>]) {
+    for note in notes {
+        markup.element("div").saying(&format!("– {note}"));
+    }
 }
 
 /// A few words beside the results, such as a notice.

@@ -26,10 +26,12 @@ pub(super) struct Drawn {
 struct Cell {
     /// The number in its prompt.
     number: u64,
-    /// Whether it failed, where nothing can take the place of the mistake: it is to be run again.
+    /// Whether it shows mistakes, whose place nothing can take: put right, it is to be run again.
     failed: bool,
-    /// The display that says what it waits for.
-    pub(super) waiting: Option<String>,
+    /// Its displays that are mistakes now.
+    failing: BTreeSet<u64>,
+    /// The display that says what it waits for, and what it says.
+    waiting: Option<(String, String)>,
 }
 
 /// What was drawn so far.
@@ -99,35 +101,58 @@ impl Board {
         self.results.get(&display)
     }
 
-    /// A cell failed, and nothing takes the place of its mistake.
-    pub(super) fn fail(&mut self, cell: &str) {
+    /// A mistake is shown in a cell: in place of one of its results, or for a definition of its.
+    pub(super) fn fail(&mut self, cell: &str, display: Option<u64>) {
         if let Some(cell) = self.cells.get_mut(cell) {
             cell.failed = true;
+            cell.failing.extend(display);
         }
     }
 
-    /// The cells that failed.
-    pub(super) fn failed(&self) -> Vec<String> {
-        self.cells.iter().filter(|(_, cell)| cell.failed).map(|(name, _)| name.clone()).collect()
+    /// A result is there now that was a mistake when its cell was run.
+    pub(super) fn heal(&mut self, cell: &str, display: u64) {
+        if let Some(cell) = self.cells.get_mut(cell) {
+            cell.failing.remove(&display);
+        }
     }
 
-    /// A cell that failed was said to be worth another run.
+    /// The cells that show mistakes and whose results are all there now.
+    pub(super) fn perhaps_healed(&self) -> Vec<String> {
+        let healed = |cell: &Cell| cell.failed && cell.failing.is_empty();
+        self.cells.iter().filter(|(_, cell)| healed(cell)).map(|(name, _)| name.clone()).collect()
+    }
+
+    /// It was said that a cell should be run again.
     pub(super) fn forgive(&mut self, cell: &str) {
         if let Some(cell) = self.cells.get_mut(cell) {
             cell.failed = false;
         }
     }
 
-    pub(super) fn set_waiting(&mut self, cell: &str, display: Option<String>) {
+    /// A cell waits for a name, and this display says so in these words.
+    pub(super) fn set_waiting(&mut self, cell: &str, display: String, words: String) {
         if let Some(cell) = self.cells.get_mut(cell) {
-            cell.waiting = display;
+            cell.waiting = Some((display, words));
         }
     }
 
-    /// The cells that wait for a name, with the display that says so.
-    pub(super) fn waiting(&self) -> Vec<(String, String)> {
-        let waiting = |(name, cell): (&String, &Cell)| Some((name.clone(), cell.waiting.clone()?));
-        self.cells.iter().filter_map(waiting).collect()
+    /// What a cell waits for is said in these words now, or it waits for nothing any more; returns the display to say so
+    /// in, if that is news.
+    pub(super) fn change_waiting(&mut self, cell: &str, words: Option<&str>) -> Option<String> {
+        let waiting = &mut self.cells.get_mut(cell)?.waiting;
+        let (display, said) = waiting.as_mut()?;
+        let display = display.clone();
+        match words {
+            Some(words) if words == said => return None,
+            Some(words) => words.clone_into(said),
+            None => *waiting = None,
+        }
+        Some(display)
+    }
+
+    /// The cells that wait for a name.
+    pub(super) fn waiting(&self) -> Vec<String> {
+        self.cells.iter().filter(|(_, cell)| cell.waiting.is_some()).map(|(name, _)| name.clone()).collect()
     }
 
     /// What a person calls some cells, by the numbers in their prompts: `cells [3], [5]`.

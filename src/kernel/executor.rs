@@ -87,8 +87,6 @@ struct Execution<'k> {
     beyond_reach: Vec<String>,
     /// Of those, the ones whose cell may not be there any more.
     perhaps_gone: bool,
-    /// Cells whose mistake would be none now.
-    healed: Vec<String>,
 }
 
 impl<'k> Execution<'k> {
@@ -112,7 +110,6 @@ impl<'k> Execution<'k> {
             text: String::new(),
             beyond_reach: Vec::new(),
             perhaps_gone: false,
-            healed: Vec::new(),
         }
     }
 
@@ -201,11 +198,11 @@ impl<'k> Execution<'k> {
         self.publish("display_data", &json!({}), &content);
     }
 
-    fn fail(&mut self, session: &Session, problem: &Diagnostic) {
+    fn fail(&mut self, session: &Session, problem: &Diagnostic, display: Option<u64>) {
         let failure = Failure::of(session, problem);
         self.publish("error", &json!({}), &Json::Object(failure.content()));
         self.failure.get_or_insert(failure);
-        lock(&self.kernel.board).fail(&self.cell);
+        lock(&self.kernel.board).fail(&self.cell, display);
     }
 
     fn metadata(id: &str, output: &Output) -> Json {
@@ -278,21 +275,32 @@ impl<'k> Execution<'k> {
             return;
         }
         let session = self.kernel.session();
-        let cells: Vec<&str> = waiting.iter().map(|(cell, _)| cell.as_str()).collect();
-        for ((cell, display), standing) in waiting.iter().zip(session.standing(&cells)) {
-            let words = match standing.waiting.as_slice() {
-                [] => {
-                    lock(&self.kernel.board).set_waiting(cell, None);
-                    "all names are defined now".to_owned()
-                }
-                waiting => waiting_words(&session, waiting),
-            };
-            self.put(true, display, &words_bundle(&words), &json!({}));
+        let cells: Vec<&str> = waiting.iter().map(String::as_str).collect();
+        for (cell, standing) in cells.iter().zip(session.standing(&cells)) {
+            let still = (!standing.waiting.is_empty()).then(|| waiting_words(&session, &standing.waiting));
+            if let Some(display) = lock(&self.kernel.board).change_waiting(cell, still.as_deref()) {
+                let words = still.unwrap_or_else(|| "all names are defined now".to_owned());
+                self.put(true, &display, &words_bundle(&words), &json!({}));
+            }
         }
     }
 
+    /// Other cells that show mistakes which would be none if they were run again.
+    fn healed_cells(&self) -> Vec<String> {
+        let mut cells = lock(&self.kernel.board).perhaps_healed();
+        cells.retain(|cell| *cell != self.cell);
+        let names: Vec<&str> = cells.iter().map(String::as_str).collect();
+        if names.is_empty() {
+            return Vec::new();
+        }
+        let standing = self.kernel.session().standing(&names);
+        let healed = standing.iter().map(|standing| standing.problems.is_empty());
+        cells.iter().zip(healed).filter(|(_, healed)| *healed).map(|(cell, _)| cell.clone()).collect()
+    }
+
     /// What stands in the notebook and is not true any more, where nothing can take its place.
-    fn tell_what_lags(&mut self) {
+    fn tell_what_lags(&self) {
+        let healed = self.healed_cells();
         let mut board = lock(&self.kernel.board);
         let mut lines = Vec::new();
         if !self.beyond_reach.is_empty() {
@@ -303,21 +311,10 @@ impl<'k> Execution<'k> {
                 lines.push(format!("{results} drawn before this change: run {cells}{there}"));
             }
         }
-        let failed: Vec<String> = board.failed().into_iter().filter(|cell| *cell != self.cell).collect();
-        let names: Vec<&str> = failed.iter().map(String::as_str).collect();
-        let standing = if names.is_empty() { Vec::new() } else { self.kernel.session().standing(&names) };
-        for (cell, standing) in failed.iter().zip(standing) {
-            if standing.problems.is_empty() && self.healed.contains(cell) {
-                continue;
-            }
-            self.healed.retain(|healed| healed != cell);
-        }
-        self.healed.sort();
-        self.healed.dedup();
-        if !self.healed.is_empty() {
-            let cells = board.call(self.healed.iter().map(String::as_str));
+        if !healed.is_empty() {
+            let cells = board.call(healed.iter().map(String::as_str));
             lines.push(format!("what was wrong there is put right: run {cells} again"));
-            self.healed.iter().for_each(|cell| board.forgive(cell));
+            healed.iter().for_each(|cell| board.forgive(cell));
         }
         if self.named
             && !self.kernel.queue.is_waited_for()
@@ -343,12 +340,17 @@ impl<'k> Execution<'k> {
 impl Audience for Execution<'_> {
     fn checked(&mut self, session: &Session, reply: &CellReply) {
         for problem in &reply.problems {
-            self.fail(session, problem);
+            self.fail(session, problem, None);
+        }
+        if !reply.installed {
+            // What cannot be read is put right by nobody but its author.
+            lock(&self.kernel.board).forgive(&self.cell);
         }
         if !reply.waiting.is_empty() && !self.silent {
             let id = self.kernel.display_id(format!("{}-waits", self.number));
-            self.put(false, &id, &words_bundle(&waiting_words(session, &reply.waiting)), &json!({}));
-            lock(&self.kernel.board).set_waiting(&self.cell, Some(id));
+            let words = waiting_words(session, &reply.waiting);
+            self.put(false, &id, &words_bundle(&words), &json!({}));
+            lock(&self.kernel.board).set_waiting(&self.cell, id, words);
         }
         // A terminal or a batch run names no cells: a name that is bound again there is no rival.
         if self.named && !reply.notices.is_empty() {
@@ -379,7 +381,7 @@ impl Audience for Execution<'_> {
             }
             let again = self.interrupted && output.is_interrupted();
             if !reply.problems.contains(problem) && !again {
-                self.fail(session, problem);
+                self.fail(session, problem, Some(output.display));
             }
             self.interrupted |= output.is_interrupted();
             return;
@@ -418,11 +420,11 @@ impl Audience for Execution<'_> {
 
     fn refreshed(&mut self, session: &Session, _: &CellReply, output: &Output) -> bool {
         self.end_activity();
-        let board = lock(&self.kernel.board);
+        let mut board = lock(&self.kernel.board);
         let Some(drawn) = board.find(output.display) else {
             // It was a mistake when its cell was run.
             if output.result.is_ok() {
-                self.healed.push(output.cell.to_string());
+                board.heal(&output.cell, output.display);
             }
             return !self.kernel.queue.is_waited_for();
         };

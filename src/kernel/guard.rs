@@ -59,7 +59,7 @@ impl Guards {
     /// Let a socket listen in the private folder, and a guard where the connection file says.
     pub(super) async fn bind(
         &mut self,
-        socket: &mut (impl Socket + Send),
+        socket: &mut impl Socket,
         connection: &Connection,
         place: &str,
     ) -> Result<(), Refusal> {
