@@ -40,7 +40,7 @@ fn it_wins_over_every_cell_that_defines_the_name_and_the_cells_say_so() {
         assert!(plain(&outputs[cell][0]).starts_with("`x = 10` comes from --define; "), "{outputs:?}");
         assert_eq!(outputs[cell][0]["metadata"], json!({"rhythmite": {"kind": "notice"}}));
     }
-    assert!(plain(&outputs[0][1]).starts_with("x\n  10\n") && plain(&outputs[1][0]).starts_with("y\n  11\n"));
+    assert!(plain(&outputs[0][1]).starts_with("10\n") && plain(&outputs[1][0]).starts_with("11\n"));
     assert!(!ran.out.contains("refreshed"), "nothing moved after it was shown");
 }
 

@@ -151,7 +151,8 @@ fn a_result_is_display_data_and_a_mistake_is_an_error_with_its_place() {
     assert!(traceback.contains(&" --> cell 1:1:1") && traceback.contains(&"1 | 1 m + 1 s"), "{traceback:?}");
     let shown = &outputs[0][1];
     assert_eq!(shown["output_type"], "display_data");
-    assert!(plain(shown).starts_with("3 ± 1\n  3"), "{}", plain(shown));
+    assert!(plain(shown).starts_with("3 ± 1\n3"), "{}", plain(shown));
+    assert!(shown["data"]["text/html"].is_array());
     let own = &shown["metadata"]["rhythmite"];
     assert_eq!(own["expression"], "3 ± 1");
     assert_eq!(own["fingerprint"].as_str().unwrap().len(), 64);
