@@ -20,8 +20,8 @@ pub struct Report {
     pub fingerprints: bool,
     /// Whether a result stands under the expression it is of; a terminal shows what was typed anyway.
     pub echo: bool,
-    /// How wide the charts of series are, in columns of a terminal; none where no chart is drawn.
-    pub chart_columns: Option<usize>,
+    /// How many columns the terminal has that this is for: series have charts then, and notes are broken between words.
+    pub columns: Option<usize>,
     /// Whether a result of another cell that moved is told in one line.
     pub brief_moves: bool,
     said: HashSet<Arc<str>>,
@@ -117,6 +117,7 @@ impl Report {
                 self.chart(shown);
                 for note in &output.notes {
                     if self.said.insert(note.clone()) {
+                        let note = self.columns.map_or_else(|| note.to_string(), |most| wrapped(note, most));
                         self.text += &format!("  {dim}– {note}{plain}\n");
                     }
                 }
@@ -145,7 +146,7 @@ impl Report {
 
     /// The chart of a series, or of a bundle's sum.
     fn chart(&mut self, shown: &Shown) {
-        let Some(columns) = self.chart_columns else { return };
+        let Some(columns) = self.columns else { return };
         let (title, series) = match shown {
             Shown::Series(series) => ("", series),
             Shown::Bundle { total, .. } => ("  total\n", total),
@@ -165,5 +166,43 @@ impl Report {
             self.text += title;
             self.text.extend(chart.lines().map(|line| format!("  {line}\n")));
         }
+    }
+}
+
+/// Words on lines of at most `columns`, the first begun by two blanks and a dash, the others by four blanks.
+fn wrapped(words: &str, columns: usize) -> String {
+    const INDENT: usize = 4;
+    let mut out = String::new();
+    let mut used = INDENT;
+    for word in words.split(' ') {
+        let length = word.chars().count();
+        if !out.is_empty() && used + 1 + length > columns {
+            out += "\n    ";
+            used = INDENT;
+        } else if !out.is_empty() {
+            out.push(' ');
+            used += 1;
+        }
+        out += word;
+        used += length;
+    }
+    out
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_long_note_is_broken_between_words_and_indented_under_its_dash() {
+        let text = wrapped("means over the steps of the clock, gaps left out", 24);
+        assert_eq!(text, "means over the steps\n    of the clock, gaps\n    left out");
+        assert!(text.lines().all(|line| line.chars().count() <= 24));
+        // A word is never broken, and a note that fits stays on its line.
+        assert_eq!(
+            wrapped("data/observations/eastern-basin.csv read", 20),
+            "data/observations/eastern-basin.csv\n    read"
+        );
+        assert_eq!(wrapped("a short note", 80), "a short note");
     }
 }

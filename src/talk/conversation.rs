@@ -62,9 +62,9 @@ impl Conversation {
         format!("in {}", self.inputs.len() + 1)
     }
 
-    /// How wide charts are; none where none are drawn.
-    pub(super) fn set_chart_columns(&mut self, columns: Option<usize>) {
-        self.report.chart_columns = columns;
+    /// How wide the terminal is.
+    pub(super) fn set_columns(&mut self, columns: usize) {
+        self.report.columns = Some(columns);
     }
 
     pub(super) fn is_over(&self) -> bool {
