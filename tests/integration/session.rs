@@ -4,6 +4,7 @@
 mod graphs;
 mod random_variables;
 mod refreshing;
+mod splices;
 
 use std::fs;
 use std::path::{Path, PathBuf};
