@@ -1,6 +1,7 @@
 //! The session's promises: order does not matter, nothing is computed twice, displays refresh, mistakes are told where
 //! they stand.
 
+mod functions;
 mod graphs;
 mod random_variables;
 mod refreshing;
