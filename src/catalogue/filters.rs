@@ -26,7 +26,13 @@ static SMOOTH: Entry = Entry {
             Parameter::choice(
                 "window",
                 &[
-                    Choice::plain("running_mean", "every value inside the window counts the same"),
+                    Choice::plain("running_mean", "every value inside the window counts the same").also(&[
+                        "mean",
+                        "moving_average",
+                        "moving_mean",
+                        "boxcar",
+                        "rolling",
+                    ]),
                     Choice::plain("gaussian", "Gaussian weights, cut at four standard deviations"),
                 ],
                 "running_mean",

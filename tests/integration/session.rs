@@ -6,6 +6,7 @@ mod graphs;
 mod random_variables;
 mod refreshing;
 mod splices;
+mod wordings;
 
 use std::fs;
 use std::path::{Path, PathBuf};
