@@ -20,7 +20,7 @@ pub struct Report {
     pub fingerprints: bool,
     /// Whether a result stands under the expression it is of; a terminal shows what was typed anyway.
     pub echo: bool,
-    /// How many columns the terminal has that this is for: series have charts then, and notes are broken between words.
+    /// How many columns the terminal has that this is for: series have charts then, and lines are broken between words.
     pub columns: Option<usize>,
     /// Whether a result of another cell that moved is told in one line.
     pub brief_moves: bool,
@@ -89,7 +89,11 @@ impl Report {
             let (cell, expression) = (session.cell_name(&output.cell), &output.expression);
             self.text += &format!("{bold}{expression}{plain}, shown in {cell}, refreshed by {by}:\n");
             self.text += &match &output.result {
-                Ok(shown) => format!("  {}\n", display::line(shown)),
+                Ok(shown) => {
+                    let line = display::line(shown);
+                    let line = self.columns.map_or(line.clone(), |most| wrapped(&line, 2, most));
+                    format!("  {line}\n")
+                }
                 Err(problem) => {
                     let line = display::problem_line(problem, &sources);
                     format!("  an error now, at {line}: {}\n", problem.message)
@@ -110,14 +114,16 @@ impl Report {
                 if self.echo {
                     self.text += &format!("{bold}{}{plain}\n", output.expression);
                 }
-                for line in display::text(shown).lines() {
-                    let indent = if line.starts_with("  ") { "" } else { "  " };
-                    self.text += &format!("{indent}{line}\n");
+                let text = display::text(shown);
+                for line in text.lines().map(|line| line.strip_prefix("  ").unwrap_or(line)) {
+                    let line = self.columns.map_or_else(|| line.to_owned(), |most| wrapped(line, 2, most));
+                    self.text += &format!("  {line}\n");
                 }
                 self.chart(shown);
                 for note in &output.notes {
                     if self.said.insert(note.clone()) {
-                        let note = self.columns.map_or_else(|| note.to_string(), |most| wrapped(note, most));
+                        let note =
+                            self.columns.map_or_else(|| note.to_string(), |most| wrapped(note, 4, most));
                         self.text += &format!("  {dim}– {note}{plain}\n");
                     }
                 }
@@ -169,11 +175,11 @@ impl Report {
     }
 }
 
-/// Words on lines of at most `columns`, the first begun by two blanks and a dash, the others by four blanks.
-fn wrapped(words: &str, columns: usize) -> String {
+/// Words on lines of at most `columns`, of which `begun` are taken on the first; the others begin with four blanks.
+fn wrapped(words: &str, begun: usize, columns: usize) -> String {
     const INDENT: usize = 4;
     let mut out = String::new();
-    let mut used = INDENT;
+    let mut used = begun;
     for word in words.split(' ') {
         let length = word.chars().count();
         if !out.is_empty() && used + 1 + length > columns {
@@ -195,14 +201,16 @@ mod tests {
 
     #[test]
     fn a_long_note_is_broken_between_words_and_indented_under_its_dash() {
-        let text = wrapped("means over the steps of the clock, gaps left out", 24);
+        let text = wrapped("means over the steps of the clock, gaps left out", 4, 24);
         assert_eq!(text, "means over the steps\n    of the clock, gaps\n    left out");
         assert!(text.lines().all(|line| line.chars().count() <= 24));
         // A word is never broken, and a note that fits stays on its line.
         assert_eq!(
-            wrapped("data/observations/eastern-basin.csv read", 20),
+            wrapped("data/observations/eastern-basin.csv read", 4, 20),
             "data/observations/eastern-basin.csv\n    read"
         );
-        assert_eq!(wrapped("a short note", 80), "a short note");
+        assert_eq!(wrapped("a short note", 4, 80), "a short note");
+        // Blanks between columns stay where a line is not broken.
+        assert_eq!(wrapped("sun    1.5   2", 2, 80), "sun    1.5   2");
     }
 }

@@ -58,8 +58,13 @@ impl Conversation {
     }
 
     /// The cell that the next input will be.
-    pub(super) fn next_cell(&self) -> String {
-        format!("in {}", self.inputs.len() + 1)
+    fn next_cell(&self) -> String {
+        format!("input {}", self.inputs.len() + 1)
+    }
+
+    /// What stands before the next input.
+    pub(super) fn prompt(&self) -> String {
+        format!("in {}: ", self.inputs.len() + 1)
     }
 
     /// How wide the terminal is.

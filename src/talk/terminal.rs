@@ -18,7 +18,7 @@ use super::lines::is_incomplete;
 use super::print;
 use super::progress::Progress;
 
-/// Charts and notes are at least so wide, and at most; a narrower terminal breaks their lines.
+/// Charts and texts are at least so wide, and at most; a narrower terminal breaks their lines.
 const COLUMNS: (usize, usize) = (60, 100);
 
 /// Read inputs until the person at the terminal ends the session.
@@ -39,7 +39,7 @@ pub(super) fn talk(conversation: Conversation, folder: &Path, colour: bool) -> i
         let _ = editor.load_history(file);
     }
     print(&format!(
-        "rhythmite {}, reading files in {}; `:help` says more, Ctrl-D ends\n\n",
+        "rhythmite {}, reading files in {}\n`:help` says more, Tab completes, Ctrl-D ends\n\n",
         env!("CARGO_PKG_VERSION"),
         folder.canonicalize().unwrap_or_else(|_| folder.to_owned()).display()
     ));
@@ -50,7 +50,7 @@ pub(super) fn talk(conversation: Conversation, folder: &Path, colour: bool) -> i
             return Ok(());
         }
         desk.conversation.set_columns(columns.clamp(COLUMNS.0, COLUMNS.1));
-        let prompt = format!("{}: ", desk.conversation.next_cell());
+        let prompt = desk.conversation.prompt();
         let text = match editor.readline(&prompt) {
             Ok(text) => text,
             Err(ReadlineError::Interrupted) => continue,

@@ -58,8 +58,8 @@ fn comments_belong_to_the_line_after_them() {
 #[test]
 fn what_fails_is_told_with_its_place_and_ends_with_one() {
     for (name, lines, says) in [
-        ("unit", "1 + 1\n1 W/m2 + 1 degC\n2 + 2\n", " --> in 2:1:1"),
-        ("comment", "# why\n1 W/m2 + 1 degC\n", " --> in 1:2:1"),
+        ("unit", "1 + 1\n1 W/m2 + 1 degC\n2 + 2\n", " --> input 2:1:1"),
+        ("comment", "# why\n1 W/m2 + 1 degC\n", " --> input 1:2:1"),
         ("syntax", "x = = 1\n", "error[syntax]"),
         ("open", "scale(2,\n", "never closed"),
         ("broken", "1 +\n2\n", "error[syntax]"),
@@ -86,7 +86,7 @@ fn a_name_may_be_used_before_it_is_defined() {
 fn a_result_that_moves_is_told_with_what_moved_it() {
     let (code, out) = talk("moved", "x = 2 m\nx * 3\nx * 3\nx = 5 m\n");
     assert_eq!(code, Some(0), "{out}");
-    assert!(out.contains("x * 3, shown in in 3, refreshed by x:\n  15 m\n"), "{out}");
+    assert!(out.contains("x * 3, shown in input 3, refreshed by x:\n  15 m\n"), "{out}");
     // The same expression, shown twice, is told once.
     assert_eq!(out.matches("refreshed by x").count(), 1, "{out}");
 }
@@ -99,9 +99,9 @@ fn the_words_of_the_session_answer() {
     for says in [
         ":save FILE",
         "nothing is defined yet",
-        "  x         in 1  a quantity in degC\n",
-        "  twice(a)  in 2  a function\n",
-        "  home         in 1\n",
+        "  x         input 1  a quantity in degC\n",
+        "  twice(a)  input 2  a function\n",
+        "  home         input 1\n",
         "smooth(series, width, window: running_mean, ends: shortened)",
         "watt",
     ] {

@@ -27,6 +27,10 @@ fn an_era_by_another_word_is_told_how_it_is_written() {
     ] {
         assert_eq!(told(text), (message.to_owned(), help.to_owned()), "{text}");
     }
+    // Where it cannot be read at all.
+    assert_eq!(told("AD 300").1, "an era stands after its number: 300 CE");
+    assert_eq!(told("x = BC 44..1").1, "an era stands after its number: 44 BCE");
+    assert_eq!(told("21 kyr BP").1, "an age is written such as 21 ka, 2.7 Ma or 450 cal BP");
     // A name that is no era is multiplied by.
     assert!(told("T = 3\n5 T").1.contains("to multiply, write `5 * T`"));
 }
