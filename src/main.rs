@@ -28,7 +28,7 @@ enum Command {
         /// How results are printed.
         #[arg(long, value_enum, default_value = "text")]
         format: Format,
-        /// Write the results there instead of printing them.
+        /// Write the results there instead of printing them; a run that is interrupted leaves the file as it was.
         #[arg(long)]
         out: Option<PathBuf>,
         /// A definition that wins over those of the program, such as "members = 500"; may be given more than once.
@@ -99,8 +99,8 @@ fn main() -> ExitCode {
             let folder = file.parent().filter(|folder| !folder.as_os_str().is_empty());
             let folder = folder.unwrap_or(Path::new(".")).to_owned();
             let limit = file_limit.saturating_mul(1024 * 1024);
-            let session = Session::with_limits(folder, threads, MEMORY, limit);
-            let wanted = Wanted { format, out, figures };
+            let session = Session::with_limits(&folder, threads, MEMORY, limit);
+            let wanted = Wanted { folder, format, out, figures };
             run(session, &file, &wanted, &define)
         }
         Command::Talk { folder, threads, file_limit } => {
@@ -211,6 +211,8 @@ fn read(file: &Path) -> Result<Program, String> {
 
 /// What a run is asked for.
 struct Wanted {
+    /// The folder of the program, from which it reads files.
+    folder: PathBuf,
     format: Format,
     out: Option<PathBuf>,
     figures: Option<PathBuf>,
@@ -227,6 +229,10 @@ fn run(mut session: Session, file: &Path, wanted: &Wanted, define: &[String]) ->
     };
     if format == Format::Ipynb && matches!(program, Program::Script(_)) {
         complain("a script has no cells to write outputs into: `--format ipynb` is for notebooks (.ipynb)\n");
+        return WRONG_CALL;
+    }
+    if let Some(why) = wanted.out.as_deref().and_then(|out| unfit(out, file, format)) {
+        complain(&format!("{why}\n"));
         return WRONG_CALL;
     }
     session.name_cell(OUTSIDE, "--define");
@@ -260,31 +266,63 @@ fn run(mut session: Session, file: &Path, wanted: &Wanted, define: &[String]) ->
             serde_json::to_string_pretty(&json).unwrap_or_default() + "\n"
         }
     };
-    match &wanted.out {
-        None => print(&printed),
-        Some(path) => {
-            if let Err(error) = std::fs::write(path, printed) {
-                complain(&format!("{} cannot be written: {error}\n", path.display()));
-                return WRONG_CALL;
-            }
+    let inputs: Vec<PathBuf> =
+        session.inputs().into_iter().map(|(input, _)| wanted.folder.join(input)).collect();
+    let failed = match &wanted.out {
+        None => {
+            print(&printed);
+            None
         }
-    }
-    if let Some(folder) = &wanted.figures
-        && let Err(error) = write_figures(folder, &ran)
-    {
-        complain(&format!("figures cannot be written into {}: {error}\n", folder.display()));
+        Some(path) => write(path, printed.as_bytes(), &inputs).err(),
+    };
+    let failed = failed.or_else(|| {
+        let folder = wanted.figures.as_deref()?;
+        write_figures(folder, &ran, &[&inputs[..], &[file.to_owned()]].concat()).err()
+    });
+    if let Some(why) = failed {
+        complain(&format!("{why}\n"));
         return WRONG_CALL;
     }
     if ran.failed() { WRONG_PROGRAM } else { SUCCESS }
 }
 
-/// Write what is drawn of the results into a folder, which is made where there is none, and say so.
-fn write_figures(folder: &Path, ran: &Run) -> std::io::Result<()> {
+/// Why results cannot go to `out`, as far as that is known before the program is run: nobody waits for a result that
+/// has nowhere to go.
+fn unfit(out: &Path, program: &Path, format: Format) -> Option<String> {
+    // A notebook with its outputs takes the place of the notebook: all else in it stays.
+    if format != Format::Ipynb && notebook::same_file(out, program) {
+        return Some(format!("{} is the program itself: name another file for its results", out.display()));
+    }
+    if out.is_dir() {
+        return Some(format!("{} is a folder: name a file in it", out.display()));
+    }
+    let folder = out.parent().filter(|folder| !folder.as_os_str().is_empty())?;
+    (!folder.is_dir())
+        .then(|| format!("{} cannot be written: there is no folder {}", out.display(), folder.display()))
+}
+
+/// Write one file of results as a whole; the error is a sentence for people.
+fn write(path: &Path, contents: &[u8], spared: &[PathBuf]) -> Result<(), String> {
+    if spared.iter().any(|other| notebook::same_file(path, other)) {
+        return Err(format!(
+            "{} was read for these results, and nothing was written over it: name another file",
+            path.display()
+        ));
+    }
+    notebook::write_whole(path, contents)
+        .map_err(|error| format!("{} cannot be written: {error}", path.display()))
+}
+
+/// Write what is drawn of the results into a folder, which is made where there is none, and say so. `spared` are files
+/// that no figure is written over.
+fn write_figures(folder: &Path, ran: &Run, spared: &[PathBuf]) -> Result<(), String> {
     let files = notebook::figure_files(ran.cells.iter().flat_map(|(_, reply)| &reply.outputs));
-    std::fs::create_dir_all(folder)?;
+    std::fs::create_dir_all(folder)
+        .map_err(|error| format!("figures cannot be written into {}: {error}", folder.display()))?;
     for file in &files {
-        std::fs::write(folder.join(&file.name), &file.svg)?;
-        complain(&format!("wrote {}\n", folder.join(&file.name).display()));
+        let path = folder.join(&file.name);
+        write(&path, file.svg.as_bytes(), spared)?;
+        complain(&format!("wrote {}\n", path.display()));
     }
     if files.is_empty() {
         complain("no series or bundle is shown, so that no figure was written\n");

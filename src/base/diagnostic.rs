@@ -54,6 +54,13 @@ pub enum Blame {
     Item(usize),
 }
 
+impl Diagnostic {
+    /// Whether another is the same mistake at the same place, whichever way led there.
+    pub fn is_same_mistake(&self, other: &Diagnostic) -> bool {
+        self.code == other.code && self.primary.span == other.primary.span && self.message == other.message
+    }
+}
+
 impl Fault {
     /// A fault of the whole call.
     pub fn new(code: &'static str, message: impl Into<String>) -> Self {

@@ -52,7 +52,8 @@ static ATTRIBUTE: Entry = Entry {
             Parameter::choice(
                 "method",
                 &[
-                    Choice::plain("ordinary_least_squares", "residuals independent"),
+                    Choice::plain("ordinary_least_squares", "residuals independent")
+                        .also(&["least_squares", "lstsq"]),
                     Choice::plain("generalised_least_squares", "residuals correlated as `noise:` says"),
                 ],
                 "ordinary_least_squares",
@@ -64,10 +65,11 @@ static ATTRIBUTE: Entry = Entry {
                 "what the residuals are like; must be said for generalised least squares",
             )
             .or_choices(&[
-                Choice::plain("white", "independent"),
+                Choice::plain("white", "independent").also(&["iid", "uncorrelated", "independent"]),
                 Choice {
                     name: "ar1",
                     meaning: "a first-order autoregression with known persistence",
+                    search: &["red", "red_noise", "autoregressive", "markov"],
                     parameters: &[
                         Parameter::required(
                             "coefficient",
@@ -578,7 +580,7 @@ fn regression_fault(error: &regression::RegressionError, labels: &[Arc<str>]) ->
         )
         .blame("to"),
         RegressionError::CollinearColumns { column, with } => {
-            let others: Vec<&str> = with.iter().map(|index| label(*index)).collect();
+            let others: Vec<String> = with.iter().map(|index| format!("`{}`", label(*index))).collect();
             Fault::new(
                 "collinear-drivers",
                 format!("`{}` cannot be told apart from {}", label(*column), others.join(", ")),

@@ -334,23 +334,28 @@ pub(super) enum Numeric {
     Series(Series),
 }
 
-/// Check what was given against the signature: kinds and units.
+/// Check what was given against the signature: kinds and units. The names of an operator's parameters are written
+/// nowhere, so that messages about one, whose `sign` it is, quote the operand instead.
 ///
 /// # Errors
 /// `wrong-argument` or `unit-mismatch`, blamed on the argument.
-pub fn check_arguments(call: &Call<'_>) -> Result<(), Stop> {
+pub fn check_arguments(call: &Call<'_>, sign: Option<&str>) -> Result<(), Stop> {
     for given in call.given {
         let Some(parameter) = call.parameters.get(given.parameter) else { continue };
         match &given.what {
             What::Groups(_) | What::Months { .. } => {}
             What::Choice { choice, given } => {
                 if let Some(choice) = parameter.choices.get(*choice) {
-                    check_arguments(&Call::new(choice.parameters, given, call.context))?;
+                    check_arguments(&Call::new(choice.parameters, given, call.context), None)?;
                 }
             }
             What::Value(slot) => {
                 let shape = call.context.shape(*slot)?;
-                check_shape(parameter, &shape).map_err(|mut fault| {
+                let (subject, takes) = match sign {
+                    Some(sign) => (operand(&call.context.label(*slot)), format!("`{sign}` takes")),
+                    None => (format!("`{}`", parameter.name), "it takes".to_owned()),
+                };
+                check_shape(parameter, &shape, &subject, &takes).map_err(|mut fault| {
                     fault.blame = blame_for(call, parameter, given);
                     fault
                 })?;
@@ -368,7 +373,13 @@ fn blame_for(call: &Call<'_>, parameter: &'static Parameter, given: &Given) -> B
     }
 }
 
-fn check_shape(parameter: &Parameter, shape: &Shape) -> Result<(), Fault> {
+/// An operand as a message names it: its text, where that is short enough to be read.
+fn operand(text: &str) -> String {
+    const MOST: usize = 40;
+    if text.chars().count() <= MOST { format!("`{text}`") } else { "this operand".to_owned() }
+}
+
+fn check_shape(parameter: &Parameter, shape: &Shape, subject: &str, takes: &str) -> Result<(), Fault> {
     let kind = shape.kind();
     // A duration is a quantity too, and a list of acceptable kinds says "quantity" for both.
     let accepted = parameter.accepts.iter().any(|accepted| {
@@ -377,7 +388,7 @@ fn check_shape(parameter: &Parameter, shape: &Shape) -> Result<(), Fault> {
     if !accepted {
         let expected = expected_words(parameter);
         let help = slip(parameter, shape);
-        let message = format!("`{}` is {}; it takes {expected}", parameter.name, shape.describe());
+        let message = format!("{subject} is {}; {takes} {expected}", shape.describe());
         let fault = Fault::new("wrong-argument", message).label(format!("I was expecting {expected}"));
         return Err(match help {
             Some(help) => fault.help(help),
@@ -386,10 +397,9 @@ fn check_shape(parameter: &Parameter, shape: &Shape) -> Result<(), Fault> {
     }
     if let (Some(Ok(unit)), Some(measure)) = (parameter.unit.map(Unit::parse), shape.measure()) {
         measure.unit.factor_to(&unit).map_err(|fault| {
-            let expected = format!("`{}` must be convertible to {unit}", parameter.name);
+            let expected = format!("{subject} must be convertible to {unit}");
             let mut fault = fault.label(expected);
-            fault.message =
-                format!("`{}` is {}, which does not convert to {unit}", parameter.name, shape.describe());
+            fault.message = format!("{subject} is {}, which does not convert to {unit}", shape.describe());
             fault
         })?;
     }

@@ -73,6 +73,13 @@ impl Entry {
     };
 }
 
+impl Entry {
+    /// How an operator is written; none for a function, which is called by its name.
+    pub fn sign(&self) -> Option<&'static str> {
+        (self.room == Room::Operators).then_some(if self.name == "negate" { "-" } else { self.name })
+    }
+}
+
 /// How a body sees the members.
 #[derive(Clone, Copy)]
 pub enum Body {

@@ -26,7 +26,13 @@ static SMOOTH: Entry = Entry {
             Parameter::choice(
                 "window",
                 &[
-                    Choice::plain("running_mean", "every value inside the window counts the same"),
+                    Choice::plain("running_mean", "every value inside the window counts the same").also(&[
+                        "mean",
+                        "moving_average",
+                        "moving_mean",
+                        "boxcar",
+                        "rolling",
+                    ]),
                     Choice::plain("gaussian", "Gaussian weights, cut at four standard deviations"),
                 ],
                 "running_mean",
@@ -78,14 +84,14 @@ static SMOOTH: Entry = Entry {
         };
         series_or_bundle(&*call.value("series")?, "", &mut |series, _| {
             let (starts, stops) = cells(&series.axis);
-            call.context.cancellation().check()?;
-            let values = series.values.map_rows(series.axis.len(), |from, to| {
+            let cancellation = call.context.cancellation();
+            let values = series.values.map_rows_until(series.axis.len(), cancellation, |from, to| {
                 if gaussian {
-                    smoothing::gaussian_mean(&starts, &stops, from, width, ends, to);
-                } else {
-                    smoothing::running_mean(&starts, &stops, from, width, ends, to);
+                    return smoothing::gaussian_mean(&starts, &stops, from, width, ends, cancellation, to);
                 }
-            });
+                smoothing::running_mean(&starts, &stops, from, width, ends, to);
+                Ok(())
+            })?;
             Ok(series.with(values, series.measure.clone()))
         })
     }),

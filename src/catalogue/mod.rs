@@ -24,6 +24,7 @@ mod response;
 mod seasons;
 mod shapes;
 mod showing;
+mod splice;
 mod tables;
 mod time;
 

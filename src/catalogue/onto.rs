@@ -111,11 +111,7 @@ pub(super) fn bring_by(
             .into());
     }
     if context.path() == Path::Nominal {
-        let left = if gaps > 0 {
-            format!("; {} left as gaps", counted(gaps, axis.kind.word()))
-        } else {
-            String::new()
-        };
+        let left = if gaps > 0 { left_as_gaps(gaps, axis) } else { String::new() };
         let method = method.replace('_', " ");
         context.note(format!(
             "{name}: {} brought onto {} by the method {method}{left}",
@@ -152,7 +148,7 @@ fn words(series: &Series, name: &str, axis: &Axis, plan: &Plan, gaps: usize) -> 
         let kind = series.axis.kind.word();
         let mut words = format!("{name}: {taken} of its {} {kind} taken as they are", series.axis.len());
         if gaps > 0 {
-            words += &format!("; {} left as gaps", counted(gaps, axis.kind.word()));
+            words += &left_as_gaps(gaps, axis);
         }
         return Some(words).filter(|_| gaps > 0 || taken < series.axis.len());
     }
@@ -170,7 +166,7 @@ fn words(series: &Series, name: &str, axis: &Axis, plan: &Plan, gaps: usize) -> 
         words += &format!("; {} to {} bridged by a straight line", label(from), label(to));
     }
     if gaps > 0 {
-        words += &format!("; {} left as gaps", counted(gaps, axis.kind.word()));
+        words += &left_as_gaps(gaps, axis);
     }
     Some(words)
 }
@@ -185,6 +181,12 @@ fn longest_bridge(series: &Series) -> Option<(f64, f64)> {
     spaces
         .filter(|(from, to)| to - from > customary * 1.01 && to - from <= series.longest_gap_years)
         .max_by(|left, right| f64::total_cmp(&(left.1 - left.0), &(right.1 - right.0)))
+}
+
+/// `; 1 step left as a gap`, `; 3 steps left as gaps`.
+fn left_as_gaps(number: usize, axis: &Axis) -> String {
+    let gaps = if number == 1 { "a gap" } else { "gaps" };
+    format!("; {} left as {gaps}", counted(number, axis.kind.word()))
 }
 
 /// `1 step`, `3 steps`.

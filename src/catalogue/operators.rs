@@ -84,7 +84,7 @@ static MINUS: Entry = Entry {
 static TIMES: Entry = Entry {
     result: "in the product of the units",
     shows: &[Shows { program: "0.8 degC*m2/W * 3.7 W/m2", gives: "2.96 degC" }],
-    fails: &[Fails { program: "2 * \"a\"", code: "wrong-argument", says: "it takes" }],
+    fails: &[Fails { program: "2 * \"a\"", code: "wrong-argument", says: "`*` takes" }],
     shape: times_shape,
     body: Body::PerMember(times),
     ..operator(
@@ -101,7 +101,7 @@ static OVER: Entry = Entry {
     result: "in the quotient of the units",
     gaps: "A gap on either side is a gap in the result, and so is a division by zero.",
     shows: &[Shows { program: "3.7 W/m2 / 1.2 W/m2/K", gives: "3.08333 K" }],
-    fails: &[Fails { program: "1 / 1850 CE", code: "wrong-argument", says: "it takes" }],
+    fails: &[Fails { program: "1 / 1850 CE", code: "wrong-argument", says: "`1850 CE` is an instant" }],
     shape: over_shape,
     body: Body::PerMember(over),
     ..operator(
@@ -134,7 +134,7 @@ static POWER: Entry = Entry {
 static NEGATE: Entry = Entry {
     result: "in the same unit",
     shows: &[Shows { program: "x = 3 W/m2\n-x", gives: "-3 W/m2" }],
-    fails: &[Fails { program: "x = 1850 CE\n-x", code: "wrong-argument", says: "it takes" }],
+    fails: &[Fails { program: "x = 1850 CE\n-x", code: "wrong-argument", says: "`x` is an instant" }],
     shape: |call| Ok(numeric_shape(call.measure("value")?, &[call.shape("value")?])),
     body: Body::PerMember(|call| {
         Ok(match numeric(call, "value")? {
@@ -299,7 +299,9 @@ static IN: Entry = Entry {
         let value = call.value("value")?;
         match (value.as_ref(), unit_argument(call)?) {
             (Value::Instant(instant), Target::Era(era)) => {
-                Ok(Value::Instant(Instant::at(instant.years.clone(), era, instant.width_years)))
+                // Who asks for an era wants the number in it, of a date, too.
+                let moved = Instant::at(instant.years.clone(), era, instant.width_years);
+                Ok(Value::Instant(Instant { is_date: false, ..moved }))
             }
             (Value::Quantity(quantity), Target::Unit(unit)) => {
                 let (measure, factor) = quantity.measure.convert(&unit)?;
@@ -601,7 +603,8 @@ fn plus_minus(call: &Call<'_>) -> Result<Value, Stop> {
     match centre.as_ref() {
         Value::Instant(instant) => {
             let years = drawn(&instant.years, &years_of(spread)?);
-            Ok(Value::Instant(Instant::at(years, instant.era, 0.0)))
+            let drawn = Instant::at(years, instant.era, 0.0);
+            Ok(Value::Instant(Instant { is_date: instant.is_date, ..drawn }))
         }
         Value::Quantity(quantity) => {
             let factor = spread.measure.unit.factor_to(&quantity.measure.unit)?;

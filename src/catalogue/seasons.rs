@@ -149,8 +149,9 @@ fn stretch(
         let named: Vec<String> =
             incomplete.iter().take(5).map(|to| format!("{}", (to - 1e-6).floor())).collect();
         let more = if incomplete.len() > 5 { ", …" } else { "" };
+        let gaps = if incomplete.len() == 1 { "a gap, or" } else { "gaps, or" };
         call.context.note(format!(
-            "{name}: {} incomplete ({}{more}), left as gaps or away at the ends",
+            "{name}: {} incomplete ({}{more}), left as {gaps} away at the ends",
             counted(incomplete.len(), &format!("{word}s")),
             named.join(", ")
         ));

@@ -8,7 +8,9 @@ use super::entry::{Body, Entry, Fails, ReadsClock, Room, Shows};
 use super::onto::{onto_clock, total};
 use crate::base::Fault;
 use crate::language::{Parameter, Signature};
-use crate::value::{Attribution, AxisKind, Cell, Column, Series, Shape, Table, Value};
+use crate::value::{
+    Attribution, AxisKind, Cell, Column, Era, Series, Shape, Table, Value, are_dates, date_label,
+};
 
 static TABLE: Entry = Entry {
     name: "table",
@@ -118,13 +120,20 @@ fn table(call: &Call<'_>) -> Result<Table, Stop> {
 fn time_column(series: &Series) -> Column {
     if series.axis.era.is_age() {
         Column::in_unit("age", series.axis.era.symbol())
+    } else if has_dates(series) {
+        Column::plain("date")
     } else {
         Column::plain("year CE")
     }
 }
 
-/// Calendar steps are named by the year they begin in, as they were written; ages by their number. They show as
-/// many decimals as tell them exactly, three at most.
+/// Whether the times of a series are days of the calendar.
+fn has_dates(series: &Series) -> bool {
+    series.axis.era == Era::Ce && are_dates(series.axis.starts())
+}
+
+/// Calendar steps are named by the year they begin in, as they were written, or by their date; ages by their number.
+/// They show as many decimals as tell them exactly, three at most.
 fn time_rows(series: &Series, values: &[Vec<Cell>]) -> Vec<Vec<Cell>> {
     let axis = &series.axis;
     let named = |start: &f64| if axis.era.is_age() { axis.era.of_year(*start) } else { *start };
@@ -133,12 +142,16 @@ fn time_rows(series: &Series, values: &[Vec<Cell>]) -> Vec<Vec<Cell>> {
         axis.starts().iter().all(|start| (named(start) * scale - (named(start) * scale).round()).abs() < 1e-4)
     };
     let decimals = (0..3).find(exact).unwrap_or(3);
+    let dates = has_dates(series);
+    let time = |start: &f64| {
+        if dates { Cell::Text(date_label(*start).into()) } else { Cell::Rounded(named(start), decimals) }
+    };
     axis.starts()
         .iter()
         .enumerate()
         .map(|(row, start)| {
             let numbers = values.iter().map(|column| column.get(row).cloned().unwrap_or(Cell::Empty));
-            std::iter::once(Cell::Rounded(named(start), decimals)).chain(numbers).collect()
+            std::iter::once(time(start)).chain(numbers).collect()
         })
         .collect()
 }

@@ -79,9 +79,11 @@ static ON: Entry = Entry {
             Parameter::required("clock", &["clock"], "the clock"),
             Parameter::optional("method", &[], "how data are brought onto it; by default means where that is coarser and straight lines where it is finer")
                 .or_choices(&[
-                    Choice::plain("mean", "the mean of what each step covers, each value holding over its own step"),
+                    Choice::plain("mean", "the mean of what each step covers, each value holding over its own step")
+                        .also(&["average", "averages", "bin", "bins"]),
                     Choice::plain("linear", "straight between values, read at the middle of each step"),
-                    Choice::plain("monotone_cubic", "a smooth curve that stays between neighbours, read at the middle of each step"),
+                    Choice::plain("monotone_cubic", "a smooth curve that stays between neighbours, read at the middle of each step")
+                        .also(&["cubic", "spline", "pchip"]),
                     Choice::plain("nearest", "the value nearest in time"),
                     Choice::plain("none", "only values that stand at the very same time"),
                 ]),

@@ -4,13 +4,15 @@ use super::html::Page;
 use super::number::{plain, rounded, with_range};
 use crate::value::{
     Attribution, Axis, Cell, Era, Events, ForcingKind, Measure, Shown, ShownSeries, Spread, Table, Unit,
+    date_label,
 };
 
 /// The one line of text under an output: the numbers a person wants first.
 pub fn line(shown: &Shown) -> String {
     match shown {
         Shown::Quantity { measure, nominal, spread } => quantity(*nominal, spread.as_deref(), measure),
-        Shown::Instant { era, nominal, spread } => instant(*era, *nominal, spread.as_deref()),
+        Shown::Instant { is_date: true, nominal, spread, .. } => date(*nominal, spread.as_deref()),
+        Shown::Instant { era, nominal, spread, .. } => instant(*era, *nominal, spread.as_deref()),
         Shown::Series(series) => series_line(series),
         Shown::Bundle { components, total } => {
             let labels: Vec<&str> = components.iter().map(|(label, _)| &**label).collect();
@@ -136,6 +138,14 @@ fn quantity(nominal: f64, spread: Option<&Spread>, measure: &Measure) -> String 
     match number.split_once(" [") {
         Some((value, range)) => format!("{value}{unit} [{range}{kind}"),
         None => number + &unit + &kind,
+    }
+}
+
+fn date(nominal: f64, spread: Option<&Spread>) -> String {
+    let nominal = date_label(nominal);
+    match spread.and_then(|spread| spread.low.first().zip(spread.high.first())) {
+        None => nominal,
+        Some((low, high)) => format!("{nominal} [{}, {}]", date_label(*low), date_label(*high)),
     }
 }
 

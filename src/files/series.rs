@@ -114,11 +114,17 @@ pub fn read_ensemble(
             .filter(|&column| matches_pattern(members, &table.columns[column].name))
             .collect();
         if chosen.is_empty() {
+            let found = headers(table, candidates);
+            let (which, help) = if candidates.len() == 1 {
+                (format!("the only one is {found}"), "leave `members` out to read it as one series")
+            } else {
+                (format!("they are {found}"), "`*` stands for any characters, `?` for one: members: \"m*\"")
+            };
             return Err(FileFault::new(
                 "file-no-such-column",
-                format!("no value column matches `{members}`; they are {}", headers(table, candidates)),
+                format!("no value column matches `{members}`; {which}"),
             )
-            .help("`*` stands for any characters, as in members: \"m*\""));
+            .help(help));
         }
         Ok(chosen)
     })

@@ -227,6 +227,8 @@ fn members_are_the_columns_that_match() {
     );
     let none = read_ensemble(text.as_bytes(), "run?", &SeriesOptions::default());
     assert!(none.is_err_and(|f| f.message.contains("they are `m1`, `note`, `m2`, `x10`")));
+    let only = read_ensemble(b"year,t (degC)\n1850,1\n", "m*", &SeriesOptions::default());
+    assert!(only.is_err_and(|f| f.message.ends_with("`m*`; the only one is `t (degC)`")));
     let question = read_ensemble(text.as_bytes(), "?1*", &SeriesOptions::default());
     assert!(question.is_ok_and(|ensemble| ensemble.member_names == ["m1", "x10"]), "`?` is one character");
     let units = read_ensemble(b"year,m1 (ppm),m2 (ppb)\n1,2,3\n", "m*", &SeriesOptions::default());

@@ -152,7 +152,20 @@ fn advice(token: &TokenKind, previous: Option<&TokenKind>, place: Place) -> Opti
 
 /// Two values side by side.
 fn two_values(token: &TokenKind, previous: &TokenKind, place: Place) -> Option<String> {
+    if let (TokenKind::Name(name), TokenKind::Number(number)) = (previous, token) {
+        let era = match name.as_str() {
+            "AD" | "CE" => Some("CE"),
+            "BC" | "BCE" => Some("BCE"),
+            _ => None,
+        };
+        if let Some(era) = era {
+            return Some(format!("an era stands after its number: {number} {era}"));
+        }
+    }
     let help = match (previous, token) {
+        (TokenKind::Unit(unit), TokenKind::Name(name)) if name == "BP" && unit.ends_with("yr") => {
+            "an age is written such as 21 ka, 2.7 Ma or 450 cal BP"
+        }
         (TokenKind::Number(_), TokenKind::Name(name)) if name.starts_with('_') => {
             "the digits of a number stand together: 11700"
         }

@@ -76,6 +76,8 @@ pub struct Choice {
     pub meaning: &'static str,
     /// Its own parameters.
     pub parameters: &'static [Parameter],
+    /// Other words for it, by which it is suggested.
+    pub search: &'static [&'static str],
 }
 
 impl Parameter {
@@ -149,6 +151,11 @@ impl Parameter {
 impl Choice {
     /// A choice without parameters.
     pub const fn plain(name: &'static str, meaning: &'static str) -> Self {
-        Self { name, meaning, parameters: &[] }
+        Self { name, meaning, parameters: &[], search: &[] }
+    }
+
+    /// The same, suggested for other words, too.
+    pub const fn also(self, search: &'static [&'static str]) -> Self {
+        Self { search, ..self }
     }
 }

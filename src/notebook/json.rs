@@ -28,6 +28,9 @@ fn output(session: &Session, run: &Run, output: &Output, cell: Option<usize>) ->
     let mut object = Map::new();
     object.insert("cell".to_owned(), json!(cell));
     object.insert("expression".to_owned(), json!(output.expression));
+    if !output.refreshed_by.is_empty() {
+        object.insert("refreshed_by".to_owned(), json!(output.refreshed_by));
+    }
     match &output.result {
         Err(problem) => {
             object.insert("kind".to_owned(), json!("error"));

@@ -7,6 +7,7 @@ mod ipynb;
 mod json;
 mod report;
 mod run;
+mod whole_file;
 
 pub use bundle::{Bundle, Pieces, pieces, result_metadata, words_bundle};
 pub use figures::{FigureFile, figure_files};
@@ -14,3 +15,4 @@ pub use ipynb::{Notebook, Unreadable};
 pub use json::run_to_json;
 pub use report::Report;
 pub use run::{CodeCell, Run};
+pub use whole_file::{same_file, write_whole};

@@ -20,8 +20,8 @@ pub struct Report {
     pub fingerprints: bool,
     /// Whether a result stands under the expression it is of; a terminal shows what was typed anyway.
     pub echo: bool,
-    /// How wide the charts of series are, in columns of a terminal; none where no chart is drawn.
-    pub chart_columns: Option<usize>,
+    /// How many columns the terminal has that this is for: series have charts then, and lines are broken between words.
+    pub columns: Option<usize>,
     /// Whether a result of another cell that moved is told in one line.
     pub brief_moves: bool,
     said: HashSet<Arc<str>>,
@@ -89,7 +89,11 @@ impl Report {
             let (cell, expression) = (session.cell_name(&output.cell), &output.expression);
             self.text += &format!("{bold}{expression}{plain}, shown in {cell}, refreshed by {by}:\n");
             self.text += &match &output.result {
-                Ok(shown) => format!("  {}\n", display::line(shown)),
+                Ok(shown) => {
+                    let line = display::line(shown);
+                    let line = self.columns.map_or(line.clone(), |most| wrapped(&line, 2, most));
+                    format!("  {line}\n")
+                }
                 Err(problem) => {
                     let line = display::problem_line(problem, &sources);
                     format!("  an error now, at {line}: {}\n", problem.message)
@@ -110,13 +114,16 @@ impl Report {
                 if self.echo {
                     self.text += &format!("{bold}{}{plain}\n", output.expression);
                 }
-                for line in display::text(shown).lines() {
-                    let indent = if line.starts_with("  ") { "" } else { "  " };
-                    self.text += &format!("{indent}{line}\n");
+                let text = display::text(shown);
+                for line in text.lines().map(|line| line.strip_prefix("  ").unwrap_or(line)) {
+                    let line = self.columns.map_or_else(|| line.to_owned(), |most| wrapped(line, 2, most));
+                    self.text += &format!("  {line}\n");
                 }
                 self.chart(shown);
                 for note in &output.notes {
                     if self.said.insert(note.clone()) {
+                        let note =
+                            self.columns.map_or_else(|| note.to_string(), |most| wrapped(note, 4, most));
                         self.text += &format!("  {dim}– {note}{plain}\n");
                     }
                 }
@@ -145,7 +152,7 @@ impl Report {
 
     /// The chart of a series, or of a bundle's sum.
     fn chart(&mut self, shown: &Shown) {
-        let Some(columns) = self.chart_columns else { return };
+        let Some(columns) = self.columns else { return };
         let (title, series) = match shown {
             Shown::Series(series) => ("", series),
             Shown::Bundle { total, .. } => ("  total\n", total),
@@ -165,5 +172,45 @@ impl Report {
             self.text += title;
             self.text.extend(chart.lines().map(|line| format!("  {line}\n")));
         }
+    }
+}
+
+/// Words on lines of at most `columns`, of which `begun` are taken on the first; the others begin with four blanks.
+fn wrapped(words: &str, begun: usize, columns: usize) -> String {
+    const INDENT: usize = 4;
+    let mut out = String::new();
+    let mut used = begun;
+    for word in words.split(' ') {
+        let length = word.chars().count();
+        if !out.is_empty() && used + 1 + length > columns {
+            out += "\n    ";
+            used = INDENT;
+        } else if !out.is_empty() {
+            out.push(' ');
+            used += 1;
+        }
+        out += word;
+        used += length;
+    }
+    out
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_long_note_is_broken_between_words_and_indented_under_its_dash() {
+        let text = wrapped("means over the steps of the clock, gaps left out", 4, 24);
+        assert_eq!(text, "means over the steps\n    of the clock, gaps\n    left out");
+        assert!(text.lines().all(|line| line.chars().count() <= 24));
+        // A word is never broken, and a note that fits stays on its line.
+        assert_eq!(
+            wrapped("data/observations/eastern-basin.csv read", 4, 20),
+            "data/observations/eastern-basin.csv\n    read"
+        );
+        assert_eq!(wrapped("a short note", 4, 80), "a short note");
+        // Blanks between columns stay where a line is not broken.
+        assert_eq!(wrapped("sun    1.5   2", 2, 80), "sun    1.5   2");
     }
 }

@@ -81,5 +81,5 @@ impl Run {
 
 /// Whether the mistake that keeps an output from being shown is told with its cell already.
 pub(super) fn is_told(reply: &CellReply, problem: &Diagnostic) -> bool {
-    reply.problems.contains(problem) || reply.waiting.contains(problem)
+    reply.problems.iter().chain(&reply.waiting).any(|told| told.is_same_mistake(problem))
 }

@@ -1,6 +1,8 @@
 //! Smoothing, sums and differences along time. Values stand on cells (starts and ends in years, ascending, without
 //! overlap); gaps are NaN.
 
+use crate::base::{Cancellation, Cancelled};
+
 /// What happens where the window reaches past the record.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum Ends {
@@ -88,19 +90,24 @@ impl Sums {
 /// window is cut at four of them. Weights are taken at the middles of cells and times their lengths.
 ///
 /// Of the weight inside the record, two thirds must have values.
+///
+/// # Errors
+/// [`Cancelled`] when asked to stop: a wide window over a long record takes long.
 pub fn gaussian_mean(
     starts: &[f64],
     ends: &[f64],
     values: &[f64],
     deviation_years: f64,
     at_ends: Ends,
+    cancellation: &Cancellation,
     out: &mut [f64],
-) {
-    let Some((first, last)) = starts.first().zip(ends.last()) else { return };
+) -> Result<(), Cancelled> {
+    let Some((first, last)) = starts.first().zip(ends.last()) else { return Ok(()) };
     let middles: Vec<f64> = starts.iter().zip(ends).map(|(start, end)| 0.5 * (start + end)).collect();
     let reach = GAUSSIAN_REACH * deviation_years;
     let (mut low, mut high) = (0usize, 0usize);
     for (index, target) in out.iter_mut().enumerate().take(values.len()) {
+        cancellation.check()?;
         let middle = middles[index];
         while high < values.len() && middles[high] <= middle + reach * (1.0 + 1e-9) {
             high += 1;
@@ -122,6 +129,7 @@ pub fn gaussian_mean(
         let gap = (outside && at_ends == Ends::Gap) || weight < LEAST_COVERAGE * inside || weight <= 0.0;
         *target = if gap { f64::NAN } else { sum / weight };
     }
+    Ok(())
 }
 
 /// Intercept (at the mean time) and slope per year of the least-squares line through values at `times`; gaps are left

@@ -275,6 +275,11 @@ impl Session {
         id
     }
 
+    /// The text that a cell was last run with.
+    pub(super) fn newest_source(&self, cell: &str) -> Option<SourceId> {
+        self.newest.get(cell).copied()
+    }
+
     /// Names with what they are bound to, to tell what a cell changed.
     fn bindings(&self) -> BTreeMap<String, String> {
         let values = self

@@ -3,6 +3,7 @@
 use std::collections::{BTreeMap, BTreeSet};
 use std::sync::Arc;
 
+use super::bodies;
 use super::cell::{CellReply, Session};
 use super::definitions::SESSION_LIMIT;
 use super::environment::Environment;
@@ -213,6 +214,9 @@ impl Evaluator<'_> {
 
     /// Check the definitions of a cell, so that their errors do not wait to be shown.
     pub(super) fn check(&self, cell: &str, environment: &Environment, reply: &mut CellReply) {
+        for problem in bodies::problems(self, cell, environment) {
+            tell(problem, reply);
+        }
         for (name, definition) in &self.definitions.values {
             if &*definition.cell != cell {
                 continue;
@@ -234,12 +238,8 @@ impl Evaluator<'_> {
                     },
                 },
             };
-            match problem {
-                Some(problem) if problem.code == "not-defined" => reply.waiting.push(problem),
-                // A fault in another cell's definition is told there.
-                Some(problem) if reply.problems.contains(&problem) => {}
-                Some(problem) => reply.problems.push(problem),
-                None => {}
+            if let Some(problem) = problem {
+                tell(problem, reply);
             }
         }
     }
@@ -382,4 +382,12 @@ fn broken(stop: &Stop) -> Fingerprint {
         }
     }
     parts.finish()
+}
+
+/// Add a mistake to a reply, once however many definitions depend on it.
+fn tell(problem: Diagnostic, reply: &mut CellReply) {
+    let told = if problem.code == "not-defined" { &mut reply.waiting } else { &mut reply.problems };
+    if !told.iter().any(|other| other.is_same_mistake(&problem)) {
+        told.push(problem);
+    }
 }

@@ -4,6 +4,7 @@ use std::collections::{HashMap, HashSet};
 use std::sync::atomic::{AtomicU64, AtomicUsize, Ordering};
 use std::sync::{Arc, Mutex, PoisonError};
 
+use super::blame::placed;
 use super::context::NodeContext;
 use super::definitions::Definitions;
 use super::environment::{DEFAULT_MEMBERS, DEFAULT_SEED, Environment};
@@ -15,9 +16,8 @@ use super::node::{CallNode, Node, NodeKind};
 use super::prints::Names;
 use super::resolve::{SETTINGS, SIZE_LIMIT};
 use super::show::Progress;
-use crate::base::{Blame, Cancellation, Diagnostic, Fault, INTERRUPTED, Span};
-use crate::catalogue::{self, Body, Call, Given, Path, ReadsClock, Stop, What, check_arguments, nearest};
-use crate::language::{Parameter, Presence};
+use crate::base::{Cancellation, Diagnostic, Fault, INTERRUPTED, Span};
+use crate::catalogue::{self, Body, Call, Path, ReadsClock, Stop, check_arguments, nearest};
 use crate::value::{Quantity, Shape, Unit, Value};
 
 /// A value with the notes made on the way to it.
@@ -188,7 +188,7 @@ impl Evaluator<'_> {
             NodeKind::Call(call) => {
                 let context = NodeContext::new(self, node, call, environment, Path::Nominal);
                 let view = Call::new(call.entry.signature.parameters, &call.given, &context);
-                check_arguments(&view)
+                check_arguments(&view, call.entry.sign())
                     .and_then(|()| (call.entry.shape)(&view))
                     .map_err(|stop| placed(stop, node, call))
             }
@@ -389,55 +389,6 @@ impl IntoStop for Diagnostic {
     fn into_stop(self) -> Stop {
         Stop::Placed(Box::new(self))
     }
-}
-
-/// Give a fault of a call its place: the argument that it blames, else the call.
-fn placed(stop: Stop, node: &Node, call: &CallNode) -> Stop {
-    let fault = match stop {
-        Stop::Placed(_) => return stop,
-        Stop::Fault(fault) => fault,
-    };
-    let parameters = call.entry.signature.parameters;
-    let place = match &fault.blame {
-        Blame::Call => None,
-        Blame::Argument(name) => blamed(parameters, &call.given, &call.slots, name),
-        Blame::Item(number) => call
-            .given
-            .iter()
-            .filter(|given| {
-                let parameter = parameters.get(given.parameter);
-                parameter.is_some_and(|parameter| matches!(parameter.presence, Presence::Repeated { .. }))
-            })
-            .nth(*number)
-            .map(|given| span_of(given, &call.slots)),
-    };
-    let span = place.unwrap_or(node.span);
-    Stop::Placed(Box::new(fault.at(span)))
-}
-
-/// Where an argument stands: where its value does, which for a parameter of a function is the caller's text.
-fn span_of(given: &Given, slots: &[Arc<Node>]) -> Span {
-    match &given.what {
-        What::Value(slot) => slots.get(*slot).map_or(given.span, |node| node.span),
-        What::Choice { .. } | What::Groups(_) | What::Months { .. } => given.span,
-    }
-}
-
-/// The place of the argument of a parameter, or of a parameter of a choice inside.
-fn blamed(
-    parameters: &'static [Parameter],
-    given: &[Given],
-    slots: &[Arc<Node>],
-    name: &str,
-) -> Option<Span> {
-    given.iter().find_map(|given| {
-        let parameter = parameters.get(given.parameter)?;
-        if parameter.name == name {
-            return Some(span_of(given, slots));
-        }
-        let What::Choice { choice, given } = &given.what else { return None };
-        blamed(parameter.choices.get(*choice)?.parameters, given, slots, name)
-    })
 }
 
 fn limited(shape: Shape, span: Span) -> Result<Shape, Stop> {

@@ -8,6 +8,8 @@
     reason = "where one kind of node or value is looked for, all others are none, those to come included"
 )]
 
+mod blame;
+mod bodies;
 mod cell;
 mod completion;
 mod context;
@@ -26,6 +28,7 @@ mod readings;
 mod resolve;
 mod settings;
 mod show;
+mod slips;
 
 pub use cell::{CellReply, Session};
 pub use completion::{Completion, CompletionKind, Completions, InForce, Inspection, Subject};

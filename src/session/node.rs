@@ -1,6 +1,6 @@
 use std::sync::Arc;
 
-use crate::base::Span;
+use crate::base::{Mark, Span};
 use crate::catalogue::{Entry, Given};
 use crate::value::Value;
 
@@ -16,6 +16,29 @@ pub(super) struct Node {
     pub(super) size: usize,
     /// How many levels it has.
     pub(super) depth: usize,
+    /// The call of a function of the user's that it was put in for.
+    pub(super) called: Option<Arc<Called>>,
+}
+
+/// Where a function of the user's is called, and the call that that one was put in for.
+#[derive(Debug)]
+pub(super) struct Called {
+    pub(super) span: Span,
+    pub(super) outer: Option<Arc<Called>>,
+}
+
+/// The most calls that are told with a mistake.
+const CALLS_TOLD: usize = 4;
+
+impl Called {
+    /// Marks for a mistake inside the function: this call and those around it.
+    pub(super) fn marks(called: Option<&Arc<Called>>) -> Vec<Mark> {
+        let calls = std::iter::successors(called, |called| called.outer.as_ref());
+        calls
+            .take(CALLS_TOLD)
+            .map(|called| Mark { span: called.span, label: "called here".to_owned() })
+            .collect()
+    }
 }
 
 pub(super) enum NodeKind {
@@ -62,7 +85,17 @@ impl Node {
         let parts = children(&kind);
         let size = parts.iter().map(|part| part.size).fold(1, usize::saturating_add);
         let depth = parts.iter().map(|part| part.depth).max().unwrap_or(0) + 1;
-        Arc::new(Self { kind, span, label, size, depth })
+        Arc::new(Self { kind, span, label, size, depth, called: None })
+    }
+
+    /// The same, put in for a call.
+    pub(super) fn for_call(self: Arc<Self>, called: Option<&Arc<Called>>) -> Arc<Self> {
+        let Some(called) = called else { return self };
+        let mut node = self;
+        if let Some(own) = Arc::get_mut(&mut node) {
+            own.called = Some(called.clone());
+        }
+        node
     }
 
     /// The nodes directly beneath.
@@ -125,7 +158,7 @@ impl Node {
                 NodeKind::ForEach { body: new_body, variable: *inner, list: new_list }
             }
         };
-        Node::new(kind, self.span, self.label.clone())
+        Node::new(kind, self.span, self.label.clone()).for_call(self.called.as_ref())
     }
 }
 

@@ -140,13 +140,33 @@ impl Session {
             };
             cells.iter().map(stand).collect()
         });
-        standing.unwrap_or_else(|| {
+        standing.map(|standing| self.each_told_once(cells, standing)).unwrap_or_else(|| {
             let problem = internal("these cells could not be checked").at(Span::new(SourceId(0), 0, 0));
             cells
                 .iter()
                 .map(|_| Standing { problems: vec![problem.clone()], ..Standing::default() })
                 .collect()
         })
+    }
+
+    /// What is wrong in one cell is told there, and not again with all that depends on it.
+    fn each_told_once(&self, cells: &[&str], mut standing: Vec<Standing>) -> Vec<Standing> {
+        let homes: Vec<Option<SourceId>> = cells.iter().map(|cell| self.newest_source(cell)).collect();
+        let told: Vec<Vec<Diagnostic>> = standing
+            .iter()
+            .map(|cell| cell.problems.iter().chain(&cell.waiting).cloned().collect())
+            .collect();
+        for (place, cell) in standing.iter_mut().enumerate() {
+            let elsewhere = |problem: &Diagnostic| {
+                let home = homes.iter().position(|home| *home == Some(problem.primary.span.source));
+                home.filter(|home| *home != place)
+                    .and_then(|home| told.get(home))
+                    .is_some_and(|told| told.iter().any(|other| other.is_same_mistake(problem)))
+            };
+            cell.problems.retain(|problem| !elsewhere(problem));
+            cell.waiting.retain(|problem| !elsewhere(problem));
+        }
+        standing
     }
 
     /// Whether a definition from outside wins over one that a cell makes for this key: says so.

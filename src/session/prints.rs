@@ -197,7 +197,7 @@ fn constant(parts: &mut Parts, value: &Value) {
             values.data().iter().for_each(|number| parts.float(*number));
             parts.text(&measure.unit.to_string());
         }
-        Value::Instant(Instant { years, era, width_years }) => {
+        Value::Instant(Instant { years, era, width_years, .. }) => {
             years.data().iter().for_each(|number| parts.float(*number));
             parts.text(era.symbol());
             parts.float(*width_years);

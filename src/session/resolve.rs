@@ -7,7 +7,8 @@ use std::sync::Arc;
 use sha2::{Digest, Sha256};
 
 use super::definitions::Function;
-use super::node::{CallNode, Node, NodeKind};
+use super::node::{CallNode, Called, Node, NodeKind};
+use super::slips::{unit_fault, wrong_choice};
 use crate::base::{Diagnostic, Fault, SourceId, Span};
 use crate::catalogue::{self, Entry, Given, What};
 use crate::language::{
@@ -36,6 +37,8 @@ struct Scope {
     calls: u32,
     locals: Vec<(String, Arc<Node>)>,
     functions: Vec<String>,
+    /// The call that the body here is put in for.
+    called: Option<Arc<Called>>,
 }
 
 pub(super) struct Resolver<'a> {
@@ -57,10 +60,30 @@ pub(super) fn resolve(
         Some(name) => place.update(format!("definition\0{name}\0")),
         None => place.update(format!("shown\0{}\0", canonical(expression))),
     }
-    let mut scope = Scope { place, random: 0, calls: 0, locals: Vec::new(), functions: Vec::new() };
+    let mut scope = Scope::new(place);
     let budget = room.min(SIZE_LIMIT);
     let mut resolver = Resolver { functions, budget, loops: 0 };
     let node = resolver.expression(expression, &mut scope);
+    (node, budget - resolver.budget)
+}
+
+/// Resolve the body of a function of the user's before it is called: its parameters are variables that nothing binds.
+pub(super) fn resolve_body(
+    functions: &dyn Functions,
+    name: &str,
+    function: &Function,
+    room: usize,
+) -> (Result<Arc<Node>, Diagnostic>, usize) {
+    let mut scope = Scope::new(Sha256::new());
+    scope.functions.push(name.to_owned());
+    // Loops count from one.
+    for (parameter, number) in function.parameters.iter().zip((0..u32::MAX).rev()) {
+        let open = Node::new(NodeKind::Variable(number), function.name_span, Arc::from(parameter.as_str()));
+        scope.locals.push((parameter.clone(), open));
+    }
+    let budget = room.min(SIZE_LIMIT);
+    let mut resolver = Resolver { functions, budget, loops: 0 };
+    let node = resolver.expression(&function.body, &mut scope);
     (node, budget - resolver.budget)
 }
 
@@ -177,7 +200,8 @@ impl Resolver<'_> {
             .map(|slot| Given { parameter: slot, label: None, what: What::Value(slot), span })
             .collect();
         let variable = entry.random.then(|| scope.next_variable());
-        self.sized(Node::new(NodeKind::Call(CallNode { entry, given, slots, variable }), span, label))
+        let call = NodeKind::Call(CallNode { entry, given, slots, variable });
+        self.sized(Node::new(call, span, label).for_call(scope.called.as_ref()))
     }
 
     fn user_call(
@@ -241,10 +265,19 @@ impl Resolver<'_> {
         scope.calls += 1;
         let mut functions = scope.functions.clone();
         functions.push(name.to_owned());
-        let mut inner = Scope { place, random: 0, calls: 0, locals, functions };
+        let called = Some(Arc::new(Called { span, outer: scope.called.clone() }));
+        let mut inner = Scope { locals, functions, called, ..Scope::new(place) };
         // What grows too large is told at the outermost call.
-        self.expression(&function.body, &mut inner)
-            .map_err(|problem| if problem.code == TOO_LARGE { too_large(span) } else { problem })
+        self.expression(&function.body, &mut inner).map_err(|mut problem| {
+            if problem.code == TOO_LARGE {
+                return too_large(span);
+            }
+            // Calls inside have told the whole way already.
+            if problem.secondary.is_empty() {
+                problem.secondary = Called::marks(inner.called.as_ref());
+            }
+            problem
+        })
     }
 
     fn entry_call(
@@ -258,7 +291,8 @@ impl Resolver<'_> {
         let mut slots = Vec::new();
         let variable = entry.random.then(|| scope.next_variable());
         let given = self.bind(entry.name, entry.signature.parameters, arguments, span, &mut slots, scope)?;
-        Ok(Node::new(NodeKind::Call(CallNode { entry, given, slots, variable }), span, label))
+        let call = NodeKind::Call(CallNode { entry, given, slots, variable });
+        Ok(Node::new(call, span, label).for_call(scope.called.as_ref()))
     }
 
     /// Put arguments to parameters, of an entry or of a choice.
@@ -423,12 +457,17 @@ impl Resolver<'_> {
         move_to(&mut expression, span);
         let mut place = Sha256::new();
         place.update(format!("default\0{owner}\0{}\0", parameter.name));
-        let mut scope = Scope { place, random: 0, calls: 0, locals: Vec::new(), functions: Vec::new() };
+        let mut scope = Scope::new(place);
         self.what(parameter, &expression, slots, &mut scope)
     }
 }
 
 impl Scope {
+    /// A scope at a place, without local names and outside all functions.
+    fn new(place: Sha256) -> Self {
+        Self { place, random: 0, calls: 0, locals: Vec::new(), functions: Vec::new(), called: None }
+    }
+
     /// The id of the next random variable of this definition or call.
     fn next_variable(&mut self) -> [u8; 32] {
         let mut hash = self.place.clone();
@@ -444,16 +483,7 @@ fn is_word(name: &str) -> bool {
         && !matches!(name, "in" | "by" | "negate")
 }
 
-fn wrong_choice(parameter: &Parameter, word: &str) -> Fault {
-    let words: Vec<&str> = parameter.choices.iter().map(|choice| choice.name).collect();
-    let fault = Fault::new("unknown-choice", format!("`{}` cannot be `{word}`", parameter.name));
-    match catalogue::nearest(word, words.iter().copied()) {
-        Some(near) => fault.help(format!("did you mean `{near}`? It takes {}", words.join(", "))),
-        None => fault.help(format!("it takes {}", words.join(", "))),
-    }
-}
-
-const TOO_LARGE: &str = "too-large";
+pub(super) const TOO_LARGE: &str = "too-large";
 
 fn too_large(span: Span) -> Diagnostic {
     Fault::new(TOO_LARGE, "this expression grows too large when its functions are put in")
@@ -485,40 +515,11 @@ fn number(value: f64, unit: Option<&UnitText>, span: Span) -> Result<Value, Diag
     if let Some(era) = Era::parse(&written.text) {
         return Instant::new(value, era).map(Value::Instant).map_err(|fault| fault.at(span));
     }
-    let unit = Unit::parse(&written.text)
-        .map_err(|fault| unit_fault(&fault, written, Some(value)).at(written.span))?;
+    // The unit of `800..0 ka` is that of both, and stands after one of them.
+    let number = Some(value).filter(|_| span.end == written.span.end);
+    let unit =
+        Unit::parse(&written.text).map_err(|fault| unit_fault(&fault, written, number).at(written.span))?;
     Ok(Value::Quantity(Quantity { values: Block::single(value), measure: Measure::of(unit) }))
-}
-
-fn unit_fault(fault: &crate::value::UnitFault, written: &UnitText, value: Option<f64>) -> Fault {
-    if written.text == "BP" {
-        return Fault::new("plain-bp", "a plain BP says nothing about calibration")
-            .help("for calendar years before 1950 write `cal BP`; an uncalibrated radiocarbon age is no calendar age, and must be calibrated first");
-    }
-    let message = if fault.word == written.text {
-        format!("`{}` is no unit", fault.word)
-    } else {
-        format!("`{}` in `{}` is no unit", fault.word, written.text)
-    };
-    let eras: Vec<&str> = Era::ALL.iter().map(|era| era.symbol()).collect();
-    let near_era =
-        eras.iter().find(|era| era.eq_ignore_ascii_case(&written.text)).map(|era| (*era).to_owned());
-    let near = near_era
-        .or_else(|| fault.near.clone())
-        .map(|near| format!("did you mean `{near}`? "))
-        .unwrap_or_default();
-    if let Some(base) = written.text.strip_suffix('m').filter(|base| Unit::parse(base).is_ok()) {
-        // `3 Wm-2`: the lexer stops before the minus sign.
-        return Fault::new("unknown-unit", message)
-            .help(format!("exponents below the line stand after a slash: `{base}/m2`"));
-    }
-    let multiply = match value {
-        Some(value) if written.text.chars().all(|letter| letter.is_alphanumeric() || letter == '_') => {
-            format!("to multiply, write `{value} * {}`", written.text)
-        }
-        _ => "a unit is written such as W/m2, W*yr/m2/K, ppm, kyr".to_owned(),
-    };
-    Fault::new("unknown-unit", message).help(near + &multiply)
 }
 
 fn target_unit(unit: &UnitText) -> Result<Arc<Node>, Diagnostic> {

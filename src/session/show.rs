@@ -170,7 +170,12 @@ fn shown(nominal: &Value, members: &[&Value], names: &[Arc<str>]) -> Result<Show
             let blocks = blocks(members, &|value| {
                 if let Value::Instant(instant) = value { Some(&instant.years) } else { None }
             });
-            Shown::Instant { era: instant.era, nominal: instant.year(), spread: spread(&blocks) }
+            Shown::Instant {
+                era: instant.era,
+                is_date: instant.is_date,
+                nominal: instant.year(),
+                spread: spread(&blocks),
+            }
         }
         Value::Series(series) => {
             let blocks = blocks(members, &|value| {

@@ -58,13 +58,18 @@ impl Conversation {
     }
 
     /// The cell that the next input will be.
-    pub(super) fn next_cell(&self) -> String {
-        format!("in {}", self.inputs.len() + 1)
+    fn next_cell(&self) -> String {
+        format!("input {}", self.inputs.len() + 1)
     }
 
-    /// How wide charts are; none where none are drawn.
-    pub(super) fn set_chart_columns(&mut self, columns: Option<usize>) {
-        self.report.chart_columns = columns;
+    /// What stands before the next input.
+    pub(super) fn prompt(&self) -> String {
+        format!("in {}: ", self.inputs.len() + 1)
+    }
+
+    /// How wide the terminal is.
+    pub(super) fn set_columns(&mut self, columns: usize) {
+        self.report.columns = Some(columns);
     }
 
     pub(super) fn is_over(&self) -> bool {

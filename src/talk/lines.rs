@@ -10,6 +10,8 @@ use crate::language::parse;
 /// Run the lines of a reader until it ends.
 pub(super) fn talk(conversation: &mut Conversation, reader: &mut dyn BufRead) -> std::io::Result<()> {
     let mut pending = String::new();
+    // Comments and empty lines after what is pending: they belong to what comes next.
+    let mut between = String::new();
     let mut number = 0usize;
     let mut bytes = Vec::new();
     while !conversation.is_over() {
@@ -24,19 +26,27 @@ pub(super) fn talk(conversation: &mut Conversation, reader: &mut dyn BufRead) ->
             continue;
         };
         let line = line.trim_end_matches(['\n', '\r']);
-        // What is complete waits for one line more, since that may begin with `|>`.
-        if !pending.is_empty() && !is_incomplete(&pending) && begins_anew(line) {
+        let blank = line.trim().is_empty() || line.trim_start().starts_with('#');
+        let complete = !pending.is_empty() && !is_incomplete(&pending);
+        // What is complete waits for the next line that says something, since that may begin with `|>`.
+        if blank && (complete || pending.is_empty()) {
+            between += line;
+            between.push('\n');
+            continue;
+        }
+        if complete && !line.trim_start().starts_with("|>") {
             print(&conversation.take(&pending));
             pending.clear();
         }
         if line.starts_with(':') && pending.is_empty() {
+            between.clear();
             print(&conversation.take(line));
             continue;
         }
-        if !(pending.is_empty() && line.trim().is_empty()) {
-            pending += line;
-            pending.push('\n');
-        }
+        let comments = std::mem::take(&mut between);
+        pending += if pending.is_empty() { comments.trim_start_matches('\n') } else { &comments };
+        pending += line;
+        pending.push('\n');
     }
     if !conversation.is_over() {
         print(&conversation.take(&pending));
@@ -44,16 +54,12 @@ pub(super) fn talk(conversation: &mut Conversation, reader: &mut dyn BufRead) ->
     Ok(())
 }
 
-/// Whether a line begins a statement of its own.
-fn begins_anew(line: &str) -> bool {
-    let line = line.trim_start();
-    !(line.is_empty() || line.starts_with('#') || line.starts_with("|>"))
-}
-
 /// Whether further lines can make a text right: what is open at the end of a line can be closed on the next only inside
 /// brackets.
 pub(super) fn is_incomplete(text: &str) -> bool {
-    parse(&format!("{text}\n"), SourceId::default()).is_err_and(|error| error.incomplete)
+    // What begins with `|>` goes on from the input before, which is complete.
+    let before = if text.trim_start().starts_with("|>") { "x" } else { "" };
+    parse(&format!("{before}{text}\n"), SourceId::default()).is_err_and(|error| error.incomplete)
 }
 
 #[cfg(test)]
@@ -67,6 +73,8 @@ mod tests {
             ("[1, 2", true),
             ("x = (1 +", true),
             ("scale(x, # why", true),
+            ("|> scale(", true),
+            ("|> scale(2)", false),
             ("1 +", false),
             ("x |>", false),
             ("load(\"a", false),

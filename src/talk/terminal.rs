@@ -18,8 +18,8 @@ use super::lines::is_incomplete;
 use super::print;
 use super::progress::Progress;
 
-/// Charts are at least so wide, and at most; a narrower terminal breaks their lines.
-const CHART_COLUMNS: (usize, usize) = (60, 100);
+/// Charts and texts are at least so wide, and at most; a narrower terminal breaks their lines.
+const COLUMNS: (usize, usize) = (60, 100);
 
 /// Read inputs until the person at the terminal ends the session.
 pub(super) fn talk(conversation: Conversation, folder: &Path, colour: bool) -> io::Result<()> {
@@ -39,18 +39,18 @@ pub(super) fn talk(conversation: Conversation, folder: &Path, colour: bool) -> i
         let _ = editor.load_history(file);
     }
     print(&format!(
-        "rhythmite {}, reading files in {}; `:help` says more, Ctrl-D ends\n\n",
+        "rhythmite {}, reading files in {}\n`:help` says more, Tab completes, Ctrl-D ends\n\n",
         env!("CARGO_PKG_VERSION"),
-        folder.display()
+        folder.canonicalize().unwrap_or_else(|_| folder.to_owned()).display()
     ));
     loop {
-        let columns = editor.dimensions().map_or(CHART_COLUMNS.0, |(columns, _)| usize::from(columns));
+        let columns = editor.dimensions().map_or(COLUMNS.0, |(columns, _)| usize::from(columns));
         let Some(desk) = editor.helper_mut() else { return Ok(()) };
         if desk.conversation.is_over() {
             return Ok(());
         }
-        desk.conversation.set_chart_columns(Some(columns.clamp(CHART_COLUMNS.0, CHART_COLUMNS.1)));
-        let prompt = format!("{}: ", desk.conversation.next_cell());
+        desk.conversation.set_columns(columns.clamp(COLUMNS.0, COLUMNS.1));
+        let prompt = desk.conversation.prompt();
         let text = match editor.readline(&prompt) {
             Ok(text) => text,
             Err(ReadlineError::Interrupted) => continue,

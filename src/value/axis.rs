@@ -1,11 +1,8 @@
 use std::fmt;
 use std::ops::Range;
 
-use super::era::{Era, Instant, decimal_year};
+use super::era::{Era, Instant, date_label, is_day};
 use crate::base::Fault;
-
-/// The most steps a clock may have: enough for days over fifty thousand years, few enough to fit in memory.
-pub const STEPS_LIMIT: usize = 20_000_000;
 
 /// What the numbers of an axis stand for.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
@@ -139,7 +136,7 @@ impl Axis {
                 return format!("{year}-{:02}", months.round().max(0.0) + 1.0);
             }
             if step < 0.02 {
-                return super::era::date_label(start);
+                return date_label(start);
             }
         }
         self.era.format(tidy(start))
@@ -210,170 +207,16 @@ impl Span {
 
 impl fmt::Display for Span {
     fn fmt(&self, formatter: &mut fmt::Formatter<'_>) -> fmt::Result {
+        if self.era == Era::Ce && is_day(self.end - self.last) {
+            return write!(formatter, "{}..{}", date_label(self.start), date_label(self.last));
+        }
         let first = self.era.format(tidy(self.start));
         let last = self.era.format(tidy(self.last));
-        let short = first.strip_suffix(self.era.symbol()).filter(|_| last.ends_with(self.era.symbol()));
-        write!(formatter, "{}..{last}", short.map_or(first.as_str(), str::trim_end))
+        // The era is said once where it is one: `50 BCE..20 CE`, but `50..20 BCE`.
+        let (number, era) = first.split_once(' ').unwrap_or((&first, ""));
+        let short = last.split_once(' ').is_some_and(|(_, other)| other == era);
+        write!(formatter, "{}..{last}", if short { number } else { &first })
     }
-}
-
-/// The axis on which formulas are evaluated, and onto which data are brought.
-#[derive(Clone, Debug, PartialEq)]
-pub struct Clock {
-    /// Its steps or instants.
-    pub axis: std::sync::Arc<Axis>,
-    /// The length of one step, in years.
-    pub step_years: f64,
-}
-
-impl Clock {
-    /// Divide a span: a calendar span into steps, an age span into a row of instants with both ends in.
-    ///
-    /// `whole_days` says that the step is so many days of the calendar, whose years have 365 or 366 of them.
-    ///
-    /// # Errors
-    /// `clock-step` for a step that is zero, negative or does not divide the span; `clock-size` for more than
-    /// [`STEPS_LIMIT`] steps.
-    pub fn new(
-        span: &Span,
-        step_years: f64,
-        whole_days: Option<i64>,
-        kind: Option<AxisKind>,
-    ) -> Result<Self, Fault> {
-        if !(step_years.is_finite() && step_years > 0.0) {
-            return Err(Fault::new("clock-step", "the step of a clock must be longer than nothing")
-                .blame("step")
-                .help("write a positive duration, such as `by 1 yr`"));
-        }
-        let total = span.end - span.start;
-        let count = total / step_years;
-        if count > STEPS_LIMIT as f64 {
-            return Err(Fault::new(
-                "clock-size",
-                format!("this clock would have {count:.3e} steps; the most is {STEPS_LIMIT}"),
-            )
-            .help("take a longer step, or a shorter span"));
-        }
-        let default = if span.era.is_age() { AxisKind::Instants } else { AxisKind::Steps };
-        let kind = kind.unwrap_or(default);
-        if let (Some(days), AxisKind::Steps, false) = (whole_days, kind, span.era.is_age()) {
-            return Self::of_days(span, days, step_years);
-        }
-        let whole = count.round();
-        if whole < 1.0 || (count - whole).abs() > 1e-6 * whole.max(1.0).sqrt() {
-            return Err(Self::not_dividing(span, total, step_years, count));
-        }
-        let number = whole as usize;
-        // One division for each step, so that whole years are whole numbers in every clock.
-        let time = |step: usize| span.start + total * step as f64 / whole;
-        let axis = match kind {
-            AxisKind::Steps => {
-                Axis::steps((0..number).map(time).collect(), (1..=number).map(time).collect(), span.era)
-            }
-            AxisKind::Instants => {
-                let last = if span.era.is_age() { number + 1 } else { number };
-                Axis::instants((0..last).map(time).collect(), span.era)
-            }
-        };
-        Ok(Self { axis: axis.into(), step_years: total / whole })
-    }
-
-    fn of_days(span: &Span, days: i64, step_years: f64) -> Result<Self, Fault> {
-        let year = span.start.floor();
-        let length = if (decimal_year(year as i64, 365) - year).fract() > 0.0 { 366.0 } else { 365.0 };
-        let first = ((span.start - year) * length).round() as i64;
-        let mut bounds = vec![decimal_year(year as i64, first)];
-        let mut day = first;
-        while bounds.last().is_some_and(|last| *last < span.end - 1e-6) {
-            day += days;
-            bounds.push(decimal_year(year as i64, day));
-        }
-        if bounds.last().is_none_or(|last| (last - span.end).abs() > 1e-6) {
-            return Err(Self::not_dividing(
-                span,
-                span.end - span.start,
-                step_years,
-                bounds.len() as f64 - 0.5,
-            ));
-        }
-        let ends = bounds.iter().skip(1).copied().collect::<Vec<_>>();
-        bounds.pop();
-        Ok(Self { axis: Axis::steps(bounds, ends, span.era).into(), step_years })
-    }
-
-    fn not_dividing(span: &Span, total: f64, step_years: f64, count: f64) -> Fault {
-        let unit = span.era.years_per_unit();
-        let whole = (count + 1e-9).floor().max(1.0);
-        let fault = Fault::new(
-            "clock-step",
-            format!(
-                "a step of {} does not divide {span}, which is {} long",
-                duration_words(step_years),
-                duration_words(total)
-            ),
-        )
-        .blame("step");
-        let end = if span.era.is_age() {
-            span.end - whole * step_years
-        } else {
-            span.start + whole * step_years - unit
-        };
-        let other = if span.era.is_age() {
-            format!("{}..{}", trim(span.era.of_year(end)), span.era.format(span.end))
-        } else {
-            format!("{}..{}", trim(span.start), span.era.format(end))
-        };
-        fault.help(format!("write {other}, which has {whole} of them, or take another step"))
-    }
-
-    /// The same clock, moved by `years`.
-    #[must_use]
-    pub fn shifted(&self, years: f64) -> Self {
-        Self { axis: self.axis.shifted(years).into(), step_years: self.step_years }
-    }
-
-    /// The same clock, begun `steps` steps earlier.
-    #[must_use]
-    pub fn extended_back(&self, steps: usize) -> Self {
-        let Some((start, _)) = self.axis.bounds() else { return self.clone() };
-        let earlier = |index: usize| start - self.step_years * (steps - index) as f64;
-        let mut starts: Vec<f64> = (0..steps).map(earlier).collect();
-        let axis = match self.axis.kind {
-            AxisKind::Steps => {
-                let mut ends: Vec<f64> = (1..=steps).map(earlier).collect();
-                starts.extend(self.axis.starts());
-                ends.extend(self.axis.ends());
-                Axis::steps(starts, ends, self.axis.era)
-            }
-            AxisKind::Instants => {
-                starts.extend(self.axis.starts());
-                Axis::instants(starts, self.axis.era)
-            }
-        };
-        Self { axis: axis.into(), step_years: self.step_years }
-    }
-}
-
-fn trim(number: f64) -> String {
-    let text = format!("{number:.3}");
-    text.trim_end_matches('0').trim_end_matches('.').to_owned()
-}
-
-/// A duration in the unit a person would say it in.
-pub(crate) fn duration_words(years: f64) -> String {
-    let size = years.abs();
-    let (number, unit) = if size >= 1e6 {
-        (years / 1e6, "Myr")
-    } else if size >= 2e3 {
-        (years / 1e3, "kyr")
-    } else if size >= 1.0 {
-        (years, "yr")
-    } else if size >= 1.0 / 12.5 {
-        (years * 12.0, "month")
-    } else {
-        (years * 365.2425, "day")
-    };
-    format!("{} {unit}", trim(number))
 }
 
 #[cfg(test)]
@@ -385,59 +228,14 @@ mod tests {
     }
 
     #[test]
-    fn calendar_years_have_both_ends_in_and_are_steps() {
-        let clock = Clock::new(&span(1750.0, 2020.0, Era::Ce), 1.0, None, None).unwrap();
-        assert_eq!(clock.axis.len(), 271);
-        assert_eq!(clock.axis.kind, AxisKind::Steps);
-        assert_eq!(clock.axis.bounds(), Some((1750.0, 2021.0)));
-    }
-
-    #[test]
-    fn months_end_on_whole_years() {
-        let clock = Clock::new(&span(1850.0, 2020.0, Era::Ce), 1.0 / 12.0, None, None).unwrap();
-        assert_eq!(clock.axis.len(), 171 * 12);
-        assert!((clock.axis.starts()[12 * 100] - 1950.0).abs() < f64::EPSILON);
-    }
-
-    #[test]
-    fn ages_are_instants_with_both_ends_in_either_way_round() {
-        let down = Clock::new(&span(800.0, 0.0, Era::Ka), 1000.0, None, None).unwrap();
-        let up = Clock::new(&span(0.0, 800.0, Era::Ka), 1000.0, None, None).unwrap();
-        assert_eq!(down, up);
-        assert_eq!((down.axis.len(), down.axis.kind), (801, AxisKind::Instants));
-    }
-
-    #[test]
-    fn days_follow_the_calendar() {
-        let first = crate::value::instant_of_date(2016, 1, 1).unwrap();
-        let last = crate::value::instant_of_date(2016, 12, 31).unwrap();
-        let year = Span::between(&first, &last).unwrap();
-        let clock = Clock::new(&year, 1.0 / 365.2425, Some(1), None).unwrap();
-        assert_eq!(clock.axis.len(), 366);
-    }
-
-    #[test]
-    fn a_step_that_does_not_divide_offers_a_span_that_does() {
-        let fault = Clock::new(&span(1750.0, 2020.0, Era::Ce), 10.0, None, None).unwrap_err();
-        assert_eq!(fault.code, "clock-step");
-        assert_eq!(
-            fault.help.as_deref(),
-            Some("write 1750..2019 CE, which has 27 of them, or take another step")
-        );
-    }
-
-    #[test]
-    fn a_clock_begun_earlier_keeps_its_own_steps() {
-        let clock = Clock::new(&span(1850.0, 1859.0, Era::Ce), 1.0, None, None).unwrap();
-        let longer = clock.extended_back(3);
-        assert_eq!(longer.axis.len(), 13);
-        assert_eq!(longer.axis.starts()[..4], [1847.0, 1848.0, 1849.0, 1850.0]);
-        assert!((longer.axis.ends()[2] - 1850.0).abs() < f64::EPSILON);
-    }
-
-    #[test]
-    fn a_window_takes_whole_steps() {
-        let clock = Clock::new(&span(1850.0, 2020.0, Era::Ce), 1.0, None, None).unwrap();
-        assert_eq!(clock.axis.inside(&span(1850.0, 1900.0, Era::Ce)).len(), 51);
+    fn a_span_names_its_era_once_where_it_is_one() {
+        assert_eq!(span(44.0, 1.0, Era::Bce).to_string(), "44..1 BCE");
+        let across = |first: f64, last: f64| {
+            Span::between(
+                &Instant::at(crate::value::Block::single(first), Era::Ce, 1.0),
+                &Instant::new(last, Era::Ce).unwrap(),
+            )
+        };
+        assert_eq!(across(-99.0, 20.0).unwrap().to_string(), "100 BCE..20 CE");
     }
 }

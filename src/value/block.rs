@@ -1,5 +1,7 @@
 use std::sync::Arc;
 
+use crate::base::{Cancellation, Cancelled};
+
 /// Members × columns of numbers: row `m` holds what member `m` of the block in hand says.
 ///
 /// A certain value has one row, whatever the block; rows are spread when certain and uncertain values meet.
@@ -116,6 +118,25 @@ impl Block {
         Self::new(self.rows, columns, data)
     }
 
+    /// As [`Self::map_rows`], for a function that takes long enough to be interrupted.
+    ///
+    /// # Errors
+    /// What the function gives for the first row where it stops; [`Cancelled`] between two rows.
+    pub fn map_rows_until(
+        &self,
+        columns: usize,
+        cancellation: &Cancellation,
+        mut function: impl FnMut(&[f64], &mut [f64]) -> Result<(), Cancelled>,
+    ) -> Result<Self, Cancelled> {
+        let mut stopped = Ok(());
+        let out = self.map_rows(columns, |from, to| {
+            if stopped.is_ok() {
+                stopped = cancellation.check().and_then(|()| function(from, to));
+            }
+        });
+        stopped.map(|()| out)
+    }
+
     /// The columns `range`, for all rows.
     #[must_use]
     pub fn columns_in(&self, range: std::ops::Range<usize>) -> Self {
@@ -131,6 +152,25 @@ impl Block {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn rows_that_are_interrupted_are_not_computed() {
+        let block = Block::new(3, 1, vec![1.0, 2.0, 3.0]);
+        let cancellation = Cancellation::new();
+        let mut computed = 0;
+        let stopped = block.map_rows_until(1, &cancellation, |_, _| {
+            computed += 1;
+            cancellation.cancel();
+            Ok(())
+        });
+        assert!(stopped.is_err() && computed == 1);
+        cancellation.reset();
+        let doubled = block.map_rows_until(1, &cancellation, |from, to| {
+            to[0] = 2.0 * from[0];
+            Ok(())
+        });
+        assert_eq!(doubled.unwrap().data(), [2.0, 4.0, 6.0]);
+    }
 
     #[test]
     fn a_certain_row_meets_every_member() {

@@ -117,6 +117,8 @@ pub struct Instant {
     /// How many years the literal covers as the end of a span: one for `1850 CE`, a day for a date, none for
     /// an age.
     pub width_years: f64,
+    /// Whether it came as a date of the calendar, and is shown as one.
+    pub is_date: bool,
 }
 
 impl Instant {
@@ -143,9 +145,9 @@ impl Instant {
         Ok(Self::at(Block::single(era.to_year(number)), era, if whole { 1.0 } else { 0.0 }))
     }
 
-    /// An instant from decimal years.
+    /// An instant from decimal years; one that covers a day of the calendar is a date.
     pub fn at(years: Block, era: Era, width_years: f64) -> Self {
-        Self { years, era, width_years }
+        Self { years, era, width_years, is_date: era == Era::Ce && is_day(width_years) }
     }
 
     /// The decimal year of the first row.
@@ -156,8 +158,29 @@ impl Instant {
 
 impl fmt::Display for Instant {
     fn fmt(&self, formatter: &mut fmt::Formatter<'_>) -> fmt::Result {
+        if self.is_date {
+            return formatter.write_str(&date_label(self.year()));
+        }
         formatter.write_str(&self.era.format(self.year()))
     }
+}
+
+/// Whether a length of time is a day, in a year of 365 or 366 of them.
+pub(super) fn is_day(years: f64) -> bool {
+    (years - 1.0 / 365.0).abs() < 1e-5 || (years - 1.0 / 366.0).abs() < 1e-5
+}
+
+/// Whether all times begin days of the calendar, as dates do. Whole, half and quarter years are no dates: they are
+/// written so as years.
+pub(crate) fn are_dates(years: &[f64]) -> bool {
+    let begins_a_day = |year: &f64| {
+        let whole = year.floor();
+        let length = if is_leap(whole as i64) { 366.0 } else { 365.0 };
+        let day = (year - whole) * length;
+        *year >= 1.0 && (day - day.round()).abs() < 2e-3
+    };
+    let part_of_a_year = |year: &f64| (year * 4.0 - (year * 4.0).round()).abs() < 1e-6;
+    years.iter().all(begins_a_day) && !years.iter().all(part_of_a_year)
 }
 
 /// Whether `year` is a leap year of the Gregorian calendar.
@@ -214,11 +237,11 @@ pub(crate) fn date_label(year: f64) -> String {
     let mut day = ((year - whole) * length).round().max(0.0) as u32;
     for (month, days) in month_lengths(whole as i64).into_iter().enumerate() {
         if day < days {
-            return format!("{whole}-{:02}-{:02}", month + 1, day + 1);
+            return format!("{whole:04}-{:02}-{:02}", month + 1, day + 1);
         }
         day -= days;
     }
-    format!("{}-01-01", whole + 1.0)
+    format!("{:04}-01-01", whole + 1.0)
 }
 
 #[cfg(test)]
@@ -240,6 +263,31 @@ mod tests {
     fn there_is_no_year_zero() {
         assert_eq!(Instant::new(0.0, Era::Ce).unwrap_err().code, "no-such-year");
         assert_eq!(Era::Ce.format(0.0), "1 BCE");
+    }
+
+    #[test]
+    fn what_came_as_a_date_is_shown_as_one() {
+        for (year, month, day, text) in [
+            (2015, 6, 15, "2015-06-15"),
+            (2016, 2, 29, "2016-02-29"),
+            (1999, 12, 31, "1999-12-31"),
+            (44, 3, 15, "0044-03-15"),
+        ] {
+            assert_eq!(instant_of_date(year, month, day).unwrap().to_string(), text);
+        }
+        assert_eq!(Instant::new(2015.5, Era::Ce).unwrap().to_string(), "2015.5 CE");
+        assert_eq!(Instant::new(2015.0, Era::Ce).unwrap().to_string(), "2015 CE");
+    }
+
+    #[test]
+    fn years_and_their_parts_are_no_dates() {
+        let date = |year, month, day| instant_of_date(year, month, day).unwrap().year();
+        assert!(are_dates(&[date(2015, 6, 15), date(2016, 1, 1)]));
+        assert!(!are_dates(&[2015.0, 2016.0]));
+        // The middle of 2016 is the beginning of a day, and nobody means that.
+        assert!(!are_dates(&[2016.5]));
+        assert!(!are_dates(&[date(2015, 6, 15), 2015.123]));
+        assert!(!are_dates(&[-43.0, -42.0]));
     }
 
     #[test]

@@ -1,7 +1,7 @@
 use std::sync::Arc;
 
 use super::axis::Axis;
-use super::era::Era;
+use super::era::{Era, are_dates, date_label};
 use super::measure::Measure;
 use super::table::{Cell, Column, Table};
 
@@ -42,8 +42,11 @@ impl Events {
 
     /// A row for each event.
     pub fn table(&self) -> Table {
+        let dates = self.era == Era::Ce && are_dates(&self.years);
         let mut columns = vec![if self.era.is_age() {
             Column::in_unit("age", self.era.symbol())
+        } else if dates {
+            Column::plain("date")
         } else {
             Column::plain("year CE")
         }];
@@ -59,7 +62,8 @@ impl Events {
                 .sizes
                 .as_ref()
                 .map(|sizes| Cell::number(sizes.values.get(index).copied().unwrap_or(f64::NAN)));
-            std::iter::once(Cell::number(shown(*year))).chain(name).chain(size).collect()
+            let time = if dates { Cell::Text(date_label(*year).into()) } else { Cell::number(shown(*year)) };
+            std::iter::once(time).chain(name).chain(size).collect()
         });
         Table { title: "events".to_owned(), rows: rows.collect(), columns, notes: Vec::new() }
     }

@@ -90,6 +90,8 @@ impl Measure {
             (Reading::Difference, Reading::Difference, _) => Reading::Difference,
         };
         let forcing = match (&self.forcing, &other.forcing) {
+            // The difference of two forcings is no change from what either began at.
+            (Some(mine), Some(theirs)) if subtract => Some(Forcing { reference: None, ..mine.with(theirs)? }),
             (Some(mine), Some(theirs)) => Some(mine.with(theirs)?),
             (mine, theirs) => mine.clone().or_else(|| theirs.clone()),
         };
@@ -188,6 +190,20 @@ mod tests {
         assert_eq!(effective.sum(&adjusted, false).unwrap_err().code, "forcing-kinds");
         let (sum, _) = forcing(ForcingKind::Undeclared).sum(&effective, false).unwrap();
         assert_eq!(sum, effective);
+    }
+
+    #[test]
+    fn the_difference_of_two_forcings_has_no_reference() {
+        let since = |reference: &str| Measure {
+            forcing: Some(Forcing { kind: ForcingKind::Effective, reference: Some(Arc::from(reference)) }),
+            ..measure("W/m2")
+        };
+        let one = since("278 ppm");
+        assert_eq!(one.sum(&one, false).unwrap().0, one);
+        assert_eq!(one.sum(&one, true).unwrap().0, forcing(ForcingKind::Effective));
+        assert_eq!(one.sum(&since("280 ppm"), true).unwrap().0, forcing(ForcingKind::Effective));
+        // What is no forcing leaves the reference alone.
+        assert_eq!(one.sum(&measure("W/m2"), true).unwrap().0, one);
     }
 
     #[test]

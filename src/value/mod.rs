@@ -4,6 +4,7 @@
 mod attribution;
 mod axis;
 mod block;
+mod clock;
 mod dimension;
 mod era;
 mod events;
@@ -19,12 +20,13 @@ mod unit;
 mod unit_table;
 
 pub use attribution::{Attribution, CAUTION, Coefficient, FitStatistics};
-pub(crate) use axis::duration_words;
-pub use axis::{Axis, AxisKind, Clock, STEPS_LIMIT, Span as TimeSpan};
+pub use axis::{Axis, AxisKind, Span as TimeSpan};
 pub use block::Block;
+pub(crate) use clock::duration_words;
+pub use clock::{Clock, STEPS_LIMIT};
 pub use dimension::Dimension;
-pub(crate) use era::date_label;
 pub use era::{Era, Instant, decimal_year, instant_of_date};
+pub(crate) use era::{are_dates, date_label};
 pub use events::{Events, Sizes};
 pub use figure::{Band, Figure, Ink, Line, Mark, Panel, PlotAxis, Tick};
 pub use measure::{Forcing, ForcingKind, Measure, Reading};

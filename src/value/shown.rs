@@ -1,7 +1,8 @@
 use std::sync::Arc;
 
 use super::attribution::Attribution;
-use super::axis::{Axis, Clock, Span};
+use super::axis::{Axis, Span};
+use super::clock::Clock;
 use super::era::Era;
 use super::events::Events;
 use super::measure::Measure;
@@ -26,6 +27,8 @@ pub enum Shown {
     Instant {
         /// The era it is shown in.
         era: Era,
+        /// Whether it came as a date of the calendar.
+        is_date: bool,
         /// The nominal decimal year.
         nominal: f64,
         /// The members, in decimal years.

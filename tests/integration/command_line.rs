@@ -3,6 +3,7 @@
 mod caps;
 mod json;
 mod scripts;
+mod written;
 
 use std::fs;
 use std::io::Read;

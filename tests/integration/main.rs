@@ -11,6 +11,7 @@
 mod catalogue_examples;
 mod certified_science;
 mod command_line;
+mod completion;
 mod events;
 mod figures;
 mod grammar;
@@ -23,3 +24,4 @@ mod rough_files;
 mod series_properties;
 mod session;
 mod suite;
+mod talk;

@@ -133,6 +133,16 @@ fn a_result_that_a_later_cell_moves_is_written_as_the_later_cell_left_it() {
 }
 
 #[test]
+fn json_says_what_a_result_was_refreshed_by() {
+    let ran = run_notebook("moved-json", &["x = 1 m\nx * 2\n3 m", "x = 5 m"], &["--format", "json"]);
+    let outputs = ran.json()["outputs"].as_array().unwrap().clone();
+    let shown =
+        |expression: &str| outputs.iter().find(|output| output["expression"] == expression).unwrap().clone();
+    assert_eq!((&shown("x * 2")["nominal"], &shown("x * 2")["refreshed_by"]), (&json!(10.0), &json!(["x"])));
+    assert!(shown("3 m").get("refreshed_by").is_none());
+}
+
+#[test]
 fn a_name_that_comes_later_is_no_mistake_in_the_end() {
     let cells = ["y = x + 1\ny", "x = 1 m + 1 s", "x = 4"];
     let ran = run_notebook("forward", &cells, &[]);

@@ -1,9 +1,12 @@
 //! The session's promises: order does not matter, nothing is computed twice, displays refresh, mistakes are told where
 //! they stand.
 
+mod functions;
 mod graphs;
 mod random_variables;
 mod refreshing;
+mod splices;
+mod wordings;
 
 use std::fs;
 use std::path::{Path, PathBuf};

@@ -152,7 +152,7 @@ def checks(uneven, uneven_values, whole, holed, late, monthly, daily):
         joined = pd.concat([early[early.index < 1950], late[late.index >= 1950]])
         found.append(Check(
             f"splice, adjusted by {adjust}", f"splice(whole, late, at: 1950 CE, adjust: {adjust})",
-            joined.to_numpy(), "pandas concat, fitted over the inner join", ROUNDING, joined.index.to_numpy() + 0.5))
+            joined.to_numpy(), "pandas concat, fitted over the inner join", ROUNDING, joined.index.to_numpy()))
 
     # season
     for name, months in (("December..February", [12, 1, 2]), ("June..August", [6, 7, 8])):

@@ -115,6 +115,11 @@ impl Session {
             } else {
                 Vec::new()
             };
+        // M and m are two units: only where no spelling fits exactly, case is ignored.
+        let exact = |item: &Completion| item.text.starts_with(here.word.as_str());
+        if matches!(here.place, Place::Unit { .. }) && items.iter().any(exact) {
+            items.retain(exact);
+        }
         items.retain(|item| folded(&item.text).starts_with(&word));
         if items.is_empty() {
             items = synonyms;

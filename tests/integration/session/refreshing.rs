@@ -408,3 +408,19 @@ fn a_peek_shows_a_result_and_leaves_nothing_behind() {
     assert!(session.peek("1 +").is_err() && session.peek("").is_err());
     assert!(run(&mut session, "home", "x = 5").moved.is_empty(), "a peek is no display");
 }
+
+#[test]
+fn a_wide_smoothing_of_many_members_is_interrupted_at_once() {
+    let mut session = session();
+    run(&mut session, "a", "clock = 1850..2020 CE by 1 month\nmembers = 20000");
+    let cancellation = session.cancellation();
+    let interrupter = std::thread::spawn(move || {
+        std::thread::sleep(std::time::Duration::from_millis(700));
+        cancellation.cancel();
+    });
+    let began = std::time::Instant::now();
+    let reply = session.run_cell("b", "constant(1 ± 0.1 W/m2) |> smooth(30 yr, window: gaussian) |> mean()");
+    interrupter.join().unwrap();
+    assert_eq!(reply.outputs[0].result.as_ref().unwrap_err().code, "interrupted");
+    assert!(began.elapsed() < std::time::Duration::from_secs(20), "{:?}", began.elapsed());
+}
