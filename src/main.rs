@@ -1,11 +1,13 @@
 //! The command line.
 
+use std::ffi::OsString;
 use std::io::{IsTerminal, Read, Write};
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 
 use clap::{Parser, Subcommand, ValueEnum};
 
+use rhythmite::lab::{self, Opening, Place};
 use rhythmite::notebook::{CodeCell, Notebook, Report, Run};
 use rhythmite::session::{OUTSIDE, Session};
 use rhythmite::talk::{self, Ending, Progress};
@@ -62,6 +64,33 @@ enum Command {
         #[arg(long, default_value_t = 256)]
         file_limit: u64,
     },
+    /// Make the kernel and the lab extension known to Jupyter, or take them away again.
+    Enrol {
+        /// For this user, in the data folder of Jupyter; this is the default.
+        #[arg(long, conflicts_with = "prefix")]
+        user: bool,
+        /// For an environment: below FOLDER/share/jupyter.
+        #[arg(long, value_name = "FOLDER")]
+        prefix: Option<PathBuf>,
+        /// Take away what was written there.
+        #[arg(long)]
+        remove: bool,
+    },
+    /// Open a folder in JupyterLab with the kernel ready; where no JupyterLab is installed, an environment is made once.
+    Lab {
+        /// The folder.
+        #[arg(default_value = ".")]
+        folder: PathBuf,
+        /// The port of the server.
+        #[arg(long, value_name = "NUMBER")]
+        port: Option<u16>,
+        /// Open no browser: the server prints its address.
+        #[arg(long)]
+        no_browser: bool,
+        /// What is handed on to JupyterLab, after `--`.
+        #[arg(last = true, value_name = "ARGUMENT")]
+        others: Vec<OsString>,
+    },
     /// Print the help of one function.
     Explain {
         /// Its name, or the sign of an operator.
@@ -105,6 +134,10 @@ fn main() -> ExitCode {
         }
         Command::Talk { folder, threads, file_limit } => {
             talk_in(&folder, threads, MEMORY, file_limit.saturating_mul(1024 * 1024))
+        }
+        Command::Enrol { user: _, prefix, remove } => enrol(prefix, remove),
+        Command::Lab { folder, port, no_browser, others } => {
+            open_lab(&Opening { folder, port, no_browser, others })
         }
         Command::Explain { name } => explain(&name),
         #[cfg(unix)]
@@ -150,6 +183,41 @@ fn explain(name: &str) -> u8 {
                 Some(near) => format!("there is no function `{name}`; did you mean `{near}`?\n"),
                 None => format!("there is no function `{name}`; there are {}\n", names.join(", ")),
             });
+            WRONG_CALL
+        }
+    }
+}
+
+fn enrol(prefix: Option<PathBuf>, remove: bool) -> u8 {
+    let place = prefix.map_or(Place::User, Place::Prefix);
+    let done = if remove {
+        lab::withdraw(&place)
+    } else {
+        lab::running_program().and_then(|program| lab::enrol(&place, &program))
+    };
+    match done {
+        Ok(lines) if lines.is_empty() => {
+            print("kernel and lab extension were enrolled already, as they are\n");
+            SUCCESS
+        }
+        Ok(lines) => {
+            print(&(lines.join("\n") + "\n"));
+            SUCCESS
+        }
+        Err(why) => {
+            complain(&format!("{why}\n"));
+            WRONG_CALL
+        }
+    }
+}
+
+fn open_lab(opening: &Opening) -> u8 {
+    let opened = lab::running_program()
+        .and_then(|program| lab::open(opening, &program, &mut |line| complain(&format!("{line}\n"))));
+    match opened {
+        Ok(code) => u8::try_from(code).unwrap_or(WRONG_PROGRAM),
+        Err(why) => {
+            complain(&format!("{why}\n"));
             WRONG_CALL
         }
     }

@@ -4,7 +4,7 @@ use std::fs;
 use std::path::{Path, PathBuf};
 
 /// The layers in order, as DEVELOPERS.md has them.
-const LAYERS: [&str; 11] = [
+const LAYERS: [&str; 12] = [
     "base",
     "science",
     "value",
@@ -15,6 +15,7 @@ const LAYERS: [&str; 11] = [
     "session",
     "notebook",
     "kernel",
+    "lab",
     "talk",
 ];
 
@@ -23,7 +24,7 @@ const KEPT_INSIDE: [(&str, &[&str]); 8] = [
     ("nom::", &["language"]),
     ("annotate_snippets::", &["display"]),
     ("csv::", &["files"]),
-    ("serde_json::", &["notebook", "kernel"]),
+    ("serde_json::", &["notebook", "kernel", "lab"]),
     ("rustyline::", &["talk"]),
     ("signal_hook::", &["talk"]),
     ("zeromq::", &["kernel"]),
