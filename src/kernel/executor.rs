@@ -380,7 +380,7 @@ impl Audience for Execution<'_> {
                 self.put(true, &progress.display, &words_bundle(&words), &json!({}));
             }
             let again = self.interrupted && output.is_interrupted();
-            if !reply.problems.contains(problem) && !again {
+            if !reply.problems.iter().any(|told| told.is_same_mistake(problem)) && !again {
                 self.fail(session, problem, Some(output.display));
             }
             self.interrupted |= output.is_interrupted();
