@@ -134,14 +134,14 @@ pub fn read_ensemble(
 type Chosen = Result<Vec<usize>, FileFault>;
 
 /// A file taken apart into cells, with its time columns chosen.
-struct Opened {
-    table: DelimitedTable,
+struct Opened<'t> {
+    table: DelimitedTable<'t>,
     time: TimeChoice,
     notes: Vec<String>,
 }
 
-impl Opened {
-    fn new(bytes: &[u8], options: &SeriesOptions) -> Result<Self, FileFault> {
+impl<'t> Opened<'t> {
+    fn new(bytes: &'t [u8], options: &SeriesOptions) -> Result<Self, FileFault> {
         let table = read_table(bytes, &DelimitedOptions { decimal_comma: options.decimal_comma })?;
         let time = choose_time(&table, options.time.as_deref())?;
         let notes = table.notes.iter().chain(&time.notes).cloned().collect();
@@ -168,7 +168,7 @@ impl Opened {
 
 /// A row a year with a column for each month, as one series of months.
 fn read_month_columns(
-    opened: Opened,
+    opened: Opened<'_>,
     layout: &MonthLayout,
     options: &SeriesOptions,
 ) -> Result<ReadEnsemble, FileFault> {
@@ -195,9 +195,9 @@ fn read_month_columns(
 }
 
 fn read_columns(
-    opened: Opened,
+    opened: Opened<'_>,
     options: &SeriesOptions,
-    choose: impl Fn(&DelimitedTable, &[usize], &SeriesOptions, &mut Vec<String>) -> Chosen,
+    choose: impl Fn(&DelimitedTable<'_>, &[usize], &SeriesOptions, &mut Vec<String>) -> Chosen,
 ) -> Result<ReadEnsemble, FileFault> {
     let decimal_comma = options.decimal_comma;
     let candidates = opened.candidates();
@@ -239,13 +239,13 @@ fn on_axis(axis: &Axis, by_row: &[f64]) -> Vec<f64> {
     axis.rows.iter().map(value).collect()
 }
 
-fn headers(table: &DelimitedTable, columns: &[usize]) -> String {
+fn headers(table: &DelimitedTable<'_>, columns: &[usize]) -> String {
     quoted_names(columns.iter().map(|&column| table.columns[column].header.as_str()))
 }
 
 /// The value column: the one named, the only one, or the one called `value`.
 fn value_column(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     candidates: &[usize],
     options: &SeriesOptions,
     notes: &mut Vec<String>,
@@ -300,7 +300,7 @@ fn value_column(
 /// The unit of the chosen columns: from their headers, or from a comment where there is one value
 /// column.
 fn unit_of(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     chosen: &[usize],
     only_value_column: bool,
     notes: &mut Vec<String>,

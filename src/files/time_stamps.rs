@@ -4,6 +4,7 @@ use super::calendar::{Date, days_before_month, days_before_year, days_in_month, 
 use super::numbers::parse_number;
 use super::time_column::{AgeScale, ReadEra, TimeColumns};
 use super::{DelimitedTable, FileFault};
+use memchr::memchr2;
 
 /// The times as the file has them, one for each row, ascending.
 #[derive(Debug)]
@@ -34,7 +35,7 @@ pub(super) struct OrderedStamps {
 /// # Errors
 /// A time that cannot be read, a time that occurs twice, rows in no order.
 pub(super) fn read_stamps(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     columns: TimeColumns,
     decimal_comma: bool,
 ) -> Result<OrderedStamps, FileFault> {
@@ -86,7 +87,7 @@ pub(super) fn read_stamps(
 
 /// Turns descending stamps round; says whether it did.
 fn put_in_order<T>(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     name: &str,
     shown: &dyn Fn(usize) -> String,
     stamps: &mut [T],
@@ -113,7 +114,7 @@ fn put_in_order<T>(
 /// A time that occurs twice anywhere is the likelier cause of a break in the order, and is named
 /// first.
 fn out_of_order<T>(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     name: &str,
     shown: &dyn Fn(usize) -> String,
     stamps: &[T],
@@ -157,7 +158,7 @@ fn out_of_order<T>(
 }
 
 fn check_layers_apart(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     layers: &[(f64, f64)],
     reversed: bool,
 ) -> Result<(), FileFault> {
@@ -181,7 +182,7 @@ fn check_layers_apart(
 }
 
 struct CellReader<'a> {
-    table: &'a DelimitedTable,
+    table: &'a DelimitedTable<'a>,
     decimal_comma: bool,
 }
 
@@ -403,8 +404,8 @@ fn look_like_years_and_months_apart_by_a_point(years: &[f64]) -> bool {
 
 /// How many decimals a number is printed with; an exponent makes them unknown, and counted as many.
 fn printed_decimals(cell: &str) -> usize {
-    if cell.contains(['e', 'E']) {
+    if memchr2(b'e', b'E', cell.as_bytes()).is_some() {
         return 12;
     }
-    cell.find(['.', ',']).map_or(0, |at| cell.len() - at - 1)
+    memchr2(b'.', b',', cell.as_bytes()).map_or(0, |at| cell.len() - at - 1)
 }

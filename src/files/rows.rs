@@ -1,0 +1,286 @@
+//! Text to rows of cells. Nothing is copied but what stands in quotation marks: a cell is a place in the text.
+
+use std::borrow::Cow;
+
+use memchr::{memchr, memchr2};
+
+use super::FileFault;
+use super::text_layout::{comment_text, newlines};
+
+/// The cells of a file, row after row.
+#[derive(Debug, Clone)]
+pub(super) struct Cells<'t> {
+    text: Cow<'t, str>,
+    /// What stood in quotation marks, without them; its places count on from the end of `text`.
+    unquoted: String,
+    places: Vec<CellPlace>,
+}
+
+/// Where the text of a cell begins and ends, trimmed of white space. Half the size of two `usize`: long files have
+/// millions of them.
+#[derive(Debug, Clone, Copy)]
+struct CellPlace {
+    start: u32,
+    end: u32,
+}
+
+/// Twice this, the text with all of it in quotation marks, is counted by a [`CellPlace`].
+const LONGEST_TEXT: usize = 1 << 31;
+
+impl Cells<'_> {
+    pub(super) fn count(&self) -> usize {
+        self.places.len()
+    }
+
+    /// The text of one cell, `""` when there is no such cell.
+    pub(super) fn get(&self, index: usize) -> &str {
+        let Some(&CellPlace { start, end }) = self.places.get(index) else { return "" };
+        let (start, end) = (start as usize, end as usize);
+        let found = match start.checked_sub(self.text.len()) {
+            None => self.text.get(start..end),
+            Some(start) => self.unquoted.get(start..end - self.text.len()),
+        };
+        found.unwrap_or("")
+    }
+
+    /// Takes down `from..to` of the text, or of what counts on from its end.
+    fn push(&mut self, from: usize, to: usize) {
+        let length = self.text.len();
+        let (text, base) =
+            if from < length { (&*self.text, 0) } else { (self.unquoted.as_str(), length) };
+        let cell = text.get(from - base..to - base).unwrap_or("");
+        let kept = cell.trim_start();
+        let (start, kept) = (to - kept.len(), kept.trim_end());
+        // No text is longer than LONGEST_TEXT, and no cells in quotation marks are longer than the text.
+        self.places.push(CellPlace { start: start as u32, end: (start + kept.len()) as u32 });
+    }
+}
+
+/// Reads row after row. Comment lines and empty lines between rows are skipped; a cell that begins with a quotation mark
+/// goes to the next one, delimiters and newlines included, and two of them stand for one.
+pub(super) struct RowReader<'t> {
+    pub(super) cells: Cells<'t>,
+    /// Comment lines skipped before the present row.
+    pub(super) comments: Vec<String>,
+    pub(super) first_comment_line: usize,
+    delimiter: u8,
+    at: usize,
+    line: usize,
+    /// Where the present row begins in the text and among the cells.
+    row_start: usize,
+    row_cells: usize,
+}
+
+impl<'t> RowReader<'t> {
+    /// Begins at the byte `at` of a text.
+    ///
+    /// # Errors
+    /// `file-size` for more text than can be counted.
+    pub(super) fn new(text: Cow<'t, str>, at: usize, delimiter: u8) -> Result<Self, FileFault> {
+        if text.len() > LONGEST_TEXT {
+            return Err(FileFault::new("file-size", "the file is longer than 2 GiB, the most that is read")
+                .help("take the columns that are needed, or several files"));
+        }
+        Ok(Self {
+            line: 1 + newlines(&text[..at]),
+            cells: Cells { text, unquoted: String::new(), places: Vec::new() },
+            comments: Vec::new(),
+            first_comment_line: 0,
+            delimiter,
+            at,
+            row_start: at,
+            row_cells: 0,
+        })
+    }
+
+    /// How many cells the present row has.
+    pub(super) fn width(&self) -> usize {
+        self.cells.count() - self.row_cells
+    }
+
+    /// The cells of the present row.
+    pub(super) fn row(&self) -> impl Iterator<Item = &str> {
+        (self.row_cells..self.cells.count()).map(|index| self.cells.get(index))
+    }
+
+    /// Forgets the present row.
+    pub(super) fn drop_row(&mut self) {
+        self.cells.places.truncate(self.row_cells);
+    }
+
+    /// Whether the present row goes over several lines.
+    pub(super) fn has_several_lines(&self) -> bool {
+        let row = self.cells.text.get(self.row_start..self.at).unwrap_or("");
+        newlines(row.trim_end()) > 0
+    }
+
+    /// Goes to the next row, and gives the line on which it begins; `None` at the end of the text.
+    ///
+    /// # Errors
+    /// `file-open-quote` where a quotation mark takes in all lines that follow.
+    pub(super) fn next_row(&mut self) -> Result<Option<usize>, FileFault> {
+        self.skip_to_row();
+        let line = self.line;
+        self.row_start = self.at;
+        self.row_cells = self.cells.count();
+        if self.at >= self.cells.text.len() {
+            return Ok(None);
+        }
+        loop {
+            let bytes = self.cells.text.as_bytes();
+            let from = self.at;
+            if bytes.get(from) == Some(&b'"') {
+                let closed = self.read_quoted();
+                if !closed && self.has_several_lines() {
+                    return Err(FileFault::new(
+                        "file-open-quote",
+                        "a quotation mark opened in this row is never closed",
+                    )
+                    .at_line(line));
+                }
+            } else {
+                self.at = self.cell_end(from);
+                self.cells.push(from, self.at);
+            }
+            match self.cells.text.as_bytes().get(self.at) {
+                Some(b'\n') => {
+                    self.at += 1;
+                    self.line += 1;
+                    return Ok(Some(line));
+                }
+                Some(_) => self.at += 1,
+                None => return Ok(Some(line)),
+            }
+        }
+    }
+
+    /// Where a cell without quotation marks ends that goes on at `from`.
+    fn cell_end(&self, from: usize) -> usize {
+        let rest = &self.cells.text.as_bytes()[from..];
+        memchr2(self.delimiter, b'\n', rest).map_or(self.cells.text.len(), |length| from + length)
+    }
+
+    fn skip_to_row(&mut self) {
+        let text = &self.cells.text;
+        while let Some(&byte) = text.as_bytes().get(self.at) {
+            if byte == b'#' {
+                let rest = &text[self.at..];
+                let length = memchr(b'\n', rest.as_bytes()).unwrap_or(rest.len());
+                if self.comments.is_empty() {
+                    self.first_comment_line = self.line;
+                }
+                self.comments.push(comment_text(&rest[..length]));
+                self.at += length;
+            } else if byte == b'\n' || byte == b'\r' {
+                self.line += usize::from(byte == b'\n');
+                self.at += 1;
+            } else {
+                break;
+            }
+        }
+    }
+
+    /// Reads a cell that begins with a quotation mark; whether that is closed.
+    fn read_quoted(&mut self) -> bool {
+        let text = &self.cells.text;
+        let unquoted_from = text.len() + self.cells.unquoted.len();
+        let mut from = self.at + 1;
+        let closed = loop {
+            let rest = &text[from..];
+            let Some(length) = memchr(b'"', rest.as_bytes()) else {
+                self.cells.unquoted.push_str(rest);
+                from = text.len();
+                break false;
+            };
+            self.cells.unquoted.push_str(&rest[..length]);
+            from += length + 1;
+            if text.as_bytes().get(from) != Some(&b'"') {
+                break true;
+            }
+            self.cells.unquoted.push('"');
+            from += 1;
+        };
+        self.line += newlines(&text[self.at..from]);
+        // What stands between the closing mark and the delimiter belongs to the cell as it is.
+        self.at = self.cell_end(from);
+        self.cells.unquoted.push_str(&self.cells.text[from..self.at]);
+        self.cells.push(unquoted_from, self.cells.text.len() + self.cells.unquoted.len());
+        closed
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use proptest::prelude::*;
+
+    fn rows(text: &str, delimiter: u8) -> Vec<Vec<String>> {
+        let mut reader = RowReader::new(Cow::Borrowed(text), 0, delimiter).unwrap();
+        let mut rows = Vec::new();
+        while reader.next_row().unwrap().is_some() {
+            rows.push(reader.row().map(str::to_owned).collect());
+        }
+        rows
+    }
+
+    fn rows_of_the_csv_crate(text: &str, delimiter: u8) -> Vec<Vec<String>> {
+        csv::ReaderBuilder::new()
+            .has_headers(false)
+            .flexible(true)
+            .delimiter(delimiter)
+            .comment(Some(b'#'))
+            .from_reader(text.as_bytes())
+            .records()
+            .map(|record| record.unwrap().iter().map(|cell| cell.trim().to_owned()).collect())
+            .collect()
+    }
+
+    proptest! {
+        /// The open quotation mark that goes over several lines is left out: the crate takes it for a cell.
+        #[test]
+        fn rows_and_cells_are_those_of_the_csv_crate(
+            pieces in prop::collection::vec(
+                prop::sample::select(vec![
+                    "1850", "-1.5", ",", ",", ";", "\n", "\n", "\r\n", " ", "\t", "#", "a", "µ", "\"", "\"\"", "\"b\"",
+                    "\"c, d\"", "\"e\nf\"",
+                ]),
+                0..40,
+            ),
+            delimiter in prop::sample::select(vec![b',', b';', b'\t']),
+        ) {
+            let text = pieces.concat();
+            let mut reader = RowReader::new(Cow::Borrowed(&text), 0, delimiter).unwrap();
+            let mut is_open = false;
+            loop {
+                match reader.next_row() {
+                    Ok(Some(_)) => {}
+                    Ok(None) => break,
+                    Err(_) => {
+                        is_open = true;
+                        break;
+                    }
+                }
+            }
+            prop_assume!(!is_open);
+            prop_assert_eq!(rows(&text, delimiter), rows_of_the_csv_crate(&text, delimiter));
+        }
+    }
+
+    #[test]
+    fn each_row_knows_its_line_past_comments_empty_lines_and_quoted_newlines() {
+        let text = "a,b\n\n# c\n1,\"x\ny\"\r\n\r\n2,z\n";
+        let mut reader = RowReader::new(Cow::Borrowed(text), 0, b',').unwrap();
+        let lines: Vec<usize> = std::iter::from_fn(|| reader.next_row().unwrap()).collect();
+        assert_eq!(lines, [1, 4, 7]);
+        assert_eq!(reader.comments, ["c"]);
+        assert_eq!(rows(text, b',')[1], ["1", "x\ny"]);
+    }
+
+    #[test]
+    fn an_open_quotation_mark_is_told_at_the_row_where_it_opens() {
+        let mut reader = RowReader::new(Cow::Borrowed("a,b\n1,\"x\n2,y\n"), 0, b',').unwrap();
+        assert!(reader.next_row().is_ok());
+        let fault = reader.next_row().unwrap_err();
+        assert_eq!((fault.code, fault.place.map(|place| place.line)), ("file-open-quote", Some(2)));
+    }
+}
