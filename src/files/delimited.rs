@@ -133,10 +133,7 @@ impl DelimitedTable<'_> {
 ///
 /// # Errors
 /// No UTF-8, no data, a row of another length than the header (with its line).
-pub fn read_table<'t>(
-    bytes: &'t [u8],
-    options: &DelimitedOptions,
-) -> Result<DelimitedTable<'t>, FileFault> {
+pub fn read_table<'t>(bytes: &'t [u8], options: &DelimitedOptions) -> Result<DelimitedTable<'t>, FileFault> {
     let text = decode(bytes)?;
     let mut notes = Vec::new();
     let mut comments = Vec::new();
@@ -186,7 +183,7 @@ pub fn read_table<'t>(
             }
             comments.append(&mut rows.comments);
         }
-        if rows.row().all(str::is_empty) {
+        if rows.row_is_empty() {
             rows.drop_row();
             empty_rows += 1;
         } else if rows.width() == row_width {

@@ -1,5 +1,7 @@
 //! The plan: for each target a list of source values and weights.
 
+use std::rc::Rc;
+
 use super::pieces::{Sweep, flat_steps, line_through_instants, line_through_steps};
 use super::{Axis, ROUNDING, ResampleError, Side};
 use crate::base::Cancellation;
@@ -256,15 +258,15 @@ impl Shape {
         let median_spacing = source.median_spacing_years();
         match source {
             Axis::Steps { starts, ends } => Self {
-                coarse: Sweep::over(flat_steps(starts, ends, valid)),
-                fine: Sweep::over(line_through_steps(starts, ends, valid, longest_gap)),
-                steps: Some(Sweep::over(flat_steps(starts, ends, &vec![true; starts.len()]))),
+                coarse: Sweep::over(flat_steps(starts, ends, valid).into()),
+                fine: Sweep::over(line_through_steps(starts, ends, valid, longest_gap).into()),
+                steps: Some(Sweep::over(flat_steps(starts, ends, &vec![true; starts.len()]).into())),
                 median_spacing,
                 start: starts.first().copied().unwrap_or(0.0),
                 end: ends.last().copied().unwrap_or(0.0),
             },
             Axis::Instants { times } => {
-                let line = line_through_instants(times, valid, longest_gap);
+                let line = Rc::new(line_through_instants(times, valid, longest_gap));
                 Self {
                     coarse: Sweep::over(line.clone()),
                     fine: Sweep::over(line),
