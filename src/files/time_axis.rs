@@ -38,12 +38,12 @@ pub(super) fn axis_from(
 ) -> Result<Axis, FileFault> {
     let reversed = ordered.reversed;
     let builder = Builder { name, form };
-    let mut axis = match &ordered.stamps {
-        Stamps::Years { years, decimals } => builder.years(years, *decimals),
-        Stamps::Months(months) => builder.labels(months, 12, "month"),
-        Stamps::Dates(dates) => builder.dates(dates),
+    let mut axis = match ordered.stamps {
+        Stamps::Years { years, decimals } => builder.years(years, decimals),
+        Stamps::Months(months) => builder.labels(&months, 12, "month"),
+        Stamps::Dates(dates) => builder.dates(&dates),
         Stamps::Ages(years) => builder.ages(years),
-        Stamps::Layers(layers) => Ok(builder.layers(layers)),
+        Stamps::Layers(layers) => Ok(builder.layers(&layers)),
     }?;
     axis.reversed = reversed;
     axis.notes.splice(0..0, ordered.notes);
@@ -80,7 +80,7 @@ struct Builder<'a> {
 }
 
 impl Builder<'_> {
-    fn years(&self, years: &[f64], decimals: usize) -> Result<Axis, FileFault> {
+    fn years(&self, years: Vec<f64>, decimals: usize) -> Result<Axis, FileFault> {
         if years.iter().all(|year| year.fract().abs() <= 0.0 && year.abs() < 1e15) {
             let labels: Vec<i64> = years.iter().map(|&year| year as i64).collect();
             let mut axis = self.labels(&labels, 1, "year")?;
@@ -95,7 +95,7 @@ impl Builder<'_> {
         }
         let resolution = 10_f64.powi(-i32::try_from(decimals).unwrap_or(12).min(12));
         if years.len() > 1
-            && let Some((grid, indices)) = decimal_grid(years, resolution)
+            && let Some((grid, indices)) = decimal_grid(&years, resolution)
         {
             let stamped = match grid {
                 Grid::PartsOfYear(1) => "decimal years at mid-year: ",
@@ -107,18 +107,15 @@ impl Builder<'_> {
             return Ok(self.on_grid(grid, &indices, stamped));
         }
         if self.form == Some(AxisForm::Steps) {
-            return self.regular_steps(years, resolution, true);
+            return self.regular_steps(&years, resolution, true);
         }
-        let what = match regular_spacing(years, resolution) {
+        let what = match regular_spacing(&years, resolution) {
             Some(_) if years.len() > 2 => "regular but not at the middle of years, quarters, months or days",
             Some(_) | None => "on no regular grid",
         };
-        let mut axis = instants(years.to_vec());
-        axis.notes.push(format!(
-            "{}: {} {what}, read as instants",
-            self.name,
-            counted(years.len(), "decimal year")
-        ));
+        let count = counted(years.len(), "decimal year");
+        let mut axis = instants(years);
+        axis.notes.push(format!("{}: {count} {what}, read as instants", self.name));
         Ok(axis)
     }
 
@@ -201,15 +198,15 @@ impl Builder<'_> {
         Ok(axis)
     }
 
-    fn ages(&self, years: &[f64]) -> Result<Axis, FileFault> {
+    fn ages(&self, years: Vec<f64>) -> Result<Axis, FileFault> {
         if self.form == Some(AxisForm::Steps) {
-            return self.regular_steps(years, 1e-6, false);
+            return self.regular_steps(&years, 1e-6, false);
         }
-        let mut axis = instants(years.to_vec());
+        let count = counted(years.len(), "age");
+        let mut axis = instants(years);
         axis.notes.push(format!(
-            "{}: {}, read as instants; age_top and age_bottom would make steps",
-            self.name,
-            counted(years.len(), "age")
+            "{}: {count}, read as instants; age_top and age_bottom would make steps",
+            self.name
         ));
         Ok(axis)
     }

@@ -4,7 +4,6 @@ use super::calendar::{Date, days_before_month, days_before_year, days_in_month, 
 use super::numbers::parse_number;
 use super::time_column::{AgeScale, ReadEra, TimeColumns};
 use super::{DelimitedTable, FileFault};
-use memchr::memchr2;
 
 /// The times as the file has them, one for each row, ascending.
 #[derive(Debug)]
@@ -193,7 +192,11 @@ impl CellReader<'_> {
     }
 
     fn number(&self, row: usize, column: usize) -> Result<f64, FileFault> {
-        let cell = self.table.cell(row, column);
+        self.number_in(self.table.cell(row, column), row, column)
+    }
+
+    /// The number in a cell that was already looked up.
+    fn number_in(&self, cell: &str, row: usize, column: usize) -> Result<f64, FileFault> {
         match parse_number(cell, self.decimal_comma) {
             Some(number) if number.is_finite() => Ok(number),
             Some(_) | None if super::numbers::is_missing_marker(cell) => Err(self
@@ -270,7 +273,7 @@ impl CellReader<'_> {
         let mut years = Vec::with_capacity(table.row_count());
         for row in 0..table.row_count() {
             let cell = table.cell(row, column);
-            let year = self.number(row, column).map_err(|fault| {
+            let year = self.number_in(cell, row, column).map_err(|fault| {
                 let numeric = cell.starts_with(|c: char| c.is_ascii_digit());
                 let date_like = !numeric || cell.contains(['/', '-', '.']);
                 if fault.code == "file-not-a-number" && date_like { fault.help(DATE_HELP) } else { fault }
@@ -404,8 +407,13 @@ fn look_like_years_and_months_apart_by_a_point(years: &[f64]) -> bool {
 
 /// How many decimals a number is printed with; an exponent makes them unknown, and counted as many.
 fn printed_decimals(cell: &str) -> usize {
-    if memchr2(b'e', b'E', cell.as_bytes()).is_some() {
-        return 12;
+    let mut decimals = 0;
+    for (behind, byte) in cell.bytes().rev().enumerate() {
+        match byte {
+            b'e' | b'E' => return 12,
+            b'.' | b',' => decimals = behind,
+            _ => {}
+        }
     }
-    memchr2(b'.', b',', cell.as_bytes()).map_or(0, |at| cell.len() - at - 1)
+    decimals
 }
