@@ -3,6 +3,7 @@
 use super::rows::{Cells, RowReader};
 use super::text_layout::{decode, find_delimiter, header_comments};
 use super::{FileFault, counted, quoted_names};
+use rayon::prelude::*;
 
 /// What the reader of a table is told beforehand.
 #[derive(Debug, Clone, Default, PartialEq, Eq)]
@@ -152,49 +153,40 @@ pub fn read_table<'t>(bytes: &'t [u8], options: &DelimitedOptions) -> Result<Del
         _ => {}
     }
 
-    let mut rows = RowReader::new(text, body_start, delimiter)?;
+    let mut rows = RowReader::new(&text, body_start, delimiter)?;
     let Some(first_line) = rows.next_row()? else {
         return Err(FileFault::new("file-empty", "the file holds no data"));
     };
     let first: Vec<String> = rows.row().map(str::to_owned).collect();
     let has_header = !looks_like_data(&first);
     let columns = columns_from(&first, has_header);
-    let row_width = first.len();
-    let mut row_lines = Vec::new();
+    let parts = rows.rest_in_parts();
+    let mut body = Body { rows, lines: Vec::new(), empty_rows: 0 };
     if has_header {
-        comments.append(&mut rows.comments);
-        rows.drop_row();
+        body.rows.drop_row();
     } else {
         notes.push(format!(
             "the first row (line {first_line}) is all numbers, so the columns have no names: they are {}",
             quoted_names(columns.iter().map(|column| column.name.as_str()))
         ));
-        row_lines.push(first_line as u32);
+        body.lines.push(first_line as u32);
     }
-    let mut empty_rows = 0;
-    let mut comments_inside = (0, 0);
-    while let Some(line) = rows.next_row()? {
-        if !rows.comments.is_empty() {
-            if !row_lines.is_empty() {
-                if comments_inside.0 == 0 {
-                    comments_inside.1 = rows.first_comment_line;
-                }
-                comments_inside.0 += rows.comments.len();
-            }
-            comments.append(&mut rows.comments);
-        }
-        if rows.row_is_empty() {
-            rows.drop_row();
-            empty_rows += 1;
-        } else if rows.width() == row_width {
-            row_lines.push(line as u32);
-        } else {
-            return Err(row_length_fault(&columns, has_header, &rows, line, delimiter));
-        }
+    let parts: Vec<_> =
+        parts.into_par_iter().map(|rows| Body::read(rows, &columns, has_header, delimiter)).collect();
+    for part in parts {
+        body.append(part?);
     }
-    comments.append(&mut rows.comments);
-    let mut table =
-        DelimitedTable { comments, columns, has_header, notes, cells: rows.cells, row_width, row_lines };
+    let Body { mut rows, lines: row_lines, empty_rows } = body;
+    let is_inside = |line: usize| {
+        let beside = row_lines.first().zip(row_lines.last());
+        beside.is_some_and(|(first, last)| (*first as usize..*last as usize).contains(&line))
+    };
+    let inside: Vec<usize> =
+        rows.comments.iter().map(|comment| comment.0).filter(|line| is_inside(*line)).collect();
+    comments.extend(rows.comments.drain(..).map(|comment| comment.1));
+    let (row_width, found) = (first.len(), rows.found());
+    let cells = Cells::found(text, found);
+    let mut table = DelimitedTable { comments, columns, has_header, notes, cells, row_width, row_lines };
     if table.row_count() == 0 {
         let names = quoted_names(first.iter().map(String::as_str));
         return Err(FileFault::new(
@@ -206,12 +198,9 @@ pub fn read_table<'t>(bytes: &'t [u8], options: &DelimitedOptions) -> Result<Del
     if let Some(fault) = second_header(&table) {
         return Err(fault);
     }
-    if comments_inside.0 > 0 {
-        table.notes.push(format!(
-            "{} among the data rows skipped (first in line {})",
-            counted(comments_inside.0, "comment line"),
-            comments_inside.1
-        ));
+    if let Some(first) = inside.first() {
+        let lines = counted(inside.len(), "comment line");
+        table.notes.push(format!("{lines} among the data rows skipped (first in line {first})"));
     }
     if empty_rows > 0 {
         let rows = if empty_rows == 1 { "row" } else { "rows" };
@@ -219,6 +208,42 @@ pub fn read_table<'t>(bytes: &'t [u8], options: &DelimitedOptions) -> Result<Del
     }
     table.drop_empty_columns(&first);
     Ok(table)
+}
+
+/// Rows of data: their cells and comments, and the line of each.
+struct Body<'t> {
+    rows: RowReader<'t>,
+    lines: Vec<u32>,
+    empty_rows: usize,
+}
+
+impl<'t> Body<'t> {
+    /// Reads all rows, each of which must have a cell for each column or none with anything in it.
+    fn read(
+        rows: RowReader<'t>,
+        columns: &[TextColumn],
+        has_header: bool,
+        delimiter: u8,
+    ) -> Result<Self, FileFault> {
+        let mut body = Self { rows, lines: Vec::new(), empty_rows: 0 };
+        while let Some(line) = body.rows.next_row()? {
+            if body.rows.row_is_empty() {
+                body.rows.drop_row();
+                body.empty_rows += 1;
+            } else if body.rows.width() == columns.len() {
+                body.lines.push(line as u32);
+            } else {
+                return Err(row_length_fault(columns, has_header, &body.rows, line, delimiter));
+            }
+        }
+        Ok(body)
+    }
+
+    fn append(&mut self, part: Self) {
+        self.lines.extend(part.lines);
+        self.empty_rows += part.empty_rows;
+        self.rows.append(part.rows);
+    }
 }
 
 impl DelimitedTable<'_> {

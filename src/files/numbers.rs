@@ -40,7 +40,7 @@ pub(super) fn is_missing_marker(cell: &str) -> bool {
 /// Reads one number as it is written, without any missing marker: `3.14`, `3,14` when told, `−5`,
 /// `1e-3`.
 pub(super) fn parse_number(cell: &str, decimal_comma: bool) -> Option<f64> {
-    if let Some(number) = short_number(cell, if decimal_comma { b',' } else { b'.' }) {
+    if let Some((number, _)) = short_number(cell, decimal_comma) {
         return Some(number);
     }
     let mut text = Cow::Borrowed(cell);
@@ -68,12 +68,13 @@ const POWERS_OF_TEN: [f64; 16] =
     [1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15];
 
 /// Reads digits with a sign and a decimal mark, as nearly all numbers are written, at several times the speed of the
-/// standard library; `None` for what has another form or more than 15 digits.
+/// standard library, and how many of them are decimals; `None` for what has another form or more than 15 digits.
 ///
 /// It gives the same bits: the digits as a whole number and the power of ten are both exact, so that the one division
 /// rounds correctly (Clinger 1990, Proceedings of the ACM SIGPLAN 1990 Conference on Programming Language Design and
 /// Implementation, 92).
-fn short_number(cell: &str, mark: u8) -> Option<f64> {
+pub(super) fn short_number(cell: &str, decimal_comma: bool) -> Option<(f64, usize)> {
+    let mark = if decimal_comma { b',' } else { b'.' };
     let bytes = cell.as_bytes();
     let digits = bytes.strip_prefix(b"-").unwrap_or(bytes);
     if digits.len() > 16 {
@@ -97,7 +98,7 @@ fn short_number(cell: &str, mark: u8) -> Option<f64> {
         return None;
     }
     let size = whole as f64 / POWERS_OF_TEN.get(decimals)?;
-    Some(if digits.len() < bytes.len() { -size } else { size })
+    Some((if digits.len() < bytes.len() { -size } else { size }, decimals))
 }
 
 struct GapKind {

@@ -1,6 +1,7 @@
 //! Text to rows of cells. Nothing is copied but what stands in quotation marks: a cell is a place in the text.
 
 use std::borrow::Cow;
+use std::ops::Range;
 
 use memchr::memchr;
 
@@ -16,60 +17,55 @@ pub(super) struct Cells<'t> {
     places: Vec<CellPlace>,
 }
 
+impl<'t> Cells<'t> {
+    /// The cells that were found in a text.
+    pub(super) fn found(text: Cow<'t, str>, (places, unquoted): (Vec<CellPlace>, String)) -> Self {
+        Self { text, unquoted, places }
+    }
+
+    /// The text of one cell, `""` when there is no such cell.
+    pub(super) fn get(&self, index: usize) -> &str {
+        self.places.get(index).map_or("", |place| place.text(&self.text, &self.unquoted))
+    }
+}
+
 /// Where the text of a cell begins and ends, trimmed of white space. Half the size of two `usize`: long files have
 /// millions of them.
 #[derive(Debug, Clone, Copy)]
-struct CellPlace {
+pub(super) struct CellPlace {
     start: u32,
     end: u32,
+}
+
+impl CellPlace {
+    fn text<'a>(self, text: &'a str, unquoted: &'a str) -> &'a str {
+        let (start, end) = (self.start as usize, self.end as usize);
+        let found = match start.checked_sub(text.len()) {
+            None => text.get(start..end),
+            Some(start) => unquoted.get(start..end - text.len()),
+        };
+        found.unwrap_or("")
+    }
 }
 
 /// Twice this, the text with all of it in quotation marks, is counted by a [`CellPlace`].
 const LONGEST_TEXT: usize = 1 << 31;
 
-impl Cells<'_> {
-    pub(super) fn count(&self) -> usize {
-        self.places.len()
-    }
-
-    /// The text of one cell, `""` when there is no such cell.
-    pub(super) fn get(&self, index: usize) -> &str {
-        let Some(&CellPlace { start, end }) = self.places.get(index) else { return "" };
-        let (start, end) = (start as usize, end as usize);
-        let found = match start.checked_sub(self.text.len()) {
-            None => self.text.get(start..end),
-            Some(start) => self.unquoted.get(start..end - self.text.len()),
-        };
-        found.unwrap_or("")
-    }
-
-    /// Takes down `from..to` of the text, or of what counts on from its end, without the white space around it.
-    fn push(&mut self, from: usize, to: usize) {
-        let length = self.text.len();
-        let (text, base) = if from < length { (&*self.text, 0) } else { (self.unquoted.as_str(), length) };
-        // Most cells have nothing to trim, which is seen from their outermost bytes.
-        let is_plain = |at: usize| text.as_bytes().get(at - base).is_some_and(u8::is_ascii_graphic);
-        let (start, end) = if from < to && is_plain(from) && is_plain(to - 1) {
-            (from, to)
-        } else {
-            let cell = text.get(from - base..to - base).unwrap_or("").trim_end();
-            (from + cell.len() - cell.trim_start().len(), from + cell.len())
-        };
-        // No text is longer than LONGEST_TEXT, and no cells in quotation marks are longer than the text.
-        self.places.push(CellPlace { start: start as u32, end: end as u32 });
-    }
-}
+/// A text is read in parts of about this many bytes, whatever the number of threads.
+const PART: usize = 1 << 20;
 
 /// Reads row after row. Comment lines and empty lines between rows are skipped; a cell that begins with a quotation mark
 /// goes to the next one, delimiters and newlines included, and two of them stand for one.
 pub(super) struct RowReader<'t> {
-    pub(super) cells: Cells<'t>,
-    /// Comment lines skipped before the present row.
-    pub(super) comments: Vec<String>,
-    pub(super) first_comment_line: usize,
+    /// Comments so far, each with its line.
+    pub(super) comments: Vec<(usize, String)>,
+    text: &'t str,
     delimiter: u8,
     at: usize,
+    end: usize,
     line: usize,
+    places: Vec<CellPlace>,
+    unquoted: String,
     /// Where the present row begins in the text and among the cells.
     row_start: usize,
     row_cells: usize,
@@ -80,50 +76,94 @@ impl<'t> RowReader<'t> {
     ///
     /// # Errors
     /// `file-size` for more text than can be counted.
-    pub(super) fn new(text: Cow<'t, str>, at: usize, delimiter: u8) -> Result<Self, FileFault> {
+    pub(super) fn new(text: &'t str, at: usize, delimiter: u8) -> Result<Self, FileFault> {
         if text.len() > LONGEST_TEXT {
             return Err(FileFault::new("file-size", "the file is longer than 2 GiB, the most that is read")
                 .help("take the columns that are needed, or several files"));
         }
-        Ok(Self {
-            line: 1 + newlines(&text[..at]),
-            cells: Cells { text, unquoted: String::new(), places: Vec::new() },
+        Ok(Self::within(text, at..text.len(), 1 + newlines(&text[..at]), delimiter))
+    }
+
+    fn within(text: &'t str, range: Range<usize>, line: usize, delimiter: u8) -> Self {
+        Self {
             comments: Vec::new(),
-            first_comment_line: 0,
+            text,
             delimiter,
-            at,
-            row_start: at,
+            at: range.start,
+            end: range.end,
+            line,
+            places: Vec::new(),
+            unquoted: String::new(),
+            row_start: range.start,
             row_cells: 0,
-        })
+        }
+    }
+
+    /// Cuts what was not read yet into parts that can be read at the same time. They know their lines. With quotation
+    /// marks it stays one part: a newline may stand inside them.
+    pub(super) fn rest_in_parts(&self) -> Vec<RowReader<'t>> {
+        let bytes = self.text.as_bytes();
+        let longest = if memchr(b'"', &bytes[self.at..]).is_some() { usize::MAX } else { PART };
+        let (mut at, mut line) = (self.at, self.line);
+        let mut parts = Vec::new();
+        while at < self.end {
+            let cut = at.saturating_add(longest).min(self.end);
+            let end = memchr(b'\n', &bytes[cut..self.end]).map_or(self.end, |length| cut + length + 1);
+            parts.push(Self::within(self.text, at..end, line, self.delimiter));
+            line += newlines(&self.text[at..end]);
+            at = end;
+        }
+        parts
+    }
+
+    /// Takes in what the part that follows has read.
+    pub(super) fn append(&mut self, next: Self) {
+        self.comments.extend(next.comments);
+        // Places of unquoted text count from the end of the whole text and what is unquoted of it before.
+        let shift = self.unquoted.len() as u32;
+        let length = self.text.len() as u32;
+        self.places.extend(next.places.into_iter().map(|place| {
+            if shift == 0 || place.start < length {
+                place
+            } else {
+                CellPlace { start: place.start + shift, end: place.end + shift }
+            }
+        }));
+        self.unquoted.push_str(&next.unquoted);
+    }
+
+    /// The places of the cells that were read, and the text of those in quotation marks.
+    pub(super) fn found(self) -> (Vec<CellPlace>, String) {
+        (self.places, self.unquoted)
     }
 
     /// How many cells the present row has.
     pub(super) fn width(&self) -> usize {
-        self.cells.count() - self.row_cells
+        self.places.len() - self.row_cells
     }
 
     /// Whether no cell of the present row holds anything.
     pub(super) fn row_is_empty(&self) -> bool {
-        self.cells.places[self.row_cells..].iter().all(|place| place.start == place.end)
+        self.places[self.row_cells..].iter().all(|place| place.start == place.end)
     }
 
     /// The cells of the present row.
     pub(super) fn row(&self) -> impl Iterator<Item = &str> {
-        (self.row_cells..self.cells.count()).map(|index| self.cells.get(index))
+        self.places[self.row_cells..].iter().map(|place| place.text(self.text, &self.unquoted))
     }
 
     /// Forgets the present row.
     pub(super) fn drop_row(&mut self) {
-        self.cells.places.truncate(self.row_cells);
+        self.places.truncate(self.row_cells);
     }
 
     /// Whether the present row goes over several lines.
     pub(super) fn has_several_lines(&self) -> bool {
-        let row = self.cells.text.get(self.row_start..self.at).unwrap_or("");
+        let row = self.text.get(self.row_start..self.at).unwrap_or("");
         newlines(row.trim_end()) > 0
     }
 
-    /// Goes to the next row, and gives the line on which it begins; `None` at the end of the text.
+    /// Goes to the next row, and gives the line on which it begins; `None` at the end.
     ///
     /// # Errors
     /// `file-open-quote` where a quotation mark takes in all lines that follow.
@@ -131,12 +171,12 @@ impl<'t> RowReader<'t> {
         self.skip_to_row();
         let line = self.line;
         self.row_start = self.at;
-        self.row_cells = self.cells.count();
-        if self.at >= self.cells.text.len() {
+        self.row_cells = self.places.len();
+        if self.at >= self.end {
             return Ok(None);
         }
+        let bytes = self.text.as_bytes();
         loop {
-            let bytes = self.cells.text.as_bytes();
             let from = self.at;
             if bytes.get(from) == Some(&b'"') {
                 let closed = self.read_quoted();
@@ -149,9 +189,9 @@ impl<'t> RowReader<'t> {
                 }
             } else {
                 self.at = self.cell_end(from);
-                self.cells.push(from, self.at);
+                self.push(from, self.at);
             }
-            match self.cells.text.as_bytes().get(self.at) {
+            match bytes.get(self.at) {
                 Some(b'\n') => {
                     self.at += 1;
                     self.line += 1;
@@ -165,20 +205,32 @@ impl<'t> RowReader<'t> {
 
     /// Where a cell without quotation marks ends that goes on at `from`.
     fn cell_end(&self, from: usize) -> usize {
-        let rest = &self.cells.text.as_bytes()[from..];
-        position_of_either(rest, self.delimiter, b'\n').map_or(self.cells.text.len(), |length| from + length)
+        let rest = &self.text.as_bytes()[from..];
+        position_of_either(rest, self.delimiter, b'\n').map_or(self.text.len(), |length| from + length)
+    }
+
+    /// Takes down `from..to` of the text, or of what counts on from its end, without the white space around it.
+    fn push(&mut self, from: usize, to: usize) {
+        let length = self.text.len();
+        let (text, base) = if from < length { (self.text, 0) } else { (self.unquoted.as_str(), length) };
+        // Most cells have nothing to trim, which is seen from their outermost bytes.
+        let is_plain = |at: usize| text.as_bytes().get(at - base).is_some_and(u8::is_ascii_graphic);
+        let (start, end) = if from < to && is_plain(from) && is_plain(to - 1) {
+            (from, to)
+        } else {
+            let cell = text.get(from - base..to - base).unwrap_or("").trim_end();
+            (from + cell.len() - cell.trim_start().len(), from + cell.len())
+        };
+        // No text is longer than LONGEST_TEXT, and no cells in quotation marks are longer than the text.
+        self.places.push(CellPlace { start: start as u32, end: end as u32 });
     }
 
     fn skip_to_row(&mut self) {
-        let text = &self.cells.text;
-        while let Some(&byte) = text.as_bytes().get(self.at) {
+        while let Some(&byte) = self.text.as_bytes()[..self.end].get(self.at) {
             if byte == b'#' {
-                let rest = &text[self.at..];
+                let rest = &self.text[self.at..];
                 let length = memchr(b'\n', rest.as_bytes()).unwrap_or(rest.len());
-                if self.comments.is_empty() {
-                    self.first_comment_line = self.line;
-                }
-                self.comments.push(comment_text(&rest[..length]));
+                self.comments.push((self.line, comment_text(&rest[..length])));
                 self.at += length;
             } else if byte == b'\n' || byte == b'\r' {
                 self.line += usize::from(byte == b'\n');
@@ -191,29 +243,29 @@ impl<'t> RowReader<'t> {
 
     /// Reads a cell that begins with a quotation mark; whether that is closed.
     fn read_quoted(&mut self) -> bool {
-        let text = &self.cells.text;
-        let unquoted_from = text.len() + self.cells.unquoted.len();
+        let text = self.text;
+        let unquoted_from = text.len() + self.unquoted.len();
         let mut from = self.at + 1;
         let closed = loop {
             let rest = &text[from..];
             let Some(length) = memchr(b'"', rest.as_bytes()) else {
-                self.cells.unquoted.push_str(rest);
+                self.unquoted.push_str(rest);
                 from = text.len();
                 break false;
             };
-            self.cells.unquoted.push_str(&rest[..length]);
+            self.unquoted.push_str(&rest[..length]);
             from += length + 1;
             if text.as_bytes().get(from) != Some(&b'"') {
                 break true;
             }
-            self.cells.unquoted.push('"');
+            self.unquoted.push('"');
             from += 1;
         };
         self.line += newlines(&text[self.at..from]);
         // What stands between the closing mark and the delimiter belongs to the cell as it is.
         self.at = self.cell_end(from);
-        self.cells.unquoted.push_str(&self.cells.text[from..self.at]);
-        self.cells.push(unquoted_from, self.cells.text.len() + self.cells.unquoted.len());
+        self.unquoted.push_str(&text[from..self.at]);
+        self.push(unquoted_from, text.len() + self.unquoted.len());
         closed
     }
 }
@@ -243,7 +295,7 @@ mod tests {
     use proptest::prelude::*;
 
     fn rows(text: &str, delimiter: u8) -> Vec<Vec<String>> {
-        let mut reader = RowReader::new(Cow::Borrowed(text), 0, delimiter).unwrap();
+        let mut reader = RowReader::new(text, 0, delimiter).unwrap();
         let mut rows = Vec::new();
         while reader.next_row().unwrap().is_some() {
             rows.push(reader.row().map(str::to_owned).collect());
@@ -281,7 +333,7 @@ mod tests {
             if text.lines().last().is_some_and(|line| line.starts_with('#')) {
                 text.push('\n');
             }
-            let mut reader = RowReader::new(Cow::Borrowed(&text), 0, delimiter).unwrap();
+            let mut reader = RowReader::new(&text, 0, delimiter).unwrap();
             let mut is_open = false;
             loop {
                 match reader.next_row() {
@@ -311,16 +363,35 @@ mod tests {
     #[test]
     fn each_row_knows_its_line_past_comments_empty_lines_and_quoted_newlines() {
         let text = "a,b\n\n# c\n1,\"x\ny\"\r\n\r\n2,z\n";
-        let mut reader = RowReader::new(Cow::Borrowed(text), 0, b',').unwrap();
+        let mut reader = RowReader::new(text, 0, b',').unwrap();
         let lines: Vec<usize> = std::iter::from_fn(|| reader.next_row().unwrap()).collect();
         assert_eq!(lines, [1, 4, 7]);
-        assert_eq!(reader.comments, ["c"]);
+        assert_eq!(reader.comments, [(3, "c".to_owned())]);
         assert_eq!(rows(text, b',')[1], ["1", "x\ny"]);
     }
 
     #[test]
+    fn a_long_text_is_read_in_parts_that_know_their_lines() {
+        let text: String = (0..300_000)
+            .map(|row| format!("{row},{}\n{}", row % 7, if row % 1000 == 0 { "# c\n" } else { "" }))
+            .collect();
+        let whole = RowReader::new(&text, 0, b',').unwrap();
+        let parts = whole.rest_in_parts();
+        assert!(parts.len() > 2);
+        let mut row = 0_usize;
+        for mut part in parts {
+            while let Some(line) = part.next_row().unwrap() {
+                assert_eq!(line, 1 + row + row.div_ceil(1000));
+                assert_eq!(part.row().next(), Some(row.to_string().as_str()));
+                row += 1;
+            }
+        }
+        assert_eq!(row, 300_000);
+    }
+
+    #[test]
     fn an_open_quotation_mark_is_told_at_the_row_where_it_opens() {
-        let mut reader = RowReader::new(Cow::Borrowed("a,b\n1,\"x\n2,y\n"), 0, b',').unwrap();
+        let mut reader = RowReader::new("a,b\n1,\"x\n2,y\n", 0, b',').unwrap();
         assert!(reader.next_row().is_ok());
         let fault = reader.next_row().unwrap_err();
         assert_eq!((fault.code, fault.place.map(|place| place.line)), ("file-open-quote", Some(2)));

@@ -1,7 +1,7 @@
 //! Time cells to stamps (years, months, dates, ages), in ascending order.
 
 use super::calendar::{Date, days_before_month, days_before_year, days_in_month, parse_date};
-use super::numbers::parse_number;
+use super::numbers::{parse_number, short_number};
 use super::time_column::{AgeScale, ReadEra, TimeColumns};
 use super::{DelimitedTable, FileFault};
 
@@ -244,6 +244,15 @@ impl CellReader<'_> {
         Ok(Stamps::Layers((0..self.table.row_count()).map(read).collect::<Result<_, FileFault>>()?))
     }
 
+    /// A year; what looks like a date instead is told how to be written.
+    fn year(&self, cell: &str, row: usize, column: usize) -> Result<f64, FileFault> {
+        self.number_in(cell, row, column).map_err(|fault| {
+            let numeric = cell.starts_with(|c: char| c.is_ascii_digit());
+            let date_like = !numeric || cell.contains(['/', '-', '.']);
+            if fault.code == "file-not-a-number" && date_like { fault.help(DATE_HELP) } else { fault }
+        })
+    }
+
     /// Years or dates: the first cell tells which, and the others must follow.
     fn calendar(&self, column: usize, era: ReadEra, notes: &mut Vec<String>) -> Result<Stamps, FileFault> {
         let table = self.table;
@@ -273,12 +282,11 @@ impl CellReader<'_> {
         let mut years = Vec::with_capacity(table.row_count());
         for row in 0..table.row_count() {
             let cell = table.cell(row, column);
-            let year = self.number_in(cell, row, column).map_err(|fault| {
-                let numeric = cell.starts_with(|c: char| c.is_ascii_digit());
-                let date_like = !numeric || cell.contains(['/', '-', '.']);
-                if fault.code == "file-not-a-number" && date_like { fault.help(DATE_HELP) } else { fault }
-            })?;
-            decimals = decimals.max(printed_decimals(cell));
+            let (year, printed) = match short_number(cell, self.decimal_comma) {
+                Some(number) => number,
+                None => (self.year(cell, row, column)?, printed_decimals(cell)),
+            };
+            decimals = decimals.max(printed);
             years.push(if era == ReadEra::BeforeCommonEra { 1.0 - year } else { year });
         }
         if years.iter().all(|&year| looks_like_year_and_month(year)) {
@@ -407,13 +415,8 @@ fn look_like_years_and_months_apart_by_a_point(years: &[f64]) -> bool {
 
 /// How many decimals a number is printed with; an exponent makes them unknown, and counted as many.
 fn printed_decimals(cell: &str) -> usize {
-    let mut decimals = 0;
-    for (behind, byte) in cell.bytes().rev().enumerate() {
-        match byte {
-            b'e' | b'E' => return 12,
-            b'.' | b',' => decimals = behind,
-            _ => {}
-        }
+    if cell.contains(['e', 'E']) {
+        return 12;
     }
-    decimals
+    cell.find(['.', ',']).map_or(0, |at| cell.len() - at - 1)
 }
