@@ -12,8 +12,8 @@ import numpy as np
 import pandas as pd
 
 FOLDER = Path(sys.argv[1])
-# What workshop.rs asks for: decades and years of the uneven record.
-FIRST_YEAR, END_YEAR = -998_000, -40_000
+# What workshop.rs asks for: the decades and years that the uneven record covers.
+FIRST_YEAR, END_YEAR = -997_990, -40_000
 
 
 def load_years():
@@ -55,12 +55,10 @@ def means_of_the_line():
     times, values = UNEVEN_TIMES, UNEVEN_VALUES
     edges = np.arange(FIRST_YEAR, END_YEAR + 1, 10.0)
     integral = np.concatenate([[0.0], np.cumsum(0.5 * (values[1:] + values[:-1]) * np.diff(times))])
-    before = np.clip(np.searchsorted(times, edges, side="right") - 1, 0, len(times) - 2)
-    # Before the first point there is nothing to integrate; the mean is over what is covered.
-    inside = np.clip(edges, times[0], times[-1])
-    at_edge = np.interp(inside, times, values)
-    until = integral[before] + 0.5 * (values[before] + at_edge) * (inside - times[before])
-    return edges[:-1], np.diff(until) / np.diff(inside)
+    before = np.searchsorted(times, edges, side="right") - 1
+    at_edge = np.interp(edges, times, values)
+    until = integral[before] + 0.5 * (values[before] + at_edge) * (edges - times[before])
+    return edges[:-1], np.diff(until) / 10
 
 
 def line_at_years():

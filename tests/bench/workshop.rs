@@ -37,7 +37,7 @@ struct Task {
 
 const YEARS: &str = "years = load(\"years.csv\", unit: \"1\")\nyears";
 const UNEVEN: &str = "uneven = load(\"uneven.csv\", unit: \"1\")\nuneven";
-const DECADES: &str = "uneven |> on(998001 BCE..40002 BCE by 10 yr)";
+const DECADES: &str = "uneven |> on(997991 BCE..40002 BCE by 10 yr)";
 
 const TASKS: &[Task] = &[
     Task {
@@ -89,9 +89,9 @@ const TASKS: &[Task] = &[
         tolerance: Some(1e-9),
     },
     Task {
-        name: "1e6 uneven points to 958,000 years, linear",
+        name: "1e6 uneven points to 957,990 years, linear",
         before: UNEVEN,
-        cell: "uneven |> on(998001 BCE..40002 BCE by 1 yr, method: linear)",
+        cell: "uneven |> on(997991 BCE..40002 BCE by 1 yr, method: linear)",
         function: "line_at_years",
         using: "NumPy interp",
         tolerance: Some(1e-9),
