@@ -1,5 +1,6 @@
 //! Smoothing, trends, sums and rates along time.
 
+use std::borrow::Cow;
 use std::sync::Arc;
 
 use super::entry::{Body, Entry, Fails, Shows};
@@ -99,9 +100,9 @@ static SMOOTH: Entry = Entry {
 };
 
 /// The stretch of time that each value stands for: its step, or half way to the neighbouring instants.
-pub(super) fn cells(axis: &Axis) -> (Vec<f64>, Vec<f64>) {
+pub(super) fn cells(axis: &Axis) -> (Cow<'_, [f64]>, Cow<'_, [f64]>) {
     if axis.kind == AxisKind::Steps {
-        return (axis.starts().to_vec(), axis.ends().to_vec());
+        return (Cow::Borrowed(axis.starts()), Cow::Borrowed(axis.ends()));
     }
     let times = axis.starts();
     let between: Vec<f64> =

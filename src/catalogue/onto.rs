@@ -1,5 +1,6 @@
 //! Bringing series onto one axis: the clock in force, a record's own steps, or an axis asked for.
 
+use std::borrow::Cow;
 use std::sync::Arc;
 
 use super::call::{Context, Path, Stop};
@@ -71,21 +72,20 @@ pub(super) fn bring_by(
     axis: &Arc<Axis>,
     method: &'static str,
 ) -> Result<Block, Stop> {
-    let (starts, ends) = cells(&series.axis);
     let (times, at) = (series.axis.middles(), axis.middles());
-    let (target_starts, target_ends) = cells(axis);
     let nominal_gaps = if method == "mean" {
-        vec![false; at.len()]
+        Vec::new()
     } else {
         in_long_gaps(&times, series.values.member(0), &at, series.longest_gap_years)
     };
     let values = series.values.map_rows(axis.len(), |row, out| {
         // Gaps take no part in a line or a curve; one that is too long to bridge is put back afterwards.
-        let known = || times.iter().zip(row).filter(|(_, value)| !value.is_nan());
-        let (known_times, known): (Vec<f64>, Vec<f64>) =
-            (known().map(|(time, _)| *time).collect(), known().map(|(_, value)| *value).collect());
+        let (known_times, known) = without_gaps(&times, row);
         match method {
-            "mean" => smoothing::overlap_means(&starts, &ends, row, &target_starts, &target_ends, out),
+            "mean" => {
+                let ((starts, ends), (target_starts, target_ends)) = (cells(&series.axis), cells(axis));
+                smoothing::overlap_means(&starts, &ends, row, &target_starts, &target_ends, out);
+            }
             "linear" => smoothing::linear(&known_times, &known, &at, out),
             "monotone_cubic" => smoothing::monotone_cubic(&known_times, &known, &at, out),
             "nearest" => smoothing::nearest(&known_times, &known, &at, out),
@@ -122,10 +122,23 @@ pub(super) fn bring_by(
     Ok(values)
 }
 
-/// Which of the ascending times `at` lie in a gap that is longer than may be bridged.
+/// The values that are there, with their times.
+fn without_gaps<'a>(times: &'a [f64], values: &'a [f64]) -> (Cow<'a, [f64]>, Cow<'a, [f64]>) {
+    if !values.iter().any(|value| value.is_nan()) {
+        return (Cow::Borrowed(times), Cow::Borrowed(values));
+    }
+    let known = times.iter().zip(values).filter(|(_, value)| !value.is_nan());
+    let (times, values): (Vec<f64>, Vec<f64>) = known.unzip();
+    (Cow::Owned(times), Cow::Owned(values))
+}
+
+/// Which of the ascending times `at` lie in a gap that is longer than may be bridged; empty where there is no such gap.
 fn in_long_gaps(times: &[f64], values: &[f64], at: &[f64], longest_gap_years: f64) -> Vec<bool> {
-    let known: Vec<f64> =
-        times.iter().zip(values).filter(|(_, value)| !value.is_nan()).map(|(time, _)| *time).collect();
+    let (known, _) = without_gaps(times, values);
+    let is_long = |before: f64, after: f64| after - before > longest_gap_years * (1.0 + 1e-9);
+    if known.windows(2).all(|pair| !is_long(pair[0], pair[1])) {
+        return Vec::new();
+    }
     let mut place = 0;
     at.iter()
         .map(|at| {
@@ -133,9 +146,7 @@ fn in_long_gaps(times: &[f64], values: &[f64], at: &[f64], longest_gap_years: f6
                 place += 1;
             }
             let bounds = known.get(place).zip(known.get(place + 1));
-            bounds.is_some_and(|(before, after)| {
-                before < at && after - before > longest_gap_years * (1.0 + 1e-9)
-            })
+            bounds.is_some_and(|(before, after)| before < at && is_long(*before, *after))
         })
         .collect()
 }
@@ -174,6 +185,9 @@ fn words(series: &Series, name: &str, axis: &Axis, plan: &Plan, gaps: usize) -> 
 /// The longest stretch without values that is bridged although it is longer than the customary three median steps.
 fn longest_bridge(series: &Series) -> Option<(f64, f64)> {
     let customary = 3.0 * series.axis.median_step();
+    if series.longest_gap_years <= customary * 1.01 {
+        return None;
+    }
     let known =
         series.axis.middles().into_iter().zip(series.values.member(0)).filter(|(_, value)| !value.is_nan());
     let times: Vec<f64> = known.map(|(time, _)| time).collect();

@@ -96,11 +96,12 @@ fn load(call: &Call<'_>) -> Result<Value, Stop> {
         call.context.note(format!("{path}: {note}"));
     }
     let measure = loaded_measure(unit);
-    let values = ensemble_rows(&read.values, call.context.path());
+    let count = read.values.len();
+    let values = ensemble_rows(read.values, call.context.path());
     if pattern.is_some() && call.context.path() == Path::Nominal {
         call.context.note(format!(
             "{path}: an ensemble of {}; its mean is the nominal value, and drawn members take them in turn",
-            counted(read.values.len(), "members")
+            counted(count, "members")
         ));
     }
     let mut series = Series::new(axis.into(), values, measure, Standing::Own);
@@ -147,10 +148,10 @@ impl Columns {
 
 /// The mean of the members on the nominal path; in a block, member `i` of the session takes the file's member
 /// `i` modulo their number, so that two ensembles of one source stay paired.
-fn ensemble_rows(members: &[Vec<f64>], path: Path) -> Block {
+fn ensemble_rows(mut members: Vec<Vec<f64>>, path: Path) -> Block {
     let columns = members.first().map_or(0, Vec::len);
-    if let [only] = members {
-        return Block::row(only.clone());
+    if members.len() == 1 {
+        return Block::row(members.pop().unwrap_or_default());
     }
     match path {
         Path::Nominal => {

@@ -166,24 +166,22 @@ fn instant(era: Era, nominal: f64, spread: Option<&Spread>) -> String {
 
 fn series_line(series: &ShownSeries) -> String {
     let unit = after(&series.measure.unit);
-    let known: Vec<usize> = series
-        .nominal
-        .iter()
-        .enumerate()
-        .filter(|(_, value)| !value.is_nan())
-        .map(|(index, _)| index)
-        .collect();
+    let is_known = |value: &f64| !value.is_nan();
     let axis = series.axis.describe();
-    let (Some(first), Some(last)) = (known.first(), known.last()) else { return format!("{axis}: all gaps") };
-    let at = |index: &usize| series.nominal.get(*index).copied().unwrap_or(f64::NAN);
+    let (Some(first), Some(last)) =
+        (series.nominal.iter().position(is_known), series.nominal.iter().rposition(is_known))
+    else {
+        return format!("{axis}: all gaps");
+    };
+    let at = |index: usize| series.nominal.get(index).copied().unwrap_or(f64::NAN);
     let mut words = match &series.spread {
         None => format!("{axis}: first {}, last {}{unit}", plain(at(first)), plain(at(last))),
         Some(spread) => {
-            let ends = [first, last].map(|index| ranged(at(index), Some(spread), *index));
+            let ends = [first, last].map(|index| ranged(at(index), Some(spread), index));
             format!("{axis}: first {}, last {}{unit}", ends[0], ends[1])
         }
     };
-    let gaps = series.nominal.len() - known.len();
+    let gaps = series.nominal.iter().filter(|value| value.is_nan()).count();
     words += &kind(&series.measure);
     if gaps > 0 {
         words += &format!("; {gaps} {}", if gaps == 1 { "gap" } else { "gaps" });

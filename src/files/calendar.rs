@@ -55,37 +55,37 @@ pub(super) fn year_of_day(day_number: i64) -> f64 {
 /// Reads `2015-06`, `2015-06-15` and `2015-06-15T12:00:00Z`; digits are checked, the calendar is
 /// not.
 pub(super) fn parse_date(text: &str) -> Option<Date> {
-    let (date, time) = match text.split_once(['T', ' ']) {
-        Some((date, time)) => (date, Some(time)),
-        None => (text, None),
-    };
-    let mut parts = date.split('-');
-    let year = digits(parts.next()?, 4)?;
-    let month = digits(parts.next()?, 2)?;
-    let day = match parts.next() {
-        Some(day) => Some(digits(day, 2)?),
-        None => None,
-    };
-    if parts.next().is_some() || (time.is_some() && day.is_none()) {
-        return None;
+    let (year, rest) = digits(text.as_bytes(), 4)?;
+    let (month, rest) = digits(rest.strip_prefix(b"-")?, 2)?;
+    let mut date = Date { year, month, day: None, day_fraction: 0.0 };
+    if rest.is_empty() {
+        return Some(date);
     }
-    let day_fraction = match time {
-        Some(time) => time_of_day(time.trim())?,
-        None => 0.0,
-    };
-    Some(Date { year, month, day, day_fraction })
+    let (day, rest) = digits(rest.strip_prefix(b"-")?, 2)?;
+    date.day = Some(day);
+    if let Some((separator, time)) = rest.split_first() {
+        if !matches!(separator, b'T' | b' ') {
+            return None;
+        }
+        date.day_fraction = time_of_day(text.get(text.len() - time.len()..)?.trim())?;
+    }
+    Some(date)
 }
 
-fn digits(text: &str, length: usize) -> Option<i64> {
-    let all_digits = text.len() == length && text.bytes().all(|byte| byte.is_ascii_digit());
-    if all_digits { text.parse().ok() } else { None }
+/// A number of exactly so many digits, and what follows them.
+fn digits(bytes: &[u8], length: usize) -> Option<(i64, &[u8])> {
+    let (digits, rest) = bytes.split_at_checked(length)?;
+    let number = digits
+        .iter()
+        .try_fold(0, |number, byte| byte.is_ascii_digit().then(|| 10 * number + i64::from(byte - b'0')))?;
+    Some((number, rest))
 }
 
 fn time_of_day(text: &str) -> Option<f64> {
     let text = text.strip_suffix('Z').unwrap_or(text);
     let mut parts = text.split(':');
-    let hours = digits(parts.next()?, 2)?;
-    let minutes = digits(parts.next()?, 2)?;
+    let mut two_digits = || digits(parts.next()?.as_bytes(), 2).filter(|(_, rest)| rest.is_empty());
+    let ((hours, _), (minutes, _)) = (two_digits()?, two_digits()?);
     let seconds = match parts.next() {
         Some(seconds) => seconds.parse::<f64>().ok()?,
         None => 0.0,

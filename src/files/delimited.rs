@@ -1,7 +1,9 @@
 //! Bytes to a table of text cells: encoding, comments, delimiter, header, the shape of the rows.
 
-use super::text_layout::{comment_text, decode, find_delimiter, header_comments, newlines, newlines_in};
+use super::rows::{Cells, RowReader};
+use super::text_layout::{decode, find_delimiter, header_comments};
 use super::{FileFault, counted, quoted_names};
+use rayon::prelude::*;
 
 /// What the reader of a table is told beforehand.
 #[derive(Debug, Clone, Default, PartialEq, Eq)]
@@ -10,9 +12,9 @@ pub struct DelimitedOptions {
     pub decimal_comma: bool,
 }
 
-/// A table as text. Cells are kept in one buffer, trimmed of white space, row by row.
+/// A table as text, its cells trimmed of white space.
 #[derive(Debug, Clone)]
-pub struct DelimitedTable {
+pub struct DelimitedTable<'t> {
     /// The comment lines before, in and after the data, without `#` and surrounding white space.
     pub comments: Vec<String>,
     /// The columns in file order.
@@ -21,10 +23,10 @@ pub struct DelimitedTable {
     pub has_header: bool,
     /// What was decided while reading.
     pub notes: Vec<String>,
-    text: String,
-    cell_ends: Vec<usize>,
+    cells: Cells<'t>,
     row_width: usize,
-    row_lines: Vec<usize>,
+    /// The text is not longer than 2 GiB, and so are its lines.
+    row_lines: Vec<u32>,
 }
 
 /// The head of one column; its cells are in [`DelimitedTable::cell`].
@@ -51,7 +53,7 @@ impl TextColumn {
     }
 }
 
-impl DelimitedTable {
+impl DelimitedTable<'_> {
     /// How many rows of data there are.
     #[must_use]
     pub fn row_count(&self) -> usize {
@@ -61,7 +63,7 @@ impl DelimitedTable {
     /// The line of the file (from 1) on which a row begins; 0 for a row that does not exist.
     #[must_use]
     pub fn line_of_row(&self, row: usize) -> usize {
-        self.row_lines.get(row).copied().unwrap_or(0)
+        self.row_lines.get(row).map_or(0, |&line| line as usize)
     }
 
     /// The text of one cell, `""` when there is no such cell. `column` counts in `columns`.
@@ -72,15 +74,7 @@ impl DelimitedTable {
 
     /// The text of one cell by its place in the row.
     fn cell_at(&self, row: usize, offset: usize) -> &str {
-        let index = row * self.row_width + offset;
-        let start = match index.checked_sub(1) {
-            Some(before) => self.cell_ends.get(before).copied(),
-            None => Some(0),
-        };
-        match (start, self.cell_ends.get(index)) {
-            (Some(start), Some(&end)) => self.text.get(start..end).unwrap_or(""),
-            _ => "",
-        }
+        self.cells.get(row * self.row_width + offset)
     }
 
     /// Finds a column by its name or by its whole header.
@@ -140,7 +134,7 @@ impl DelimitedTable {
 ///
 /// # Errors
 /// No UTF-8, no data, a row of another length than the header (with its line).
-pub fn read_table(bytes: &[u8], options: &DelimitedOptions) -> Result<DelimitedTable, FileFault> {
+pub fn read_table<'t>(bytes: &'t [u8], options: &DelimitedOptions) -> Result<DelimitedTable<'t>, FileFault> {
     let text = decode(bytes)?;
     let mut notes = Vec::new();
     let mut comments = Vec::new();
@@ -159,66 +153,40 @@ pub fn read_table(bytes: &[u8], options: &DelimitedOptions) -> Result<DelimitedT
         _ => {}
     }
 
-    let mut rows = RowReader {
-        reader: csv::ReaderBuilder::new()
-            .has_headers(false)
-            .flexible(true)
-            .delimiter(delimiter)
-            .comment(Some(b'#'))
-            .from_reader(body.as_bytes()),
-        record: csv::ByteRecord::new(),
-        body,
-        cursor: 0,
-        line: 1 + newlines(&text[..body_start]),
-        comments: Vec::new(),
-        first_comment_line: 0,
-    };
+    let mut rows = RowReader::new(&text, body_start, delimiter)?;
     let Some(first_line) = rows.next_row()? else {
         return Err(FileFault::new("file-empty", "the file holds no data"));
     };
-    let first: Vec<String> =
-        rows.record.iter().map(|cell| String::from_utf8_lossy(cell).trim().to_owned()).collect();
+    let first: Vec<String> = rows.row().map(str::to_owned).collect();
     let has_header = !looks_like_data(&first);
-    let mut table = DelimitedTable {
-        comments,
-        columns: columns_from(&first, has_header),
-        has_header,
-        notes,
-        text: String::with_capacity(body.len()),
-        cell_ends: Vec::new(),
-        row_width: first.len(),
-        row_lines: Vec::new(),
-    };
+    let columns = columns_from(&first, has_header);
+    let parts = rows.rest_in_parts();
+    let mut body = Body { rows, lines: Vec::new(), empty_rows: 0 };
     if has_header {
-        table.comments.append(&mut rows.comments);
+        body.rows.drop_row();
     } else {
-        table.notes.push(format!(
+        notes.push(format!(
             "the first row (line {first_line}) is all numbers, so the columns have no names: they are {}",
-            quoted_names(table.columns.iter().map(|column| column.name.as_str()))
+            quoted_names(columns.iter().map(|column| column.name.as_str()))
         ));
-        table.push_row(&rows.record, first_line);
+        body.lines.push(first_line as u32);
     }
-    let mut empty_rows = 0;
-    let mut comments_inside = (0, 0);
-    while let Some(line) = rows.next_row()? {
-        if !rows.comments.is_empty() {
-            if table.row_count() > 0 {
-                if comments_inside.0 == 0 {
-                    comments_inside.1 = rows.first_comment_line;
-                }
-                comments_inside.0 += rows.comments.len();
-            }
-            table.comments.append(&mut rows.comments);
-        }
-        if rows.record.iter().all(|cell| cell.trim_ascii().is_empty()) {
-            empty_rows += 1;
-        } else if rows.record.len() == table.row_width {
-            table.push_row(&rows.record, line);
-        } else {
-            return Err(row_length_fault(&table, &rows, line, delimiter));
-        }
+    let parts: Vec<_> =
+        parts.into_par_iter().map(|rows| Body::read(rows, &columns, has_header, delimiter)).collect();
+    for part in parts {
+        body.append(part?);
     }
-    table.comments.append(&mut rows.comments);
+    let Body { mut rows, lines: row_lines, empty_rows } = body;
+    let is_inside = |line: usize| {
+        let beside = row_lines.first().zip(row_lines.last());
+        beside.is_some_and(|(first, last)| (*first as usize..*last as usize).contains(&line))
+    };
+    let inside: Vec<usize> =
+        rows.comments.iter().map(|comment| comment.0).filter(|line| is_inside(*line)).collect();
+    comments.extend(rows.comments.drain(..).map(|comment| comment.1));
+    let (row_width, found) = (first.len(), rows.found());
+    let cells = Cells::found(text, found);
+    let mut table = DelimitedTable { comments, columns, has_header, notes, cells, row_width, row_lines };
     if table.row_count() == 0 {
         let names = quoted_names(first.iter().map(String::as_str));
         return Err(FileFault::new(
@@ -230,12 +198,9 @@ pub fn read_table(bytes: &[u8], options: &DelimitedOptions) -> Result<DelimitedT
     if let Some(fault) = second_header(&table) {
         return Err(fault);
     }
-    if comments_inside.0 > 0 {
-        table.notes.push(format!(
-            "{} among the data rows skipped (first in line {})",
-            counted(comments_inside.0, "comment line"),
-            comments_inside.1
-        ));
+    if let Some(first) = inside.first() {
+        let lines = counted(inside.len(), "comment line");
+        table.notes.push(format!("{lines} among the data rows skipped (first in line {first})"));
     }
     if empty_rows > 0 {
         let rows = if empty_rows == 1 { "row" } else { "rows" };
@@ -245,19 +210,43 @@ pub fn read_table(bytes: &[u8], options: &DelimitedOptions) -> Result<DelimitedT
     Ok(table)
 }
 
-impl DelimitedTable {
-    fn push_row(&mut self, record: &csv::ByteRecord, line: usize) {
-        for cell in record {
-            // The whole file was checked as UTF-8 and the delimiter is ASCII, so nothing is ever
-            // lost here.
-            if let Ok(cell) = std::str::from_utf8(cell) {
-                self.text.push_str(cell.trim());
+/// Rows of data: their cells and comments, and the line of each.
+struct Body<'t> {
+    rows: RowReader<'t>,
+    lines: Vec<u32>,
+    empty_rows: usize,
+}
+
+impl<'t> Body<'t> {
+    /// Reads all rows, each of which must have a cell for each column or none with anything in it.
+    fn read(
+        rows: RowReader<'t>,
+        columns: &[TextColumn],
+        has_header: bool,
+        delimiter: u8,
+    ) -> Result<Self, FileFault> {
+        let mut body = Self { rows, lines: Vec::new(), empty_rows: 0 };
+        while let Some(line) = body.rows.next_row()? {
+            if body.rows.row_is_empty() {
+                body.rows.drop_row();
+                body.empty_rows += 1;
+            } else if body.rows.width() == columns.len() {
+                body.lines.push(line as u32);
+            } else {
+                return Err(row_length_fault(columns, has_header, &body.rows, line, delimiter));
             }
-            self.cell_ends.push(self.text.len());
         }
-        self.row_lines.push(line);
+        Ok(body)
     }
 
+    fn append(&mut self, part: Self) {
+        self.lines.extend(part.lines);
+        self.empty_rows += part.empty_rows;
+        self.rows.append(part.rows);
+    }
+}
+
+impl DelimitedTable<'_> {
     /// Spreadsheets end each row with delimiters: columns with neither name nor cell are no
     /// columns.
     fn drop_empty_columns(&mut self, headers: &[String]) {
@@ -275,71 +264,6 @@ impl DelimitedTable {
     }
 }
 
-/// The csv reader, with the true line of each record. Its own count is that of the first comment or
-/// blank line skipped before the record, so lines are counted here, on the text.
-struct RowReader<'a> {
-    reader: csv::Reader<&'a [u8]>,
-    record: csv::ByteRecord,
-    body: &'a str,
-    cursor: usize,
-    line: usize,
-    /// Comment lines skipped before the present record.
-    comments: Vec<String>,
-    first_comment_line: usize,
-}
-
-impl RowReader<'_> {
-    /// The text of the present record, its newline included.
-    fn row_text(&self) -> &str {
-        let end = usize::try_from(self.reader.position().byte()).unwrap_or(usize::MAX);
-        let end = end.min(self.body.len());
-        self.body.get(self.cursor..end).unwrap_or("")
-    }
-
-    /// The csv reader takes an open quote for a field that runs to the end of the file.
-    fn quote_is_open(&self) -> bool {
-        let is_last = self.reader.position().byte() >= self.body.len() as u64;
-        is_last && newlines(self.row_text().trim_end()) > 0 && self.row_text().matches('"').count() % 2 == 1
-    }
-
-    fn next_row(&mut self) -> Result<Option<usize>, FileFault> {
-        let from = usize::try_from(self.reader.position().byte()).unwrap_or(usize::MAX);
-        let more = self.reader.read_byte_record(&mut self.record);
-        let bytes = self.body.as_bytes();
-        let from = from.min(bytes.len());
-        self.line += newlines_in(&bytes[self.cursor..from]);
-        self.cursor = from;
-        while let Some(&byte) = bytes.get(self.cursor) {
-            if byte == b'#' {
-                let rest = &self.body[self.cursor..];
-                let length = rest.find('\n').unwrap_or(rest.len());
-                if self.comments.is_empty() {
-                    self.first_comment_line = self.line;
-                }
-                self.comments.push(comment_text(&rest[..length]));
-                self.cursor += length;
-            } else if byte == b'\n' || byte == b'\r' {
-                self.line += usize::from(byte == b'\n');
-                self.cursor += 1;
-            } else {
-                break;
-            }
-        }
-        match more {
-            Ok(true) if self.quote_is_open() => {
-                Err(FileFault::new("file-open-quote", "a quotation mark opened in this row is never closed")
-                    .at_line(self.line))
-            }
-            Ok(true) => Ok(Some(self.line)),
-            Ok(false) => Ok(None),
-            Err(error) => {
-                Err(FileFault::new("file-unreadable", format!("the row could not be read: {error}"))
-                    .at_line(self.line))
-            }
-        }
-    }
-}
-
 fn is_number_or_date(cell: &str) -> bool {
     let plain = cell.replace('−', "-").replace(',', ".");
     let starts_as_number = plain.starts_with(|c: char| c.is_ascii_digit() || "+-.".contains(c));
@@ -347,7 +271,7 @@ fn is_number_or_date(cell: &str) -> bool {
 }
 
 /// A first row of words alone above rows with numbers is a second line of names, or a line of units.
-fn second_header(table: &DelimitedTable) -> Option<FileFault> {
+fn second_header(table: &DelimitedTable<'_>) -> Option<FileFault> {
     let cells = |row: usize| (0..table.row_width).map(move |offset| table.cell_at(row, offset));
     let words: Vec<&str> = cells(0).filter(|cell| !super::numbers::is_missing_marker(cell)).collect();
     let only_words = !words.is_empty() && !cells(0).any(is_number_or_date);
@@ -408,19 +332,25 @@ fn split_unit(header: &str) -> (String, Option<String>) {
     (header.to_owned(), None)
 }
 
-fn row_length_fault(table: &DelimitedTable, rows: &RowReader<'_>, line: usize, delimiter: u8) -> FileFault {
-    let found = rows.record.len();
-    let expected = table.row_width;
-    let than = if table.has_header { "the header has" } else { "the first row has" };
+fn row_length_fault(
+    columns: &[TextColumn],
+    has_header: bool,
+    rows: &RowReader<'_>,
+    line: usize,
+    delimiter: u8,
+) -> FileFault {
+    let found = rows.width();
+    let expected = columns.len();
+    let than = if has_header { "the header has" } else { "the first row has" };
     let fault = FileFault::new(
         "file-row-length",
         format!("the row has {}, {than} {expected}", counted(found, "field")),
     )
     .at_line(line);
-    let first_header = table.columns.first().map_or("", |head| head.header.as_str());
+    let first_header = columns.first().map_or("", |head| head.header.as_str());
     if first_header.starts_with(['%', '!', '/', ';', '*']) {
         fault.help(format!("`{first_header}` was taken for the column names: comment lines begin with #"))
-    } else if newlines(rows.row_text().trim_end()) > 0 {
+    } else if rows.has_several_lines() {
         fault.help("a quotation mark is opened in this line and not closed in it")
     } else if delimiter == b',' && found > expected {
         fault.help(

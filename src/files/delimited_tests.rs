@@ -1,6 +1,6 @@
 use super::{DelimitedOptions, DelimitedTable, read_table};
 
-fn table(bytes: &[u8]) -> DelimitedTable {
+fn table(bytes: &[u8]) -> DelimitedTable<'_> {
     match read_table(bytes, &DelimitedOptions::default()) {
         Ok(table) => table,
         Err(fault) => panic!("{fault}"),
@@ -14,13 +14,13 @@ fn fault(bytes: &[u8]) -> String {
     }
 }
 
-fn cells(table: &DelimitedTable) -> Vec<Vec<&str>> {
+fn cells<'a>(table: &'a DelimitedTable<'_>) -> Vec<Vec<&'a str>> {
     (0..table.row_count())
         .map(|row| (0..table.columns.len()).map(|column| table.cell(row, column)).collect())
         .collect()
 }
 
-fn names(table: &DelimitedTable) -> Vec<&str> {
+fn names<'a>(table: &'a DelimitedTable<'_>) -> Vec<&'a str> {
     table.columns.iter().map(|column| column.name.as_str()).collect()
 }
 

@@ -3,7 +3,7 @@
 //! Nothing here opens a file, and nothing here knows units or eras beyond their text. Times leave
 //! on one axis: years CE, astronomical (1 BCE is year 0), as `f64`.
 //!
-//! Reading goes through four rooms, each using only those before it: `text_layout` and `delimited`
+//! Reading goes through four rooms, each using only those before it: `text_layout`, `rows` and `delimited`
 //! (bytes to cells), `numbers` (cells to numbers and gaps), `time_column`, `time_stamps`,
 //! `time_grid` and `time_axis` (which columns tell the time, and what steps or instants they mean),
 //! `month_layout` (a row a year, a column a month), `series` and
@@ -16,6 +16,7 @@ mod delimited_tests;
 mod event_times;
 mod month_layout;
 mod numbers;
+mod rows;
 mod series;
 #[cfg(test)]
 mod series_tests;

@@ -39,7 +39,7 @@ pub(super) struct Unfolded {
 impl MonthLayout {
     /// The layout, where twelve of the columns that tell no time are named by the twelve months and stand beside a
     /// column of years.
-    pub(super) fn find(table: &DelimitedTable, time: TimeColumns, candidates: &[usize]) -> Option<Self> {
+    pub(super) fn find(table: &DelimitedTable<'_>, time: TimeColumns, candidates: &[usize]) -> Option<Self> {
         let TimeColumns::Calendar { column: year, era: ReadEra::CommonEra } = time else { return None };
         let mut months = [usize::MAX; 12];
         let mut others = Vec::new();
@@ -55,7 +55,7 @@ impl MonthLayout {
     }
 
     /// What was decided, in words.
-    pub(super) fn note(&self, table: &DelimitedTable) -> String {
+    pub(super) fn note(&self, table: &DelimitedTable<'_>) -> String {
         let head = |column: usize| table.columns[column].header.as_str();
         let others = match self.others.as_slice() {
             [] => String::new(),
@@ -77,7 +77,7 @@ impl MonthLayout {
     /// name of its month.
     pub(super) fn unfold(
         &self,
-        table: &DelimitedTable,
+        table: &DelimitedTable<'_>,
         time: TimeColumns,
         options: &NumberOptions,
     ) -> Result<Unfolded, FileFault> {
@@ -101,7 +101,7 @@ impl MonthLayout {
         Ok(Unfolded { stamps, numbers })
     }
 
-    fn not_a_year(&self, table: &DelimitedTable, row: usize) -> FileFault {
+    fn not_a_year(&self, table: &DelimitedTable<'_>, row: usize) -> FileFault {
         FileFault::new(
             "file-time",
             format!(

@@ -40,6 +40,9 @@ pub(super) fn is_missing_marker(cell: &str) -> bool {
 /// Reads one number as it is written, without any missing marker: `3.14`, `3,14` when told, `−5`,
 /// `1e-3`.
 pub(super) fn parse_number(cell: &str, decimal_comma: bool) -> Option<f64> {
+    if let Some((number, _)) = short_number(cell, decimal_comma) {
+        return Some(number);
+    }
     let mut text = Cow::Borrowed(cell);
     if decimal_comma {
         if cell.contains('.') {
@@ -60,13 +63,51 @@ pub(super) fn parse_number(cell: &str, decimal_comma: bool) -> Option<f64> {
     sign_made_plain.parse::<f64>().ok().map(|number| -number)
 }
 
+/// The powers of ten up to the most digits that a [`short_number`] has.
+const POWERS_OF_TEN: [f64; 16] =
+    [1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15];
+
+/// Reads digits with a sign and a decimal mark, as nearly all numbers are written, at several times the speed of the
+/// standard library, and how many of them are decimals; `None` for what has another form or more than 15 digits.
+///
+/// It gives the same bits: the digits as a whole number and the power of ten are both exact, so that the one division
+/// rounds correctly (Clinger 1990, Proceedings of the ACM SIGPLAN 1990 Conference on Programming Language Design and
+/// Implementation, 92).
+pub(super) fn short_number(cell: &str, decimal_comma: bool) -> Option<(f64, usize)> {
+    let mark = if decimal_comma { b',' } else { b'.' };
+    let bytes = cell.as_bytes();
+    let digits = bytes.strip_prefix(b"-").unwrap_or(bytes);
+    if digits.len() > 16 {
+        return None;
+    }
+    let (mut whole, mut mark_at) = (0_u64, None);
+    for (at, &byte) in digits.iter().enumerate() {
+        if byte.is_ascii_digit() {
+            whole = 10 * whole + u64::from(byte - b'0');
+        } else if byte == mark && mark_at.is_none() {
+            mark_at = Some(at);
+        } else {
+            return None;
+        }
+    }
+    let (count, decimals) = match mark_at {
+        Some(at) => (digits.len() - 1, digits.len() - 1 - at),
+        None => (digits.len(), 0),
+    };
+    if count == 0 || count > 15 {
+        return None;
+    }
+    let size = whole as f64 / POWERS_OF_TEN.get(decimals)?;
+    Some((if digits.len() < bytes.len() { -size } else { size }, decimals))
+}
+
 struct GapKind {
     marker: String,
     count: usize,
     first_line: usize,
 }
 
-impl DelimitedTable {
+impl DelimitedTable<'_> {
     /// Reads a whole column as numbers. `column` counts in `columns`.
     ///
     /// # Errors
@@ -215,6 +256,17 @@ fn gap_note(name: &str, gaps: &[GapKind], gap_count: usize, row_count: usize) ->
 /// Says which values look like missing markers, and leaves them as they are.
 fn sentinel_notes(name: &str, values: &[f64]) -> Vec<String> {
     let is = |value: f64, sentinel: f64| (value - sentinel).abs() <= sentinel.abs() * 1e-12;
+    // NaN is passed over by both.
+    let (lowest, highest) = values.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), &value| {
+        (if value < low { value } else { low }, if value > high { value } else { high })
+    });
+    let in_reach = |sentinel: f64| {
+        let reach = sentinel.abs() * 1e-9;
+        lowest - reach <= sentinel && sentinel <= highest + reach
+    };
+    if !SENTINELS.into_iter().any(in_reach) {
+        return Vec::new();
+    }
     let mut counts = [0_usize; SENTINELS.len()];
     let (mut low, mut high) = (f64::INFINITY, f64::NEG_INFINITY);
     for &value in values.iter().filter(|value| !value.is_nan()) {
@@ -266,6 +318,17 @@ mod tests {
         match numbers(text, &[], false) {
             Ok(column) => format!("read as {:?}", column.values),
             Err(fault) => fault.to_string(),
+        }
+    }
+
+    proptest::proptest! {
+        #[test]
+        fn a_number_has_the_bits_that_the_standard_library_reads(
+            cell in "-?[0-9]{0,17}(\\.[0-9]{0,17})?", comma in proptest::bool::ANY,
+        ) {
+            let written = if comma { cell.replace('.', ",") } else { cell.clone() };
+            let bits = |number: Option<f64>| number.map(f64::to_bits);
+            proptest::prop_assert_eq!(bits(parse_number(&written, comma)), bits(cell.parse().ok()));
         }
     }
 

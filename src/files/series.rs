@@ -3,10 +3,11 @@
 use super::delimited::{DelimitedOptions, DelimitedTable, read_table};
 use super::month_layout::MonthLayout;
 use super::numbers::NumberOptions;
-use super::time_axis::{Axis, AxisForm, axis_from};
+use super::time_axis::{AxisForm, axis_from};
 use super::time_column::{ReadEra, TimeChoice, TimeColumns, choose_time};
 use super::time_stamps::read_stamps;
 use super::{FileFault, quoted_names};
+use rayon::prelude::*;
 
 /// What the reader of a series is told beforehand. The default finds everything out.
 #[derive(Debug, Clone, Default, PartialEq, Eq)]
@@ -23,14 +24,14 @@ pub struct SeriesOptions {
     pub decimal_comma: bool,
 }
 
-/// A series as read. The three lists are of one length, at least 1.
+/// A series as read. Starts and values are of one length, at least 1.
 #[derive(Debug, Clone)]
 pub struct ReadSeries {
     /// Whether the values are means over steps or values at instants.
     pub form: AxisForm,
     /// Years CE, astronomical, strictly ascending: starts of the steps, or the instants.
     pub starts: Vec<f64>,
-    /// Ends of the steps, never past the next start; equal to `starts` for instants.
+    /// Ends of the steps, one for each and never past the next start; none for instants.
     pub ends: Vec<f64>,
     /// NaN for a gap; never infinite.
     pub values: Vec<f64>,
@@ -134,14 +135,14 @@ pub fn read_ensemble(
 type Chosen = Result<Vec<usize>, FileFault>;
 
 /// A file taken apart into cells, with its time columns chosen.
-struct Opened {
-    table: DelimitedTable,
+struct Opened<'t> {
+    table: DelimitedTable<'t>,
     time: TimeChoice,
     notes: Vec<String>,
 }
 
-impl Opened {
-    fn new(bytes: &[u8], options: &SeriesOptions) -> Result<Self, FileFault> {
+impl<'t> Opened<'t> {
+    fn new(bytes: &'t [u8], options: &SeriesOptions) -> Result<Self, FileFault> {
         let table = read_table(bytes, &DelimitedOptions { decimal_comma: options.decimal_comma })?;
         let time = choose_time(&table, options.time.as_deref())?;
         let notes = table.notes.iter().chain(&time.notes).cloned().collect();
@@ -168,7 +169,7 @@ impl Opened {
 
 /// A row a year with a column for each month, as one series of months.
 fn read_month_columns(
-    opened: Opened,
+    opened: Opened<'_>,
     layout: &MonthLayout,
     options: &SeriesOptions,
 ) -> Result<ReadEnsemble, FileFault> {
@@ -182,7 +183,7 @@ fn read_month_columns(
     notes.extend(axis.notes.iter().cloned());
     notes.extend(unfolded.numbers.notes);
     Ok(ReadEnsemble {
-        values: vec![on_axis(&axis, &unfolded.numbers.values)],
+        values: vec![axis.place(unfolded.numbers.values)],
         form: axis.form,
         starts: axis.starts,
         ends: axis.ends,
@@ -195,9 +196,9 @@ fn read_month_columns(
 }
 
 fn read_columns(
-    opened: Opened,
+    opened: Opened<'_>,
     options: &SeriesOptions,
-    choose: impl Fn(&DelimitedTable, &[usize], &SeriesOptions, &mut Vec<String>) -> Chosen,
+    choose: impl Fn(&DelimitedTable<'_>, &[usize], &SeriesOptions, &mut Vec<String>) -> Chosen,
 ) -> Result<ReadEnsemble, FileFault> {
     let decimal_comma = options.decimal_comma;
     let candidates = opened.candidates();
@@ -212,14 +213,19 @@ fn read_columns(
         TimeColumns::Ages { column, scale } => (scale.era, &table.columns[column].header),
         TimeColumns::Layers { top, scale, .. } => (scale.era, &table.columns[top].header),
     };
-    let axis = axis_from(read_stamps(&table, time.columns, decimal_comma)?, time_name, options.form)?;
-    notes.extend(axis.notes.iter().cloned());
     let number_options = NumberOptions { missing: options.missing.clone(), decimal_comma };
+    // Times and columns are read at the same time; of several faults, the first in this order is told.
+    let (axis, columns) = rayon::join(
+        || axis_from(read_stamps(&table, time.columns, decimal_comma)?, time_name, options.form),
+        || -> Vec<_> { chosen.par_iter().map(|&column| table.numbers(column, &number_options)).collect() },
+    );
+    let axis = axis?;
+    notes.extend(axis.notes.iter().cloned());
     let mut values = Vec::with_capacity(chosen.len());
-    for &column in &chosen {
-        let read = table.numbers(column, &number_options)?;
+    for read in columns {
+        let read = read?;
         notes.extend(read.notes);
-        values.push(on_axis(&axis, &read.values));
+        values.push(axis.place(read.values));
     }
     Ok(ReadEnsemble {
         form: axis.form,
@@ -234,18 +240,13 @@ fn read_columns(
     })
 }
 
-fn on_axis(axis: &Axis, by_row: &[f64]) -> Vec<f64> {
-    let value = |row: &Option<usize>| row.and_then(|row| by_row.get(row)).copied().unwrap_or(f64::NAN);
-    axis.rows.iter().map(value).collect()
-}
-
-fn headers(table: &DelimitedTable, columns: &[usize]) -> String {
+fn headers(table: &DelimitedTable<'_>, columns: &[usize]) -> String {
     quoted_names(columns.iter().map(|&column| table.columns[column].header.as_str()))
 }
 
 /// The value column: the one named, the only one, or the one called `value`.
 fn value_column(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     candidates: &[usize],
     options: &SeriesOptions,
     notes: &mut Vec<String>,
@@ -300,7 +301,7 @@ fn value_column(
 /// The unit of the chosen columns: from their headers, or from a comment where there is one value
 /// column.
 fn unit_of(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     chosen: &[usize],
     only_value_column: bool,
     notes: &mut Vec<String>,

@@ -3,8 +3,8 @@
 use super::FileFault;
 use std::borrow::Cow;
 
-pub(super) fn newlines_in(bytes: &[u8]) -> usize {
-    bytes.iter().filter(|&&byte| byte == b'\n').count()
+fn newlines_in(bytes: &[u8]) -> usize {
+    memchr::memchr_iter(b'\n', bytes).count()
 }
 
 pub(super) fn newlines(text: &str) -> usize {
@@ -44,14 +44,14 @@ pub(super) fn decode(bytes: &[u8]) -> Result<Cow<'_, str>, FileFault> {
         .at_line(newlines_in(before) + 1)
     })?;
     let bytes = text.as_bytes();
-    let lone_return = (0..bytes.len()).any(|i| bytes[i] == b'\r' && bytes.get(i + 1) != Some(&b'\n'));
+    let lone_return = memchr::memchr_iter(b'\r', bytes).any(|at| bytes.get(at + 1) != Some(&b'\n'));
     if lone_return {
         return Ok(Cow::Owned(text.replace("\r\n", "\n").replace('\r', "\n")));
     }
     Ok(Cow::Borrowed(text))
 }
 
-/// Collects the comments that open the file and returns where they end. Unlike the csv reader it
+/// Collects the comments that open the file and returns where they end. Unlike the reader of rows it
 /// also takes an indented `#`, and one that a spreadsheet has put into quotes because of a comma in
 /// the comment.
 pub(super) fn header_comments(text: &str, comments: &mut Vec<String>) -> usize {

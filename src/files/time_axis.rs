@@ -20,8 +20,10 @@ pub(super) struct Axis {
     pub(super) form: AxisForm,
     pub(super) starts: Vec<f64>,
     pub(super) ends: Vec<f64>,
-    /// The row of the file for each time; `None` where a missing step was filled in.
-    pub(super) rows: Vec<Option<usize>>,
+    /// Places of the steps that have no row in the file and were filled in, ascending.
+    pub(super) filled: Vec<usize>,
+    /// The rows of the file run from the last time to the first.
+    pub(super) reversed: bool,
     pub(super) notes: Vec<String>,
 }
 
@@ -36,21 +38,40 @@ pub(super) fn axis_from(
 ) -> Result<Axis, FileFault> {
     let reversed = ordered.reversed;
     let builder = Builder { name, form };
-    let mut axis = match &ordered.stamps {
-        Stamps::Years { years, decimals } => builder.years(years, *decimals),
-        Stamps::Months(months) => builder.labels(months, 12, "month"),
-        Stamps::Dates(dates) => builder.dates(dates),
+    let mut axis = match ordered.stamps {
+        Stamps::Years { years, decimals } => builder.years(years, decimals),
+        Stamps::Months(months) => builder.labels(&months, 12, "month"),
+        Stamps::Dates(dates) => builder.dates(&dates),
         Stamps::Ages(years) => builder.ages(years),
-        Stamps::Layers(layers) => Ok(builder.layers(layers)),
+        Stamps::Layers(layers) => Ok(builder.layers(&layers)),
     }?;
-    if reversed {
-        let last = axis.rows.iter().flatten().count().saturating_sub(1);
-        for row in axis.rows.iter_mut().flatten() {
-            *row = last - *row;
-        }
-    }
+    axis.reversed = reversed;
     axis.notes.splice(0..0, ordered.notes);
     Ok(axis)
+}
+
+impl Axis {
+    /// Steps from `starts` to `ends`, a row of the file for each.
+    fn steps(starts: Vec<f64>, ends: Vec<f64>) -> Self {
+        Self { form: AxisForm::Steps, starts, ends, filled: Vec::new(), reversed: false, notes: Vec::new() }
+    }
+
+    /// Brings the values of the rows of the file onto the axis; a step that was filled in is a gap.
+    pub(super) fn place(&self, mut by_row: Vec<f64>) -> Vec<f64> {
+        if self.reversed {
+            by_row.reverse();
+        }
+        if self.filled.is_empty() {
+            return by_row;
+        }
+        let (mut rows, mut filled) = (by_row.into_iter(), self.filled.iter().peekable());
+        (0..self.starts.len())
+            .map(|place| match filled.next_if_eq(&&place) {
+                Some(_) => f64::NAN,
+                None => rows.next().unwrap_or(f64::NAN),
+            })
+            .collect()
+    }
 }
 
 struct Builder<'a> {
@@ -59,7 +80,7 @@ struct Builder<'a> {
 }
 
 impl Builder<'_> {
-    fn years(&self, years: &[f64], decimals: usize) -> Result<Axis, FileFault> {
+    fn years(&self, years: Vec<f64>, decimals: usize) -> Result<Axis, FileFault> {
         if years.iter().all(|year| year.fract().abs() <= 0.0 && year.abs() < 1e15) {
             let labels: Vec<i64> = years.iter().map(|&year| year as i64).collect();
             let mut axis = self.labels(&labels, 1, "year")?;
@@ -74,7 +95,7 @@ impl Builder<'_> {
         }
         let resolution = 10_f64.powi(-i32::try_from(decimals).unwrap_or(12).min(12));
         if years.len() > 1
-            && let Some((grid, indices)) = decimal_grid(years, resolution)
+            && let Some((grid, indices)) = decimal_grid(&years, resolution)
         {
             let stamped = match grid {
                 Grid::PartsOfYear(1) => "decimal years at mid-year: ",
@@ -86,18 +107,15 @@ impl Builder<'_> {
             return Ok(self.on_grid(grid, &indices, stamped));
         }
         if self.form == Some(AxisForm::Steps) {
-            return self.regular_steps(years, resolution, true);
+            return self.regular_steps(&years, resolution, true);
         }
-        let what = match regular_spacing(years, resolution) {
+        let what = match regular_spacing(&years, resolution) {
             Some(_) if years.len() > 2 => "regular but not at the middle of years, quarters, months or days",
             Some(_) | None => "on no regular grid",
         };
-        let mut axis = instants(years.to_vec());
-        axis.notes.push(format!(
-            "{}: {} {what}, read as instants",
-            self.name,
-            counted(years.len(), "decimal year")
-        ));
+        let count = counted(years.len(), "decimal year");
+        let mut axis = instants(years);
+        axis.notes.push(format!("{}: {count} {what}, read as instants", self.name));
         Ok(axis)
     }
 
@@ -180,15 +198,15 @@ impl Builder<'_> {
         Ok(axis)
     }
 
-    fn ages(&self, years: &[f64]) -> Result<Axis, FileFault> {
+    fn ages(&self, years: Vec<f64>) -> Result<Axis, FileFault> {
         if self.form == Some(AxisForm::Steps) {
-            return self.regular_steps(years, 1e-6, false);
+            return self.regular_steps(&years, 1e-6, false);
         }
-        let mut axis = instants(years.to_vec());
+        let count = counted(years.len(), "age");
+        let mut axis = instants(years);
         axis.notes.push(format!(
-            "{}: {}, read as instants; age_top and age_bottom would make steps",
-            self.name,
-            counted(years.len(), "age")
+            "{}: {count}, read as instants; age_top and age_bottom would make steps",
+            self.name
         ));
         Ok(axis)
     }
@@ -200,13 +218,10 @@ impl Builder<'_> {
             axis.notes.push(format!("{count} read as instants at mid-layer, because as: instants says so"));
             return axis;
         }
-        let mut axis = Axis {
-            form: AxisForm::Steps,
-            starts: layers.iter().map(|layer| layer.0).collect(),
-            ends: layers.iter().map(|layer| layer.1).collect(),
-            rows: (0..layers.len()).map(Some).collect(),
-            notes: Vec::new(),
-        };
+        let mut axis = Axis::steps(
+            layers.iter().map(|layer| layer.0).collect(),
+            layers.iter().map(|layer| layer.1).collect(),
+        );
         let mut holes = 0;
         for index in 1..layers.len() {
             let apart = axis.starts[index] - axis.ends[index - 1];
@@ -240,7 +255,7 @@ impl Builder<'_> {
             return axis;
         }
         let mut axis = filled_steps(grid, indices);
-        let filled = axis.rows.len() - count;
+        let filled = axis.filled.len();
         let example = label(grid, indices[count / 2]);
         let decision = format!(
             "read as steps (the value of {example} is the mean over {example}); as: instants overrides"
@@ -250,14 +265,18 @@ impl Builder<'_> {
         } else if filled == 0 {
             format!("{}: {stamped}{count} consecutive {step}s, {decision}", self.name)
         } else {
-            let first = axis.rows.iter().position(Option::is_none).unwrap_or(0);
+            let first = axis.filled.first().copied().unwrap_or(0);
             let first_missing = label(grid, indices[0] + i64::try_from(first).unwrap_or(0));
             let become_gaps = if filled == 1 {
                 format!("1 has no row ({first_missing}) and becomes a gap")
             } else {
                 format!("{filled} have no row (first {first_missing}) and become gaps")
             };
-            format!("{}: {stamped}{} {step}s of which {become_gaps}, {decision}", self.name, axis.rows.len())
+            format!(
+                "{}: {stamped}{} {step}s of which {become_gaps}, {decision}",
+                self.name,
+                axis.starts.len()
+            )
         });
         axis
     }
@@ -278,18 +297,14 @@ impl Builder<'_> {
             (years[0] - step_years / 2.0, "around")
         };
         let edge = |index: usize| first + index as f64 * step_years;
-        Ok(Axis {
-            form: AxisForm::Steps,
-            starts: (0..years.len()).map(edge).collect(),
-            ends: (1..=years.len()).map(edge).collect(),
-            rows: (0..years.len()).map(Some).collect(),
-            notes: vec![format!(
-                "{}: {} read as steps of {step_years} yr {how} the times given, because as: steps says \
-                 so",
-                self.name,
-                counted(years.len(), "time")
-            )],
-        })
+        let mut axis =
+            Axis::steps((0..years.len()).map(edge).collect(), (1..=years.len()).map(edge).collect());
+        axis.notes.push(format!(
+            "{}: {} read as steps of {step_years} yr {how} the times given, because as: steps says so",
+            self.name,
+            counted(years.len(), "time")
+        ));
+        Ok(axis)
     }
 
     fn no_step_length(&self) -> FileFault {
@@ -302,32 +317,22 @@ impl Builder<'_> {
 }
 
 fn instants(times: Vec<f64>) -> Axis {
-    Axis {
-        form: AxisForm::Instants,
-        ends: times.clone(),
-        rows: (0..times.len()).map(Some).collect(),
-        starts: times,
-        notes: Vec::new(),
-    }
+    Axis { form: AxisForm::Instants, ..Axis::steps(times, Vec::new()) }
 }
 
 /// Steps from the first to the last index; those without a row are filled in.
 fn filled_steps(grid: Grid, indices: &[i64]) -> Axis {
-    let mut axis = Axis {
-        form: AxisForm::Steps,
-        starts: Vec::new(),
-        ends: Vec::new(),
-        rows: Vec::new(),
-        notes: Vec::new(),
-    };
+    let mut axis = Axis::steps(Vec::with_capacity(indices.len()), Vec::with_capacity(indices.len()));
     let mut end = indices.first().map_or(0.0, |&first| grid.edge(first));
     let mut next = indices.first().copied().unwrap_or(0);
-    for (row, &index) in indices.iter().enumerate() {
+    for &index in indices {
         while next <= index {
+            if next < index {
+                axis.filled.push(axis.starts.len());
+            }
             axis.starts.push(end);
             end = grid.edge(next + 1);
             axis.ends.push(end);
-            axis.rows.push((next == index).then_some(row));
             next += 1;
         }
     }
@@ -336,13 +341,10 @@ fn filled_steps(grid: Grid, indices: &[i64]) -> Axis {
 
 /// One step for each index, and nothing in between.
 fn separate_steps(grid: Grid, indices: &[i64]) -> Axis {
-    Axis {
-        form: AxisForm::Steps,
-        starts: indices.iter().map(|&index| grid.edge(index)).collect(),
-        ends: indices.iter().map(|&index| grid.edge(index + 1)).collect(),
-        rows: (0..indices.len()).map(Some).collect(),
-        notes: Vec::new(),
-    }
+    Axis::steps(
+        indices.iter().map(|&index| grid.edge(index)).collect(),
+        indices.iter().map(|&index| grid.edge(index + 1)).collect(),
+    )
 }
 
 fn even_spacing(labels: &[i64]) -> Option<i64> {

@@ -93,7 +93,7 @@ const UNDERSTOOD_TIMES: &str = "name the time column `year`, `date`, `time`, `de
     (ka)`; or say time: \"the name\"";
 
 /// Chooses the time columns by the name that was asked for, or by their names.
-pub(super) fn choose_time(table: &DelimitedTable, wanted: Option<&str>) -> Result<TimeChoice, FileFault> {
+pub(super) fn choose_time(table: &DelimitedTable<'_>, wanted: Option<&str>) -> Result<TimeChoice, FileFault> {
     let mut roles: Vec<Role> = table.columns.iter().map(role_of).collect();
     let mut notes = Vec::new();
     let mut first = None;
@@ -191,7 +191,7 @@ pub(super) fn time_of_header(
 
 /// The column to begin with when none was named: a date before a year, a decimal year before other
 /// calendars unless a `month` column stands by, then layers, then ages.
-fn find_first(table: &DelimitedTable, roles: &[Role]) -> Result<usize, FileFault> {
+fn find_first(table: &DelimitedTable<'_>, roles: &[Role]) -> Result<usize, FileFault> {
     let has_month = roles.contains(&Role::Month);
     let rank = |column: usize| -> Option<usize> {
         match &roles[column] {
@@ -229,7 +229,7 @@ fn find_first(table: &DelimitedTable, roles: &[Role]) -> Result<usize, FileFault
 }
 
 /// The time columns that belong with `column`.
-fn around(table: &DelimitedTable, roles: &[Role], column: usize) -> Result<TimeColumns, FileFault> {
+fn around(table: &DelimitedTable<'_>, roles: &[Role], column: usize) -> Result<TimeColumns, FileFault> {
     let position = |wanted: fn(&Role) -> bool| roles.iter().position(wanted);
     let header = &table.columns[column].header;
     match &roles[column] {

@@ -1,7 +1,7 @@
 //! Time cells to stamps (years, months, dates, ages), in ascending order.
 
 use super::calendar::{Date, days_before_month, days_before_year, days_in_month, parse_date};
-use super::numbers::parse_number;
+use super::numbers::{parse_number, short_number};
 use super::time_column::{AgeScale, ReadEra, TimeColumns};
 use super::{DelimitedTable, FileFault};
 
@@ -34,7 +34,7 @@ pub(super) struct OrderedStamps {
 /// # Errors
 /// A time that cannot be read, a time that occurs twice, rows in no order.
 pub(super) fn read_stamps(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     columns: TimeColumns,
     decimal_comma: bool,
 ) -> Result<OrderedStamps, FileFault> {
@@ -86,7 +86,7 @@ pub(super) fn read_stamps(
 
 /// Turns descending stamps round; says whether it did.
 fn put_in_order<T>(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     name: &str,
     shown: &dyn Fn(usize) -> String,
     stamps: &mut [T],
@@ -113,7 +113,7 @@ fn put_in_order<T>(
 /// A time that occurs twice anywhere is the likelier cause of a break in the order, and is named
 /// first.
 fn out_of_order<T>(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     name: &str,
     shown: &dyn Fn(usize) -> String,
     stamps: &[T],
@@ -157,7 +157,7 @@ fn out_of_order<T>(
 }
 
 fn check_layers_apart(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     layers: &[(f64, f64)],
     reversed: bool,
 ) -> Result<(), FileFault> {
@@ -181,7 +181,7 @@ fn check_layers_apart(
 }
 
 struct CellReader<'a> {
-    table: &'a DelimitedTable,
+    table: &'a DelimitedTable<'a>,
     decimal_comma: bool,
 }
 
@@ -192,7 +192,11 @@ impl CellReader<'_> {
     }
 
     fn number(&self, row: usize, column: usize) -> Result<f64, FileFault> {
-        let cell = self.table.cell(row, column);
+        self.number_in(self.table.cell(row, column), row, column)
+    }
+
+    /// The number in a cell that was already looked up.
+    fn number_in(&self, cell: &str, row: usize, column: usize) -> Result<f64, FileFault> {
         match parse_number(cell, self.decimal_comma) {
             Some(number) if number.is_finite() => Ok(number),
             Some(_) | None if super::numbers::is_missing_marker(cell) => Err(self
@@ -240,6 +244,15 @@ impl CellReader<'_> {
         Ok(Stamps::Layers((0..self.table.row_count()).map(read).collect::<Result<_, FileFault>>()?))
     }
 
+    /// A year; what looks like a date instead is told how to be written.
+    fn year(&self, cell: &str, row: usize, column: usize) -> Result<f64, FileFault> {
+        self.number_in(cell, row, column).map_err(|fault| {
+            let numeric = cell.starts_with(|c: char| c.is_ascii_digit());
+            let date_like = !numeric || cell.contains(['/', '-', '.']);
+            if fault.code == "file-not-a-number" && date_like { fault.help(DATE_HELP) } else { fault }
+        })
+    }
+
     /// Years or dates: the first cell tells which, and the others must follow.
     fn calendar(&self, column: usize, era: ReadEra, notes: &mut Vec<String>) -> Result<Stamps, FileFault> {
         let table = self.table;
@@ -269,12 +282,11 @@ impl CellReader<'_> {
         let mut years = Vec::with_capacity(table.row_count());
         for row in 0..table.row_count() {
             let cell = table.cell(row, column);
-            let year = self.number(row, column).map_err(|fault| {
-                let numeric = cell.starts_with(|c: char| c.is_ascii_digit());
-                let date_like = !numeric || cell.contains(['/', '-', '.']);
-                if fault.code == "file-not-a-number" && date_like { fault.help(DATE_HELP) } else { fault }
-            })?;
-            decimals = decimals.max(printed_decimals(cell));
+            let (year, printed) = match short_number(cell, self.decimal_comma) {
+                Some(number) => number,
+                None => (self.year(cell, row, column)?, printed_decimals(cell)),
+            };
+            decimals = decimals.max(printed);
             years.push(if era == ReadEra::BeforeCommonEra { 1.0 - year } else { year });
         }
         if years.iter().all(|&year| looks_like_year_and_month(year)) {

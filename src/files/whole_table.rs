@@ -59,7 +59,7 @@ pub fn read_whole_table(bytes: &[u8], options: &NumberOptions) -> Result<ReadTab
 
 /// The words of a column; where most of them are numbers, it is said which one is not.
 fn words(
-    table: &DelimitedTable,
+    table: &DelimitedTable<'_>,
     column: usize,
     options: &NumberOptions,
     fault: &FileFault,

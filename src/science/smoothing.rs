@@ -1,6 +1,8 @@
 //! Smoothing, sums and differences along time. Values stand on cells (starts and ends in years, ascending, without
 //! overlap); gaps are NaN.
 
+use rayon::prelude::*;
+
 use crate::base::{Cancellation, Cancelled};
 
 /// What happens where the window reaches past the record.
@@ -22,7 +24,8 @@ const GAUSSIAN_REACH: f64 = 4.0;
 /// middle of each cell, so that a cell counts by the part of it inside.
 ///
 /// Of the part of the window inside the record, two thirds must have values. Time grows with the number of cells, not
-/// with the width: the sum slides, and starts afresh every 4096 cells so that rounding does not build up.
+/// with the width: the sum slides, and starts afresh with every [`BLOCK`] so that rounding does not build up. Blocks
+/// know nothing of each other, and give the same bits for any number of threads.
 pub fn running_mean(
     starts: &[f64],
     ends: &[f64],
@@ -31,43 +34,64 @@ pub fn running_mean(
     at_ends: Ends,
     out: &mut [f64],
 ) {
-    let Some((first, last)) = starts.first().zip(ends.last()) else { return };
-    let slack = 1e-9 * width_years.max(1.0);
-    let half = 0.5 * width_years;
-    let (mut low, mut high) = (0usize, 0usize);
-    let mut sums = Sums::default();
-    for (index, target) in out.iter_mut().enumerate().take(values.len()) {
-        let middle = 0.5 * (starts[index] + ends[index]);
-        let (from, to) = (middle - half, middle + half);
+    let count = values.len().min(out.len());
+    let window = Window { starts, ends, values, width_years, at_ends };
+    out[..count]
+        .par_chunks_mut(BLOCK)
+        .enumerate()
+        .for_each(|(block, targets)| window.running_means(block * BLOCK, targets));
+}
+
+/// So many cells are smoothed with one sum that slides.
+const BLOCK: usize = 4096;
+
+/// A window of one width that moves along a record.
+struct Window<'record> {
+    starts: &'record [f64],
+    ends: &'record [f64],
+    values: &'record [f64],
+    width_years: f64,
+    at_ends: Ends,
+}
+
+impl Window<'_> {
+    /// The means about the cells from `begin` on.
+    fn running_means(&self, begin: usize, out: &mut [f64]) {
+        let Self { starts, ends, values, width_years, at_ends } = *self;
+        let Some((first, last)) = starts.first().zip(ends.last()) else { return };
+        let slack = 1e-9 * width_years.max(1.0);
+        let half = 0.5 * width_years;
+        let middle = |index: usize| 0.5 * (starts[index] + ends[index]);
         // Whole cells inside the window are low..high.
-        if index % 4096 == 0 {
-            sums = Sums::default();
-            low = starts.partition_point(|start| *start < from - slack);
-            high = low;
+        let mut low = starts.partition_point(|start| *start < middle(begin) - half - slack);
+        let mut high = low;
+        let mut sums = Sums::default();
+        for (index, target) in (begin..).zip(out) {
+            let (from, to) = (middle(index) - half, middle(index) + half);
+            while high < values.len() && ends[high] <= to + slack {
+                sums.add(values[high], ends[high] - starts[high], 1.0);
+                high += 1;
+            }
+            while low < high && starts[low] < from - slack {
+                sums.add(values[low], ends[low] - starts[low], -1.0);
+                low += 1;
+            }
+            let mut total = sums;
+            if low > 0 && ends[low - 1] > from + slack {
+                total.add(values[low - 1], (ends[low - 1] - from).min(width_years), 1.0);
+            }
+            if high < values.len() && starts[high] < to - slack && high + 1 > low {
+                total.add(values[high], to - starts[high].max(from), 1.0);
+            }
+            let outside = from < first - slack || to > last + slack;
+            let inside = to.min(*last) - from.max(*first);
+            let covered = total.weight >= LEAST_COVERAGE * inside - slack;
+            *target = if (outside && at_ends == Ends::Gap) || !covered || total.weight <= slack {
+                f64::NAN
+            } else {
+                total.sum / total.weight
+            };
         }
-        while high < values.len() && ends[high] <= to + slack {
-            sums.add(values[high], ends[high] - starts[high], 1.0);
-            high += 1;
-        }
-        while low < high && starts[low] < from - slack {
-            sums.add(values[low], ends[low] - starts[low], -1.0);
-            low += 1;
-        }
-        let mut total = sums;
-        if low > 0 && ends[low - 1] > from + slack {
-            total.add(values[low - 1], (ends[low - 1] - from).min(width_years), 1.0);
-        }
-        if high < values.len() && starts[high] < to - slack && high + 1 > low {
-            total.add(values[high], to - starts[high].max(from), 1.0);
-        }
-        let outside = from < first - slack || to > last + slack;
-        let inside = to.min(*last) - from.max(*first);
-        let covered = total.weight >= LEAST_COVERAGE * inside - slack;
-        *target = if (outside && at_ends == Ends::Gap) || !covered || total.weight <= slack {
-            f64::NAN
-        } else {
-            total.sum / total.weight
-        };
     }
 }
 
@@ -251,10 +275,13 @@ fn end_slope(near_step: f64, far_step: f64, near: f64, far: f64) -> f64 {
     }
 }
 
-/// The straight line between neighbours, read at `at`; NaN outside the record.
+/// The straight line between neighbours, read at `at`, which ascends; NaN outside the record.
 pub fn linear(times: &[f64], values: &[f64], at: &[f64], out: &mut [f64]) {
+    let mut after = 0;
     for (target, time) in out.iter_mut().zip(at) {
-        let after = times.partition_point(|other| other < time);
+        while after < times.len() && times[after] < *time {
+            after += 1;
+        }
         *target = if after >= times.len() || (after == 0 && times[0] > *time) {
             f64::NAN
         } else if after == 0 || (times[after] - time).abs() <= 0.0 {
@@ -292,10 +319,13 @@ pub fn overlap_means(
     }
 }
 
-/// The value nearest in time, the earlier of two as near; NaN outside the record.
+/// The value nearest in time to each of `at`, which ascends, the earlier of two as near; NaN outside the record.
 pub fn nearest(times: &[f64], values: &[f64], at: &[f64], out: &mut [f64]) {
+    let mut after = 0;
     for (target, time) in out.iter_mut().zip(at) {
-        let after = times.partition_point(|other| other < time);
+        while after < times.len() && times[after] < *time {
+            after += 1;
+        }
         let before = after.saturating_sub(1);
         let inside =
             times.first().is_some_and(|first| first <= time) && times.last().is_some_and(|last| time <= last);

@@ -1,6 +1,8 @@
 //! Input files: read only below the notebook's folder, hashed as read, looked at again at each execution.
 
 use std::collections::BTreeMap;
+use std::fs::File;
+use std::io::Read;
 use std::path::{Component, Path, PathBuf};
 use std::sync::{Arc, Mutex, PoisonError};
 use std::time::SystemTime;
@@ -87,8 +89,8 @@ impl Inputs {
             found.fresh = true;
             return Ok(found.file.clone());
         }
-        let bytes = std::fs::read(&place).map_err(|error| unreadable(path, &error))?;
-        let digest: [u8; 32] = Sha256::digest(&bytes).into();
+        let (bytes, digest) =
+            read_and_hash(&place, metadata.len()).map_err(|error| unreadable(path, &error))?;
         let sha256 = digest.iter().map(|byte| format!("{byte:02x}")).collect();
         let file = Arc::new(InputFile { path: path.to_owned(), bytes, sha256 });
         if seen.get(path).is_some_and(|old| old.file.sha256 != file.sha256) {
@@ -145,6 +147,30 @@ impl Inputs {
             None => fault.help("paths begin at the notebook's folder"),
         }
     }
+}
+
+/// Reads a file of this length; each part of it is hashed while the next is read.
+fn read_and_hash(place: &Path, length: u64) -> std::io::Result<(Vec<u8>, [u8; 32])> {
+    const PART: usize = 1 << 20;
+    let mut file = File::open(place)?;
+    let mut bytes = vec![0; usize::try_from(length).map_err(std::io::Error::other)?];
+    let mut hash = Sha256::new();
+    let (sender, parts) = std::sync::mpsc::channel::<&[u8]>();
+    // A thread of its own: one that waits in the pool may take up work that asks for a file, which is locked here.
+    std::thread::scope(|scope| {
+        scope.spawn(|| parts.into_iter().for_each(|part| hash.update(part)));
+        // The hashing ends when the sender is gone, however this ends.
+        let sender = sender;
+        bytes.chunks_mut(PART).try_for_each(|part| {
+            file.read_exact(part)?;
+            sender.send(part).map_err(|_| std::io::Error::other("hashing has ended"))
+        })
+    })?;
+    // What was written to the file since its length was looked at.
+    let known = bytes.len();
+    file.read_to_end(&mut bytes)?;
+    hash.update(&bytes[known..]);
+    Ok((bytes, hash.finalize().into()))
 }
 
 /// The code of faults that the next look may not find any more; they are never remembered.

@@ -1,5 +1,6 @@
 use std::fmt;
 use std::ops::Range;
+use std::sync::OnceLock;
 
 use super::era::{Era, Instant, date_label, is_day};
 use crate::base::Fault;
@@ -32,6 +33,8 @@ pub struct Axis {
     ends: Vec<f64>,
     /// The era in which it is shown.
     pub era: Era,
+    /// Found once: long axes are asked for it again and again.
+    median_step: OnceLock<f64>,
 }
 
 impl PartialEq for Axis {
@@ -44,12 +47,16 @@ impl PartialEq for Axis {
 impl Axis {
     /// Steps that begin at `starts` and end at `ends`, one for one.
     pub fn steps(starts: Vec<f64>, ends: Vec<f64>, era: Era) -> Self {
-        Self { kind: AxisKind::Steps, starts, ends, era }
+        Self::of(AxisKind::Steps, starts, ends, era)
     }
 
     /// A row of instants.
     pub fn instants(times: Vec<f64>, era: Era) -> Self {
-        Self { kind: AxisKind::Instants, starts: times, ends: Vec::new(), era }
+        Self::of(AxisKind::Instants, times, Vec::new(), era)
+    }
+
+    fn of(kind: AxisKind, starts: Vec<f64>, ends: Vec<f64>, era: Era) -> Self {
+        Self { kind, starts, ends, era, median_step: OnceLock::new() }
     }
 
     /// Number of values.
@@ -92,9 +99,11 @@ impl Axis {
 
     /// The median length of a step, or distance of two instants, in years.
     pub fn median_step(&self) -> f64 {
-        let mut lengths = self.lengths();
-        lengths.sort_by(f64::total_cmp);
-        lengths.get(lengths.len() / 2).copied().unwrap_or(0.0)
+        *self.median_step.get_or_init(|| {
+            let mut lengths = self.lengths();
+            let middle = lengths.len() / 2;
+            if lengths.is_empty() { 0.0 } else { *lengths.select_nth_unstable_by(middle, f64::total_cmp).1 }
+        })
     }
 
     /// First and last moment it covers.
@@ -106,14 +115,14 @@ impl Axis {
     #[must_use]
     pub fn shifted(&self, years: f64) -> Self {
         let moved = |times: &[f64]| times.iter().map(|time| time + years).collect();
-        Self { kind: self.kind, starts: moved(&self.starts), ends: moved(&self.ends), era: self.era }
+        Self::of(self.kind, moved(&self.starts), moved(&self.ends), self.era)
     }
 
     /// The part of it numbered `range`.
     #[must_use]
     pub fn part(&self, range: Range<usize>) -> Self {
         let part = |times: &[f64]| times.get(range.clone()).unwrap_or(&[]).to_vec();
-        Self { kind: self.kind, starts: part(&self.starts), ends: part(&self.ends), era: self.era }
+        Self::of(self.kind, part(&self.starts), part(&self.ends), self.era)
     }
 
     /// The numbers of the steps that lie wholly inside `span`, or of the instants in it.
@@ -128,8 +137,8 @@ impl Axis {
     /// What a person calls value number `index`: `1991 CE`, `1958-03`, `21 ka`.
     pub fn label(&self, index: usize) -> String {
         let Some(start) = self.starts.get(index).copied() else { return String::new() };
-        let step = self.median_step();
-        if self.era == Era::Ce && self.kind == AxisKind::Steps && step < 0.9 && start >= 1.0 {
+        if self.era == Era::Ce && self.kind == AxisKind::Steps && start >= 1.0 && self.median_step() < 0.9 {
+            let step = self.median_step();
             let year = (start + 1e-6).floor();
             let months = (start - year) * 12.0;
             if step > 0.07 && (months - months.round()).abs() < 0.06 {

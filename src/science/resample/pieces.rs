@@ -1,5 +1,7 @@
 //! The source as a function of time: pieces of a straight or flat line, in order of time.
 
+use std::rc::Rc;
+
 /// Between `start` and `end` the function goes straight from source value `left` to source value `right`; flat when they
 /// are one. A piece without length is a lone instant.
 #[derive(Debug, Clone, Copy)]
@@ -91,12 +93,12 @@ pub(super) fn line_through_steps(
 /// A list of pieces and the first that can still matter: questions are asked in order of time, so that one pass over
 /// the pieces answers all.
 pub(super) struct Sweep {
-    pieces: Vec<Piece>,
+    pieces: Rc<Vec<Piece>>,
     first: usize,
 }
 
 impl Sweep {
-    pub(super) fn over(pieces: Vec<Piece>) -> Self {
+    pub(super) fn over(pieces: Rc<Vec<Piece>>) -> Self {
         Self { pieces, first: 0 }
     }
 

@@ -1,5 +1,8 @@
 //! The plan: for each target a list of source values and weights.
 
+use std::cell::OnceCell;
+use std::rc::Rc;
+
 use super::pieces::{Sweep, flat_steps, line_through_instants, line_through_steps};
 use super::{Axis, ROUNDING, ResampleError, Side};
 use crate::base::Cancellation;
@@ -189,18 +192,22 @@ impl Plan {
         self.offsets.push(self.sources.len());
     }
 
-    fn onto_steps(&mut self, shape: &mut Shape, starts: &[f64], ends: &[f64]) {
+    fn onto_steps(&mut self, shape: &mut Shape<'_>, starts: &[f64], ends: &[f64]) {
         let mut entries = Vec::new();
         for (&start, &end) in starts.iter().zip(ends) {
             let under = shape.steps.as_mut().and_then(|steps| steps.mean_length(start, end));
-            let typical = under.or(shape.median_spacing).unwrap_or(0.0);
-            let sweep = if end - start < REFINING * typical { &mut shape.fine } else { &mut shape.coarse };
+            let length = end - start;
+            let refines = match under {
+                Some(typical) => length < REFINING * typical,
+                None => shape.spacing.median_meets(|median| length < REFINING * median, false),
+            };
+            let sweep = if refines { &mut shape.fine } else { &mut shape.coarse };
             let covered = sweep.mean(start, end, ROUNDING, &mut entries);
             self.push(&entries, covered);
         }
     }
 
-    fn onto_instants(&mut self, shape: &mut Shape, times: &[f64]) {
+    fn onto_instants(&mut self, shape: &mut Shape<'_>, times: &[f64]) {
         let mut entries = Vec::new();
         for (index, &time) in times.iter().enumerate() {
             let half_before = index.checked_sub(1).map(|before| (time - times[before]) / 2.0);
@@ -210,7 +217,7 @@ impl Plan {
                 self.push_value(shape, time, &mut entries);
                 continue;
             };
-            if before + after <= shape.median_spacing.unwrap_or(f64::INFINITY) * (1.0 + ROUNDING) {
+            if shape.spacing.median_meets(|median| before + after <= median * (1.0 + ROUNDING), true) {
                 self.push_value(shape, time, &mut entries);
                 continue;
             }
@@ -227,7 +234,7 @@ impl Plan {
         }
     }
 
-    fn push_value(&mut self, shape: &mut Shape, time: f64, entries: &mut Vec<(usize, f64)>) {
+    fn push_value(&mut self, shape: &mut Shape<'_>, time: f64, entries: &mut Vec<(usize, f64)>) {
         shape.fine.value(time, entries);
         self.push(entries, 1.0);
     }
@@ -238,42 +245,69 @@ fn fits(expected: usize, found: usize) -> Result<(), ResampleError> {
 }
 
 /// The source in the forms that targets ask for.
-struct Shape {
+struct Shape<'source> {
     /// What is averaged when coarsening.
     coarse: Sweep,
     /// What is followed when refining.
     fine: Sweep,
     /// All source steps, with or without a value.
     steps: Option<Sweep>,
-    median_spacing: Option<f64>,
+    spacing: Spacing<'source>,
     start: f64,
     end: f64,
 }
 
-impl Shape {
-    fn of(source: Axis<'_>, valid: &[bool], longest_gap: f64) -> Self {
+impl<'source> Shape<'source> {
+    fn of(source: Axis<'source>, valid: &[bool], longest_gap: f64) -> Self {
         let longest_gap = longest_gap * (1.0 + ROUNDING);
-        let median_spacing = source.median_spacing_years();
+        let spacing = Spacing::of(source);
         match source {
             Axis::Steps { starts, ends } => Self {
-                coarse: Sweep::over(flat_steps(starts, ends, valid)),
-                fine: Sweep::over(line_through_steps(starts, ends, valid, longest_gap)),
-                steps: Some(Sweep::over(flat_steps(starts, ends, &vec![true; starts.len()]))),
-                median_spacing,
+                coarse: Sweep::over(flat_steps(starts, ends, valid).into()),
+                fine: Sweep::over(line_through_steps(starts, ends, valid, longest_gap).into()),
+                steps: Some(Sweep::over(flat_steps(starts, ends, &vec![true; starts.len()]).into())),
+                spacing,
                 start: starts.first().copied().unwrap_or(0.0),
                 end: ends.last().copied().unwrap_or(0.0),
             },
             Axis::Instants { times } => {
-                let line = line_through_instants(times, valid, longest_gap);
+                let line = Rc::new(line_through_instants(times, valid, longest_gap));
                 Self {
                     coarse: Sweep::over(line.clone()),
                     fine: Sweep::over(line),
                     steps: None,
-                    median_spacing,
+                    spacing,
                     start: times.first().copied().unwrap_or(0.0),
                     end: times.last().copied().unwrap_or(0.0),
                 }
             }
         }
+    }
+}
+
+/// The median spacing of the source. It is looked for only where the longest spacing leaves it open what it decides:
+/// nothing else of a plan takes as long.
+struct Spacing<'source> {
+    source: Axis<'source>,
+    longest: f64,
+    median: OnceCell<Option<f64>>,
+}
+
+impl<'source> Spacing<'source> {
+    fn of(source: Axis<'source>) -> Self {
+        let longest = match source {
+            Axis::Steps { starts, ends } => {
+                starts.iter().zip(ends).map(|(start, end)| end - start).reduce(f64::max)
+            }
+            Axis::Instants { times } => times.windows(2).map(|pair| pair[1] - pair[0]).reduce(f64::max),
+        };
+        let longest = longest.unwrap_or(f64::INFINITY);
+        Self { source, longest, median: OnceCell::new() }
+    }
+
+    /// Whether the median meets a condition that every longer spacing meets too; `if_none` where there is no spacing.
+    fn median_meets(&self, condition: impl Fn(f64) -> bool, if_none: bool) -> bool {
+        condition(self.longest)
+            && self.median.get_or_init(|| self.source.median_spacing_years()).map_or(if_none, condition)
     }
 }
