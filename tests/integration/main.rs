@@ -15,6 +15,7 @@ mod completion;
 mod events;
 mod figures;
 mod grammar;
+mod lab;
 mod layers;
 mod notebooks;
 mod python_reference;
