@@ -124,14 +124,14 @@ impl Environment {
         for line in
             pip.stdout.take().into_iter().flat_map(|pipe| BufReader::new(pipe).lines().map_while(Result::ok))
         {
-            if line.starts_with("Collecting ") {
-                packages += 1;
-            } else if line.starts_with("Installing collected packages") {
+            if line.starts_with("Installing collected packages") {
                 say(&format!("installing {packages} packages"));
-            }
-            if said.elapsed() > PROGRESS {
-                say(&format!("{packages} packages so far"));
-                said = Instant::now();
+            } else if line.starts_with("Collecting ") {
+                packages += 1;
+                if said.elapsed() > PROGRESS {
+                    say(&format!("{packages} packages so far"));
+                    said = Instant::now();
+                }
             }
         }
         let complaints = complaints.and_then(|thread| thread.join().ok()).unwrap_or_default();

@@ -2,8 +2,8 @@
 //! `cargo bench --bench workshop`. Both do the same tasks on the same files in turn, and must come to the same numbers.
 //! Never asserted about time; figures go into notes.
 
-#[path = "../reference/environment.rs"]
-mod environment;
+#[path = "../integration/python_environment.rs"]
+mod python_environment;
 
 use std::error::Error;
 use std::fmt::Write as _;
@@ -176,7 +176,10 @@ struct Theirs {
 
 impl Theirs {
     fn start(folder: &Path) -> Outcome<Self> {
-        let mut process = Command::new(environment::python()?)
+        let requirements = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/reference/requirements.txt");
+        let python =
+            python_environment::python("python_reference", &requirements, "compares with pandas and NumPy")?;
+        let mut process = Command::new(python)
             .arg(Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/bench/workshop.py"))
             .arg(folder)
             // Settings of the machine for its linear algebra, which say nothing about the library as it comes.

@@ -46,11 +46,17 @@ class Server:
         with socket.socket() as probe:
             probe.bind(("127.0.0.1", 0))
             self.port = probe.getsockname()[1]
-        settings = work / "settings" / "@jupyterlab" / "apputils-extension"
-        for folder in (self.root, self.data, settings):
-            folder.mkdir(parents=True, exist_ok=True)
+        self.chosen = work / "settings"
+        for folder in (self.root, self.data):
+            folder.mkdir(parents=True)
+        self.choose()
+
+    def choose(self):
+        """The settings that a page finds."""
+        folder = self.chosen / "@jupyterlab" / "apputils-extension"
+        folder.mkdir(parents=True, exist_ok=True)
         # The toast that asks about news would lie over what is clicked.
-        (settings / "notification.jupyterlab-settings").write_text('{"fetchNews": "false", "checkForUpdates": false}')
+        (folder / "notification.jupyterlab-settings").write_text('{"fetchNews": "false", "checkForUpdates": false}')
 
     def environment(self):
         places = {

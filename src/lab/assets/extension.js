@@ -207,11 +207,24 @@
     }
   }
 
+  /**
+   * The page tells kernels which cells were deleted, and counts one that was cut and is pasted again among them: its
+   * results would be refreshed no more. Take those that are back from the list.
+   */
+  function undelete(model, { type, newValues }) {
+    if (type !== "add" || !Array.isArray(model.deletedCells)) return;
+    for (const { id } of newValues) {
+      const place = model.deletedCells.indexOf(id);
+      if (place >= 0) model.deletedCells.splice(place, 1);
+    }
+  }
+
   /** Watch a notebook: tell its kernel, if it is ours, that old outputs are found again, and find them. */
   function watch(panel) {
     const context = panel.sessionContext;
     let told = null; // the kernel connection that knows
     let comm = null;
+    let listening = null; // the model whose cells are listened to
 
     const tell = async () => {
       const kernel = context.session?.kernel;
@@ -223,6 +236,12 @@
         if (info.language_info.name !== "rhythmite" || told !== kernel || kernel.isDisposed) return;
         comm = kernel.createComm(TARGET);
         comm.open({});
+        const model = panel.content.model;
+        if (!model || listening === model) return;
+        listening = model;
+        model.cells.changed.connect(guarded((_cells, change) => {
+          if (comm && !comm.isDisposed) undelete(model, change);
+        }));
       } catch (problem) {
         if (told === kernel) told = null;
         complain(problem);
@@ -231,6 +250,7 @@
 
     context.kernelChanged.connect(guarded(() => {
       told = null;
+      comm = null;
       void tell();
     }));
     context.statusChanged.connect(guarded((_context, status) => {

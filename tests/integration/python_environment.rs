@@ -1,14 +1,10 @@
-//! The Python that holds the libraries we compare with. They come from the package registry into an environment under
-//! `target`, in the versions that `requirements.txt` says; it is kept for the next run.
+//! Python environments of the tests' own, with libraries in pinned versions from the package registry; each is made once
+//! and kept below the target folder.
 
 use std::fs;
 use std::path::{Path, PathBuf};
 use std::process::Command;
-
-/// A file of this folder.
-pub(crate) fn reference_file(name: &str) -> PathBuf {
-    Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/reference").join(name)
-}
+use std::sync::Mutex;
 
 /// What a command printed, or what went wrong in words.
 pub(crate) fn printed(command: &mut Command) -> Result<String, String> {
@@ -17,11 +13,13 @@ pub(crate) fn printed(command: &mut Command) -> Result<String, String> {
     if run.status.success() { Ok(out.into_owned()) } else { Err(format!("{command:?} failed:\n{out}{err}")) }
 }
 
-/// The Python of an environment that holds the libraries in the pinned versions.
-pub(crate) fn python() -> Result<PathBuf, String> {
-    let requirements = reference_file("requirements.txt");
-    let wanted = fs::read_to_string(&requirements).map_err(|error| error.to_string())?;
-    let folder = Path::new(env!("CARGO_TARGET_TMPDIR")).join("python_reference");
+/// The Python of the environment `name`, which holds what a file of requirements lists; `need` says what for.
+pub(crate) fn python(name: &str, requirements: &Path, need: &str) -> Result<PathBuf, String> {
+    // Tests run side by side, and some share an environment.
+    static MAKING: Mutex<()> = Mutex::new(());
+    let _making = MAKING.lock();
+    let wanted = fs::read_to_string(requirements).map_err(|error| error.to_string())?;
+    let folder = Path::new(env!("CARGO_TARGET_TMPDIR")).join(name);
     let python = folder.join("bin/python");
     // Written last, so that an environment that was left half made is made anew.
     let mark = folder.join("installed.txt");
@@ -29,17 +27,15 @@ pub(crate) fn python() -> Result<PathBuf, String> {
         return Ok(python);
     }
     printed(Command::new("python3").args(["-m", "venv", "--clear"]).arg(&folder)).map_err(|error| {
-        format!(
-            "to compare with pandas and SciPy needs Python 3.11 or newer with its module venv as `python3`: {error}"
-        )
+        format!("this test {need}, and needs Python 3.11 or newer with its module venv as `python3`: {error}")
     })?;
     printed(
         Command::new(&python)
             .args(["-m", "pip", "install", "--quiet", "--no-compile", "--only-binary", ":all:", "--requirement"])
-            .arg(&requirements),
+            .arg(requirements),
     )
     .map_err(|error| {
-        format!("to compare with pandas and SciPy needs the package registry of Python to be reached once: {error}")
+        format!("this test {need}, and needs the package registry of Python to be reached once: {error}")
     })?;
     fs::write(&mark, wanted).map_err(|error| error.to_string())?;
     Ok(python)
