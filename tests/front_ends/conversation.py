@@ -467,6 +467,11 @@ class Page:
         """What stands in the outputs of a cell, as text."""
         return "\n".join(text for _, message in self.outputs.get(cell, []) if (text := plain(message)))
 
+    def says(self, cell):
+        """What stands in the outputs of a cell as text and within its figures."""
+        figures = [message.content.get("data", {}).get("image/svg+xml", "") for _, message in self.outputs.get(cell, [])]
+        return "\n".join([self.shows(cell), *figures])
+
     def delete(self, cell):
         self.outputs.pop(cell)
 
