@@ -18,6 +18,7 @@ mod typeface;
 
 pub use chart::{Caption, chart, footer};
 pub use diagnostic::{diagnostic, problem_line};
+pub use drawing::figure_size;
 pub use html::{Page, diagnostic_html, html, progress_html, words_html};
 pub use number::{plain, with_range};
 pub use pdf::pdf;

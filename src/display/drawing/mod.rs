@@ -6,11 +6,19 @@ mod layout;
 
 pub(super) use layout::drawing;
 
+use crate::value::Figure;
+
 /// The colour of words and axes on paper.
 pub(super) const TEXT_ON_WHITE: u32 = 0x20_24_2a;
 
 /// The size of type that is not said otherwise.
 pub(super) const TEXT_SIZE: f64 = 12.0;
+
+/// The width and height that a figure has in a page, in its pixels, 96 to the inch.
+pub fn figure_size(figure: &Figure) -> [f64; 2] {
+    let drawing = drawing(figure);
+    [drawing.width, drawing.height]
+}
 
 /// What is on the sheet, the hindmost first.
 #[derive(Clone, Debug, PartialEq)]
