@@ -8,7 +8,7 @@ use std::process::ExitCode;
 use clap::{Parser, Subcommand, ValueEnum};
 
 use rhythmite::lab::{self, Opening, Place};
-use rhythmite::notebook::{CodeCell, Notebook, Report, Run};
+use rhythmite::notebook::{CodeCell, FigureFormat, Media, Notebook, Report, Run};
 use rhythmite::session::{OUTSIDE, Session};
 use rhythmite::talk::{self, Ending, Progress};
 use rhythmite::{catalogue, display, notebook};
@@ -36,9 +36,22 @@ enum Command {
         /// A definition that wins over those of the program, such as "members = 500"; may be given more than once.
         #[arg(long, value_name = "DEFINITION")]
         define: Vec<String>,
-        /// Write each series and bundle that is shown as a figure (SVG) into this folder.
+        /// Write each series and bundle that is shown as a figure into this folder.
         #[arg(long, value_name = "FOLDER")]
         figures: Option<PathBuf>,
+        /// The format of those figures; several are parted by commas.
+        #[arg(
+            long,
+            value_enum,
+            value_name = "FORMAT",
+            value_delimiter = ',',
+            default_value = "svg",
+            requires = "figures"
+        )]
+        figures_as: Vec<FiguresAs>,
+        /// Put figures into the notebook as PNG, too, for pages that show no SVG; for `--format ipynb`.
+        #[arg(long)]
+        png: bool,
         /// How many threads to use; all processors by default. The numbers are the same for any.
         #[arg(long)]
         threads: Option<usize>,
@@ -51,6 +64,9 @@ enum Command {
     Kernel {
         /// The connection file.
         connection: PathBuf,
+        /// Send figures as PNG, too, for pages that show no SVG.
+        #[arg(long)]
+        png: bool,
     },
     /// Talk in the terminal: type expressions and see them at once; lines can be piped in, too.
     Talk {
@@ -108,6 +124,16 @@ enum Format {
     Ipynb,
 }
 
+#[derive(Clone, Copy, PartialEq, Eq, ValueEnum)]
+enum FiguresAs {
+    /// For pages of the web.
+    Svg,
+    /// For papers.
+    Pdf,
+    /// For slides: 288 pixels to the inch.
+    Png,
+}
+
 /// The longest script or notebook that is read, in bytes: a device in its place must not fill the memory.
 const PROGRAM_LIMIT: u64 = 64 << 20;
 
@@ -124,12 +150,18 @@ const WRONG_CALL: u8 = 2;
 fn main() -> ExitCode {
     let arguments = Arguments::parse();
     let code = match arguments.command {
-        Command::Run { file, format, out, define, figures, threads, file_limit } => {
+        Command::Run { file, format, out, define, figures, figures_as, png, threads, file_limit } => {
             let folder = file.parent().filter(|folder| !folder.as_os_str().is_empty());
             let folder = folder.unwrap_or(Path::new(".")).to_owned();
             let limit = file_limit.saturating_mul(1024 * 1024);
             let session = Session::with_limits(&folder, threads, MEMORY, limit);
-            let wanted = Wanted { folder, format, out, figures };
+            let formats = figures_as.into_iter().map(|format| match format {
+                FiguresAs::Svg => FigureFormat::Svg,
+                FiguresAs::Pdf => FigureFormat::Pdf,
+                FiguresAs::Png => FigureFormat::Png,
+            });
+            let figures = figures.map(|folder| (folder, formats.collect()));
+            let wanted = Wanted { folder, format, out, figures, media: Media { png } };
             run(session, &file, &wanted, &define)
         }
         Command::Talk { folder, threads, file_limit } => {
@@ -141,15 +173,15 @@ fn main() -> ExitCode {
         }
         Command::Explain { name } => explain(&name),
         #[cfg(unix)]
-        Command::Kernel { connection } => serve(&connection),
+        Command::Kernel { connection, png } => serve(&connection, Media { png }),
     };
     ExitCode::from(code)
 }
 
 /// Serve Jupyter front ends; files are read in the folder where Jupyter starts the program, the notebook's own.
 #[cfg(unix)]
-fn serve(connection: &Path) -> u8 {
-    match rhythmite::kernel::serve(connection, Session::new(".")) {
+fn serve(connection: &Path, media: Media) -> u8 {
+    match rhythmite::kernel::serve(connection, Session::new("."), media) {
         Ok(()) => 0,
         Err(refusal) => {
             complain(&format!("{refusal}\n"));
@@ -283,7 +315,9 @@ struct Wanted {
     folder: PathBuf,
     format: Format,
     out: Option<PathBuf>,
-    figures: Option<PathBuf>,
+    /// Where figures are written, and as what.
+    figures: Option<(PathBuf, Vec<FigureFormat>)>,
+    media: Media,
 }
 
 fn run(mut session: Session, file: &Path, wanted: &Wanted, define: &[String]) -> u8 {
@@ -297,6 +331,12 @@ fn run(mut session: Session, file: &Path, wanted: &Wanted, define: &[String]) ->
     };
     if format == Format::Ipynb && matches!(program, Program::Script(_)) {
         complain("a script has no cells to write outputs into: `--format ipynb` is for notebooks (.ipynb)\n");
+        return WRONG_CALL;
+    }
+    if wanted.media.png && format != Format::Ipynb {
+        complain(
+            "`--png` is for `--format ipynb`; figures are written into a folder by `--figures FOLDER --figures-as png`\n",
+        );
         return WRONG_CALL;
     }
     if let Some(why) = wanted.out.as_deref().and_then(|out| unfit(out, file, format)) {
@@ -327,7 +367,7 @@ fn run(mut session: Session, file: &Path, wanted: &Wanted, define: &[String]) ->
             let mut report = Report::new(false, true);
             report.add(&session, &ran.outside);
             complain(&report.take());
-            notebook.with_outputs(&session, &ran)
+            notebook.with_outputs(&session, &ran, wanted.media)
         }
         (Format::Json | Format::Ipynb, _) => {
             let json = notebook::run_to_json(&session, &ran);
@@ -344,8 +384,8 @@ fn run(mut session: Session, file: &Path, wanted: &Wanted, define: &[String]) ->
         Some(path) => write(path, printed.as_bytes(), &inputs).err(),
     };
     let failed = failed.or_else(|| {
-        let folder = wanted.figures.as_deref()?;
-        write_figures(folder, &ran, &[&inputs[..], &[file.to_owned()]].concat()).err()
+        let (folder, formats) = wanted.figures.as_ref()?;
+        write_figures(folder, formats, &ran, &[&inputs[..], &[file.to_owned()]].concat()).err()
     });
     if let Some(why) = failed {
         complain(&format!("{why}\n"));
@@ -383,13 +423,18 @@ fn write(path: &Path, contents: &[u8], spared: &[PathBuf]) -> Result<(), String>
 
 /// Write what is drawn of the results into a folder, which is made where there is none, and say so. `spared` are files
 /// that no figure is written over.
-fn write_figures(folder: &Path, ran: &Run, spared: &[PathBuf]) -> Result<(), String> {
-    let files = notebook::figure_files(ran.cells.iter().flat_map(|(_, reply)| &reply.outputs));
+fn write_figures(
+    folder: &Path,
+    formats: &[FigureFormat],
+    ran: &Run,
+    spared: &[PathBuf],
+) -> Result<(), String> {
+    let files = notebook::figure_files(ran.cells.iter().flat_map(|(_, reply)| &reply.outputs), formats);
     std::fs::create_dir_all(folder)
         .map_err(|error| format!("figures cannot be written into {}: {error}", folder.display()))?;
     for file in &files {
         let path = folder.join(&file.name);
-        write(&path, file.svg.as_bytes(), spared)?;
+        write(&path, &file.contents, spared)?;
         complain(&format!("wrote {}\n", path.display()));
     }
     if files.is_empty() {

@@ -20,6 +20,7 @@ use super::progress::Activity;
 use super::queue::Queue;
 use super::sockets::{Channel, Departures};
 use crate::base::Cancellation;
+use crate::notebook::Media;
 use crate::session::Session;
 
 /// Messages that have left the queues need so long to leave the sockets.
@@ -30,6 +31,8 @@ pub(super) struct Kernel {
     departures: Departures,
     session: RwLock<Session>,
     cancellation: Cancellation,
+    /// Which formats figures are sent in.
+    pub(super) media: Media,
     pub(super) queue: Queue,
     pub(super) history: Mutex<History>,
     pub(super) comms: Mutex<Comms>,
@@ -52,6 +55,7 @@ impl Kernel {
         seal: Arc<Seal>,
         departures: Departures,
         session: Session,
+        media: Media,
         connection_file: &Path,
     ) -> Arc<Self> {
         let (questions, asked) = channel::<Arc<Request>>();
@@ -60,6 +64,7 @@ impl Kernel {
             departures,
             cancellation: session.cancellation(),
             session: RwLock::new(session),
+            media,
             queue: Queue::default(),
             history: Mutex::default(),
             comms: Mutex::default(),

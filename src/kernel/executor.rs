@@ -13,7 +13,7 @@ use super::queue::Turn;
 use super::sockets::Channel;
 use crate::base::Diagnostic;
 use crate::display;
-use crate::notebook::{Bundle, Pieces, pieces, result_metadata, words_bundle};
+use crate::notebook::{Bundle, Media, Pieces, pieces, result_metadata, words_bundle};
 use crate::session::{Audience, CellReply, Output, Pending, Session};
 
 /// Run cells as they come, for as long as the kernel lives.
@@ -386,7 +386,8 @@ impl Audience for Execution<'_> {
             self.interrupted |= output.is_interrupted();
             return;
         }
-        let Pieces { figure, words } = pieces(session, output, self.several);
+        let Pieces { figure, figure_metadata, words } =
+            pieces(session, output, self.several, self.kernel.media);
         let plain = words.get("text/plain").and_then(Json::as_str).unwrap_or("");
         if !self.text.is_empty() {
             self.text.push('\n');
@@ -403,7 +404,8 @@ impl Audience for Execution<'_> {
         let mut drawn = progress.is_some();
         let mut figure_id = None;
         if let Some(figure) = &figure {
-            self.put(drawn, &first, figure, &Self::metadata(&first, output));
+            let metadata = with(Self::metadata(&first, output), figure_metadata);
+            self.put(drawn, &first, figure, &metadata);
             drawn = false;
             figure_id = Some(first.clone());
         }
@@ -433,7 +435,7 @@ impl Audience for Execution<'_> {
             self.beyond_reach.push(drawn.cell.clone());
             self.perhaps_gone |= drawn.is_gone();
         }
-        let Pieces { figure, words } = pieces(session, output, false);
+        let Pieces { figure, figure_metadata, words } = pieces(session, output, false, self.kernel.media);
         // A result that is drawn now and was not before takes the place of its numbers.
         let (figure, words) = match (&drawn.figure, figure) {
             (None, Some(figure)) => (None, figure),
@@ -441,11 +443,17 @@ impl Audience for Execution<'_> {
         };
         if let Some(id) = &drawn.figure {
             let figure = figure.unwrap_or_else(|| words_bundle(""));
-            self.put(true, id, &figure, &Self::metadata(id, output));
+            let metadata = with(Self::metadata(id, output), figure_metadata);
+            self.put(true, id, &figure, &metadata);
         }
         self.put(true, &drawn.words, &words, &Self::metadata(&drawn.words, output));
         !self.kernel.queue.is_waited_for()
     }
+}
+
+fn with(mut metadata: Json, more: Map<String, Json>) -> Json {
+    metadata.as_object_mut().into_iter().for_each(|all| all.extend(more.clone()));
+    metadata
 }
 
 fn counted(number: usize, one: &str, more: &str) -> String {
@@ -465,7 +473,9 @@ fn user_expression(session: &Session, text: &str) -> Json {
     let failed = |problem: &Diagnostic| json!({"status": "error", "ename": problem.code, "evalue": problem.message, "traceback": [problem.message]});
     match session.peek(text) {
         Ok(output) => match &output.result {
-            Ok(_) => json!({"status": "ok", "data": pieces(session, &output, false).words, "metadata": {}}),
+            Ok(_) => {
+                json!({"status": "ok", "data": pieces(session, &output, false, Media::default()).words, "metadata": {}})
+            }
             Err(problem) => failed(problem),
         },
         Err(problem) => failed(&problem),

@@ -26,6 +26,7 @@ use self::answers::Kernel;
 use self::connection::Connection;
 pub use self::connection::Refusal;
 use self::message::Seal;
+use crate::notebook::Media;
 use crate::session::Session;
 
 /// Serve a session to the front ends that the connection file names, until one of them, a signal or the end of the
@@ -33,7 +34,7 @@ use crate::session::Session;
 ///
 /// # Errors
 /// What is wrong with the connection file, or why the kernel cannot listen.
-pub fn serve(connection_file: &Path, session: Session) -> Result<(), Refusal> {
+pub fn serve(connection_file: &Path, session: Session, media: Media) -> Result<(), Refusal> {
     let connection = Connection::read(connection_file)?;
     let runtime = tokio::runtime::Builder::new_multi_thread()
         .worker_threads(2)
@@ -48,7 +49,7 @@ pub fn serve(connection_file: &Path, session: Session) -> Result<(), Refusal> {
             let _ = arrivals.send((channel, request));
         };
         let (departures, guards) = sockets::open(&connection, &seal, arrive).await?;
-        let kernel = Kernel::start(seal, departures, session, connection_file);
+        let kernel = Kernel::start(seal, departures, session, media, connection_file);
         tokio::spawn(progress::watch(kernel.clone()));
         let taken = kernel.clone();
         tokio::spawn(async move {

@@ -1,5 +1,29 @@
-use crate::display::{Caption, chart, svg};
+use crate::display::{Caption, chart, pdf, png, svg};
 use crate::session::Output;
+
+/// The format of a figure in a file.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum FigureFormat {
+    /// For pages of the web and for drawing programs.
+    Svg,
+    /// For papers.
+    Pdf,
+    /// For slides, and programs that show no other pictures.
+    Png,
+}
+
+/// Pixels of a PNG file to one of a page: 288 to the inch, which print asks for.
+const PNG_SCALE: f64 = 3.0;
+
+impl FigureFormat {
+    fn ending(self) -> &'static str {
+        match self {
+            Self::Svg => "svg",
+            Self::Pdf => "pdf",
+            Self::Png => "png",
+        }
+    }
+}
 
 /// A figure as a file.
 #[derive(Clone, Debug)]
@@ -7,12 +31,16 @@ pub struct FigureFile {
     /// Its name, safe on every system: `01-warming.svg`.
     pub name: String,
     /// What is in it.
-    pub svg: String,
+    pub contents: Vec<u8>,
 }
 
-/// A file for each of the results that are drawn, in order.
-pub fn figure_files<'a>(outputs: impl IntoIterator<Item = &'a Output>) -> Vec<FigureFile> {
+/// A file in each of the formats for each of the results that are drawn, in order.
+pub fn figure_files<'a>(
+    outputs: impl IntoIterator<Item = &'a Output>,
+    formats: &[FigureFormat],
+) -> Vec<FigureFile> {
     let mut files = Vec::new();
+    let mut number = 0;
     for output in outputs {
         let Ok(shown) = &output.result else { continue };
         let fingerprint = output.fingerprint.short();
@@ -22,8 +50,17 @@ pub fn figure_files<'a>(outputs: impl IntoIterator<Item = &'a Output>) -> Vec<Fi
             refreshed_by: &output.refreshed_by,
         };
         if let Some(figure) = chart(shown, &caption) {
-            let name = format!("{:02}-{}.svg", files.len() + 1, safe_name(&output.expression));
-            files.push(FigureFile { name, svg: svg(&figure) });
+            number += 1;
+            for format in formats {
+                let ending = format.ending();
+                let name = format!("{number:02}-{}.{ending}", safe_name(&output.expression));
+                let contents = match format {
+                    FigureFormat::Svg => svg(&figure).into_bytes(),
+                    FigureFormat::Pdf => pdf(&figure),
+                    FigureFormat::Png => png(&figure, PNG_SCALE),
+                };
+                files.push(FigureFile { name, contents });
+            }
         }
     }
     files

@@ -8,7 +8,7 @@ use std::fmt;
 
 use serde_json::{Map, Value as Json, json};
 
-use super::bundle::{Bundle, Pieces, pieces, result_metadata, words_bundle};
+use super::bundle::{Bundle, Media, Pieces, pieces, result_metadata, words_bundle};
 use super::run::{CodeCell, Run, is_told};
 use crate::base::Diagnostic;
 use crate::display;
@@ -99,7 +99,7 @@ impl Notebook {
     }
 
     /// The file with what its cells gave, in place of the outputs it had.
-    pub fn with_outputs(&self, session: &Session, run: &Run) -> String {
+    pub fn with_outputs(&self, session: &Session, run: &Run, media: Media) -> String {
         let mut whole = self.whole.clone();
         let mut ran = run.cells.iter().enumerate().peekable();
         let cells = whole.get_mut("cells").and_then(Json::as_array_mut);
@@ -109,7 +109,7 @@ impl Notebook {
             }
             let Some(cell) = cell.as_object_mut() else { continue };
             let (count, outputs) = match ran.next_if(|(_, (code, _))| code.index == index) {
-                Some((number, (_, reply))) => (json!(number + 1), outputs(session, reply)),
+                Some((number, (_, reply))) => (json!(number + 1), outputs(session, reply, media)),
                 None => (Json::Null, Vec::new()),
             };
             cell.insert("execution_count".to_owned(), count);
@@ -235,7 +235,7 @@ fn source(cell: &Json, index: usize) -> Result<String, Unreadable> {
     }
 }
 
-fn outputs(session: &Session, reply: &CellReply) -> Vec<Json> {
+fn outputs(session: &Session, reply: &CellReply, media: Media) -> Vec<Json> {
     let mut outputs = Vec::new();
     for problem in reply.problems.iter().chain(&reply.waiting) {
         outputs.push(error(session, problem));
@@ -249,8 +249,12 @@ fn outputs(session: &Session, reply: &CellReply) -> Vec<Json> {
             Err(problem) if !is_told(reply, problem) => outputs.push(error(session, problem)),
             Ok(_) | Err(_) => {
                 let metadata = json!({"rhythmite": result_metadata(output)});
-                let Pieces { figure, words } = pieces(session, output, several);
-                outputs.extend(figure.map(|figure| display_data(figure, &metadata)));
+                let Pieces { figure, figure_metadata, words } = pieces(session, output, several, media);
+                if let Some(figure) = figure {
+                    let mut metadata = metadata.clone();
+                    metadata.as_object_mut().into_iter().for_each(|all| all.extend(figure_metadata.clone()));
+                    outputs.push(display_data(figure, &metadata));
+                }
                 outputs.push(display_data(words, &metadata));
             }
         }

@@ -9,8 +9,8 @@ mod report;
 mod run;
 mod whole_file;
 
-pub use bundle::{Bundle, Pieces, pieces, result_metadata, words_bundle};
-pub use figures::{FigureFile, figure_files};
+pub use bundle::{Bundle, Media, Pieces, pieces, result_metadata, words_bundle};
+pub use figures::{FigureFile, FigureFormat, figure_files};
 pub use ipynb::{Notebook, Unreadable};
 pub use json::run_to_json;
 pub use report::Report;

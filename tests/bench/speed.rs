@@ -8,6 +8,7 @@ use std::path::Path;
 use criterion::{Criterion, criterion_group, criterion_main};
 
 use rhythmite::base::SourceId;
+use rhythmite::display::{self, Caption};
 use rhythmite::language::parse;
 use rhythmite::session::Session;
 
@@ -94,5 +95,23 @@ fn ensembles(criterion: &mut Criterion) {
     group.finish();
 }
 
-criterion_group!(benches, parsing, definitions, ensembles);
+/// A bundle of 171 steps with bands, as a notebook sends it: 30 of them are refreshed within 100 ms.
+fn figures(criterion: &mut Criterion) {
+    let source = ENSEMBLE.replace("1750..2019", "1850..2020").replace("members = 2000", "members = 200");
+    let output = Session::new(folder()).run_cell("script", &source).outputs.pop();
+    let Some(Ok(shown)) = output.map(|output| output.result) else { return };
+    let caption = Caption {
+        expression: "respond(all, two_layer(feedback: 1.3 ± 0.2 W/m2/K))",
+        fingerprint: "0123456789ab",
+        refreshed_by: &["haze".to_owned()],
+    };
+    let Some(figure) = display::chart(&shown, &caption) else { return };
+    let mut group = criterion.benchmark_group("a bundle with bands");
+    group.bench_function("as SVG", |bench| bench.iter(|| display::svg(black_box(&figure)).len()));
+    group.bench_function("as PDF", |bench| bench.iter(|| display::pdf(black_box(&figure)).len()));
+    group.bench_function("as PNG", |bench| bench.iter(|| display::png(black_box(&figure), 2.0).len()));
+    group.finish();
+}
+
+criterion_group!(benches, figures, parsing, definitions, ensembles);
 criterion_main!(benches);

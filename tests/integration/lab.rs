@@ -85,7 +85,10 @@ fn a_prefix_gets_a_kernelspec_that_starts_this_program_and_an_extension_that_nam
 fn the_user_folder_is_where_jupyter_looks_for_it() {
     let home = folder("user");
     let there = |folder: &str| home.join(folder).join("kernels/rhythmite/kernel.json").is_file();
-    assert_eq!(run(command(PROGRAM, &home).arg("enrol").env("JUPYTER_DATA_DIR", home.join("named"))).0, Some(0));
+    assert_eq!(
+        run(command(PROGRAM, &home).arg("enrol").env("JUPYTER_DATA_DIR", home.join("named"))).0,
+        Some(0)
+    );
     assert!(there("named"));
     if cfg!(all(unix, not(target_os = "macos"))) {
         assert_eq!(run(command(PROGRAM, &home).args(["enrol", "--user"])).0, Some(0));
@@ -107,9 +110,8 @@ fn user_and_prefix_are_one_or_the_other() {
 #[test]
 fn what_was_enrolled_is_not_written_again_and_is_removed_without_a_trace() {
     let prefix = folder("again");
-    let enrol = |more: &[&str]| {
-        run(command(PROGRAM, &prefix).arg("enrol").arg("--prefix").arg(&prefix).args(more))
-    };
+    let enrol =
+        |more: &[&str]| run(command(PROGRAM, &prefix).arg("enrol").arg("--prefix").arg(&prefix).args(more));
     enrol(&[]);
     let before = files(&prefix);
     assert_eq!(before.len(), 9, "{before:?}");
@@ -149,9 +151,8 @@ fn a_file_that_is_not_ours_is_neither_written_over_nor_removed() {
     let kernel = prefix.join("share/jupyter/kernels/rhythmite");
     fs::create_dir_all(&kernel).unwrap();
     fs::write(kernel.join("kernel.json"), "mine").unwrap();
-    let enrol = |more: &[&str]| {
-        run(command(PROGRAM, &prefix).arg("enrol").arg("--prefix").arg(&prefix).args(more))
-    };
+    let enrol =
+        |more: &[&str]| run(command(PROGRAM, &prefix).arg("enrol").arg("--prefix").arg(&prefix).args(more));
     let (code, out, err) = enrol(&[]);
     assert_eq!((code, out.as_str()), (Some(2), ""));
     assert!(err.contains("kernel.json is there already and was not written by `rhythmite enrol`"), "{err}");
@@ -273,12 +274,17 @@ fn pretend(folder: &Path, name: &str, script: &str) {
 #[test]
 fn lab_enrols_for_the_user_becomes_the_jupyterlab_on_path_and_ends_as_it_ends() {
     let home = folder("found");
-    pretend(&home, "jupyter-lab", "[ \"$1\" = --version ] && echo 4.1.0 && exit\nprintf '%s|' \"$@\" $$\nexit 7");
+    pretend(
+        &home,
+        "jupyter-lab",
+        "[ \"$1\" = --version ] && echo 4.1.0 && exit\nprintf '%s|' \"$@\" $$\nexit 7",
+    );
     let data = home.join("data");
     let mut open = command(PROGRAM, &home);
     open.args(["lab", "--port", "8877", "--no-browser", "."]).args(["--", "--allow-root"]);
     open.current_dir(&home).env("PATH", &home).env("JUPYTER_DATA_DIR", &data);
-    let child = open.stdout(std::process::Stdio::piped()).stderr(std::process::Stdio::piped()).spawn().unwrap();
+    let child =
+        open.stdout(std::process::Stdio::piped()).stderr(std::process::Stdio::piped()).spawn().unwrap();
     let process = child.id();
     let ended = child.wait_with_output().unwrap();
     let (out, err) = (String::from_utf8(ended.stdout).unwrap(), String::from_utf8(ended.stderr).unwrap());

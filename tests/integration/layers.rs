@@ -20,9 +20,15 @@ const LAYERS: [&str; 12] = [
 ];
 
 /// Crates that only some layers may use.
-const KEPT_INSIDE: [(&str, &[&str]); 8] = [
+const KEPT_INSIDE: [(&str, &[&str]); 14] = [
     ("nom::", &["language"]),
     ("annotate_snippets::", &["display"]),
+    ("pdf_writer::", &["display"]),
+    ("subsetter::", &["display"]),
+    ("miniz_oxide::", &["display"]),
+    ("tiny_skia::", &["display"]),
+    ("ttf_parser::", &["display"]),
+    ("base64::", &["notebook"]),
     ("csv::", &["files"]),
     ("serde_json::", &["notebook", "kernel", "lab"]),
     ("rustyline::", &["talk"]),

@@ -13,6 +13,7 @@ mod certified_science;
 mod command_line;
 mod completion;
 mod events;
+mod figure_files;
 mod figures;
 mod front_ends;
 mod grammar;

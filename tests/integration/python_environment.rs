@@ -31,7 +31,16 @@ pub(crate) fn python(name: &str, requirements: &Path, need: &str) -> Result<Path
     })?;
     printed(
         Command::new(&python)
-            .args(["-m", "pip", "install", "--quiet", "--no-compile", "--only-binary", ":all:", "--requirement"])
+            .args([
+                "-m",
+                "pip",
+                "install",
+                "--quiet",
+                "--no-compile",
+                "--only-binary",
+                ":all:",
+                "--requirement",
+            ])
             .arg(requirements),
     )
     .map_err(|error| {
