@@ -247,7 +247,14 @@ fn outputs(session: &Session, reply: &CellReply, media: Media) -> Vec<Json> {
     for output in &reply.outputs {
         match &output.result {
             Err(problem) if !is_told(reply, problem) => outputs.push(error(session, problem)),
-            Ok(_) | Err(_) => {
+            Err(problem) => {
+                let place = display::problem_line(problem, &|id| session.source(id));
+                let expression = &output.expression;
+                let words =
+                    words_bundle(&format!("{expression}\nnot shown, because of the error at {place}"));
+                outputs.push(display_data(words, &json!({"rhythmite": result_metadata(output)})));
+            }
+            Ok(_) => {
                 let metadata = json!({"rhythmite": result_metadata(output)});
                 let Pieces { figure, figure_metadata, words } = pieces(session, output, several, media);
                 if let Some(figure) = figure {

@@ -165,7 +165,7 @@ fn what_waits_for_the_mistake_of_its_own_cell_points_to_it() {
     let outputs = outputs(&written);
     assert_eq!(outputs[0].len(), 2);
     assert_eq!(outputs[0][0]["output_type"], "error");
-    assert_eq!(plain(&outputs[0][1]), "x\n  not shown, because of the error at cell 1:1:5");
+    assert_eq!(plain(&outputs[0][1]), "x\nnot shown, because of the error at cell 1:1:5");
 }
 
 #[test]
