@@ -150,11 +150,17 @@ class Page:
 
     def open(self, name, in_notebook=False):
         """Open a notebook and wait for its kernel."""
-        # A workspace of its own: what another page left open must not come back.
-        workspace = f"page-{id(self)}"
-        place = f"notebooks/{name}" if in_notebook else f"lab/workspaces/{workspace}/tree/{name}"
-        self.page.goto(self.server.address(place))
+        self.page.goto(self.server.address(f"notebooks/{name}" if in_notebook else self.lab(name)))
         self.wait_idle()
+
+    def open_text(self, name):
+        """Open a file in the text editor."""
+        self.page.goto(self.server.address(self.lab(name)))
+        self.page.wait_for_selector(".jp-FileEditor .cm-line span")
+
+    def lab(self, name):
+        # A workspace of its own: what another page left open must not come back.
+        return f"lab/workspaces/page-{id(self)}/tree/{name}"
 
     def reload(self):
         self.page.reload()

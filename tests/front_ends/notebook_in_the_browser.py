@@ -158,6 +158,11 @@ def test_highlighting_colours_units_eras_labels_and_functions(scene):
     assert "WW/m2" not in colours, "a unit that does not exist stays plain"
     assert colours["f"] == colours["a"], "a function that is defined is a definition"
     page.picture("highlighting")
+    page.open_text("demo/lake.rhy")
+    spans = page.page.locator(".jp-FileEditor .cm-line span").evaluate_all(
+        "all => all.map(one => [one.textContent, getComputedStyle(one).color])"
+    )
+    assert dict(spans).get("yr") == colours["yr"], "a script is coloured as a cell is"
 
 
 def test_completion_shows_names_and_what_they_are(scene):
