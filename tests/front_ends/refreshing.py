@@ -49,6 +49,14 @@ def refreshed_in_place(checks, program):
         order = [update.content["metadata"]["rhythmite"]["expression"] for update in updates]
         checks.equal(order, ["double", "constant(double)", "constant(double)"], "what others follow from comes first")
         checks.equal(book.shows("driver"), "", "the cell itself shows nothing")
+        book.run("several", "sun * 3\nsun * 4")
+        before = book.shows("several")
+        book.run("driver", "sun = 6 W/m2\nclock = 1850..1860 CE by 1 yr")
+        after = book.shows("several")
+        checks.that("sun * 3" in before and "sun * 3" in after and "24 W/m2" in after,
+                    "where a cell shows several results, each keeps its expression", [before, after])
+        book.run("several", "")
+        book.run("driver", "sun = 5 W/m2\nclock = 1850..1860 CE by 1 yr")
         same = book.run("driver", "sun = (5 W/m2)   # the same\nclock = 1850..1860 CE by 1 yr")
         checks.equal(same.outputs, [], "what means the same moves nothing")
         several = book.run("driver", "sun = 6 W/m2\nclock = 1850..1870 CE by 1 yr")
