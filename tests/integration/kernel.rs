@@ -12,7 +12,12 @@ fn hold(script: &str) {
     static RUNNING: Mutex<()> = Mutex::new(());
     let python = front_end_python();
     let _running = RUNNING.lock();
-    let said = printed(Command::new(python).arg(folder().join(script)).arg(env!("CARGO_BIN_EXE_rhythmite")));
+    let said = printed(
+        Command::new(python)
+            .env("PYTHONDONTWRITEBYTECODE", "1")
+            .arg(folder().join(script))
+            .arg(env!("CARGO_BIN_EXE_rhythmite")),
+    );
     match said {
         Ok(said) => assert!(said.contains(" passed, 0 failed"), "{said}"),
         Err(failures) => panic!("{failures}"),
