@@ -435,7 +435,8 @@ impl Audience for Execution<'_> {
             self.beyond_reach.push(drawn.cell.clone());
             self.perhaps_gone |= drawn.is_gone();
         }
-        let Pieces { figure, figure_metadata, words } = pieces(session, output, false, self.kernel.media);
+        let several = session.shown_in(&output.cell) > 1;
+        let Pieces { figure, figure_metadata, words } = pieces(session, output, several, self.kernel.media);
         // A result that is drawn now and was not before takes the place of its numbers.
         let (figure, words) = match (&drawn.figure, figure) {
             (None, Some(figure)) => (None, figure),

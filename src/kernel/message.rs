@@ -70,8 +70,8 @@ pub(super) struct Seal {
 
 #[derive(Default)]
 struct Seen {
-    signatures: HashSet<Vec<u8>>,
-    order: VecDeque<Vec<u8>>,
+    signatures: HashSet<[u8; 32]>,
+    order: VecDeque<[u8; 32]>,
 }
 
 impl Seal {
@@ -103,8 +103,9 @@ impl Seal {
         if seal.verify_slice(&given).is_err() {
             return Err("its signature does not fit");
         }
+        let Ok(given) = <[u8; 32]>::try_from(given) else { return Err("its signature does not fit") };
         let mut seen = self.seen.lock().unwrap_or_else(PoisonError::into_inner);
-        if !seen.signatures.insert(given.clone()) {
+        if !seen.signatures.insert(given) {
             return Err("it was sent before");
         }
         seen.order.push_back(given);

@@ -42,6 +42,8 @@ pub fn serve(connection_file: &Path, session: Session, media: Media) -> Result<(
         .build()
         .map_err(|error| Refusal(format!("no threads to listen on: {error}")))?;
     runtime.block_on(async {
+        // Before anything is made that a signal would leave behind.
+        let ending = parent::signalled();
         let seal = Arc::new(Seal::new(connection.key.clone()));
         let (arrivals, mut requests) = tokio::sync::mpsc::unbounded_channel();
         let arrive = move |channel, request| {
@@ -57,7 +59,7 @@ pub fn serve(connection_file: &Path, session: Session, media: Media) -> Result<(
                 taken.take(channel, request);
             }
         });
-        kernel.ended(parent::signalled()).await;
+        kernel.ended(ending).await;
         drop(guards);
         Ok(())
     })?;

@@ -20,31 +20,37 @@ pub(super) enum End {
     Orphaned,
 }
 
-/// Wait until something outside ends the kernel.
-pub(super) async fn signalled() -> End {
+/// Wait until something outside ends the kernel. Signals that come after the call are heard, however late it is awaited.
+pub(super) fn signalled() -> impl Future<Output = End> {
     let parent = std::os::unix::process::parent_id();
+    let (terminate, hangup) = (came(SignalKind::terminate()), came(SignalKind::hangup()));
     let started = std::env::var_os(PARENT).is_some();
-    let orphaned = async {
+    let orphaned = async move {
         // One that was started by hand outlives the shell it was started from.
         while !started || std::os::unix::process::parent_id() == parent {
             tokio::time::sleep(BETWEEN_LOOKS).await;
         }
         End::Orphaned
     };
-    tokio::select! {
-        () = came(SignalKind::terminate()) => End::Signal,
-        () = came(SignalKind::hangup()) => End::Signal,
-        end = orphaned => end,
+    async move {
+        tokio::select! {
+            () = terminate => End::Signal,
+            () = hangup => End::Signal,
+            end = orphaned => end,
+        }
     }
 }
 
-/// Wait for a signal; for ever where it cannot be waited for.
-pub(super) async fn came(kind: SignalKind) {
-    let came = match signal(kind) {
-        Ok(mut signal) => signal.recv().await,
-        Err(_) => None,
-    };
-    if came.is_none() {
-        std::future::pending::<()>().await;
+/// Wait for a signal that comes after the call; for ever where it cannot be waited for.
+pub(super) fn came(kind: SignalKind) -> impl Future<Output = ()> {
+    let listening = signal(kind);
+    async move {
+        let came = match listening {
+            Ok(mut signal) => signal.recv().await,
+            Err(_) => None,
+        };
+        if came.is_none() {
+            std::future::pending::<()>().await;
+        }
     }
 }

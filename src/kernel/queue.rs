@@ -7,6 +7,10 @@ use super::message::Request;
 /// For so long after a failure a request that was sent before it still counts as queued behind the cell that failed.
 const ON_ITS_WAY: Duration = Duration::from_secs(1);
 
+/// For so long a reply that tells of a failure is held back: cells that were sent together with the one that failed
+/// arrive meanwhile. A cell that fails in no time would else be answered before those sent behind it are here.
+const HELD_BACK: Duration = Duration::from_millis(20);
+
 /// Cells that wait to be run, in the order in which they came.
 #[derive(Default)]
 pub(super) struct Queue {
@@ -54,8 +58,9 @@ impl Queue {
         }
     }
 
-    /// A cell failed: those that came before now are not run.
+    /// A cell failed, of which its front end is told when this returns: those that came before then are not run.
     pub(super) fn fail(&self) {
+        std::thread::sleep(HELD_BACK);
         self.lock().failed = Some((SystemTime::now(), Instant::now()));
     }
 

@@ -44,6 +44,13 @@ class Checks:
             print(f"  FAILED  {what}" + (f"\n          seen: {seen}" if seen != "" else ""), flush=True)
         return bool(holds)
 
+    def open(self, holds, what):
+        """Something that is known not to hold yet; once it does, this must become a check."""
+        if holds:
+            self.that(False, f"{what} (it holds now: make this a check)")
+        else:
+            print(f"  OPEN    {what}", flush=True)
+
     def equal(self, seen, expected, what):
         return self.that(seen == expected, what, f"{seen!r}, not {expected!r}")
 

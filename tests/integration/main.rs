@@ -17,6 +17,7 @@ mod figure_files;
 mod figures;
 mod front_ends;
 mod grammar;
+mod kernel;
 mod lab;
 mod layers;
 mod notebooks;
