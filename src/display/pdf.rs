@@ -1,6 +1,8 @@
 //! Figures as PDF: one page as large as the figure, on white, its words in an embedded typeface and to be copied.
 
+use std::borrow::Cow;
 use std::collections::{BTreeMap, BTreeSet};
+use std::sync::{Arc, Mutex, PoisonError};
 
 use miniz_oxide::deflate::compress_to_vec_zlib;
 use pdf_writer::types::{CidFontType, FontFlags, LineCapStyle, LineJoinStyle, SystemInfo, UnicodeCmap};
@@ -16,6 +18,9 @@ const POINTS: f64 = 0.75;
 
 /// Lists of numbers get little smaller at higher levels, and much slower.
 const LEVEL: u8 = 1;
+
+/// Data shorter than this are not compressed: to begin with it takes longer than all the rest, and saves little.
+const SHORT: usize = 4096;
 
 /// Without blanks and breaks that nobody reads.
 const TERSE: Settings = Settings { pretty: false };
@@ -222,9 +227,21 @@ fn components(colour: Colour) -> [f32; 3] {
     colour.on_white().map(|byte| (f32::from(byte) / 0.255).round() / 1000.0)
 }
 
+/// Data as they stand in the document, and how they are read.
+fn packed(data: &[u8]) -> (Cow<'_, [u8]>, Option<Filter>) {
+    if data.len() < SHORT {
+        (Cow::Borrowed(data), None)
+    } else {
+        (Cow::Owned(compress_to_vec_zlib(data, LEVEL)), Some(Filter::FlateDecode))
+    }
+}
+
 fn stream(chunk: &mut Chunk, id: Ref, data: &[u8]) {
-    let packed = compress_to_vec_zlib(data, LEVEL);
-    chunk.stream(id, &packed).filter(Filter::FlateDecode);
+    let (packed, filter) = packed(data);
+    let mut stream = chunk.stream(id, &packed);
+    filter.into_iter().for_each(|filter| {
+        stream.filter(filter);
+    });
 }
 
 /// Put what is used of a typeface into the document. Codes are letters and not glyphs, so that letters that are drawn
@@ -236,13 +253,12 @@ fn embed(
     typeface: &Typeface,
     used: &Used,
 ) -> Option<()> {
-    let mut glyphs = GlyphRemapper::new();
+    let part = Part::of(typeface, &used.letters)?;
     let (mut map, mut meanings) = (vec![0, 0], UnicodeCmap::new(Name(b"letters"), ADOBE_IDENTITY));
     for (code, letter) in (1..u16::MAX).zip(&used.letters) {
-        map.extend(glyphs.remap(letter.glyph).to_be_bytes());
+        map.extend(part.glyphs.get(letter.glyph).unwrap_or(0).to_be_bytes());
         meanings.pair(code, letter.character);
     }
-    let file = subset(typeface.data, 0, &glyphs).ok()?;
     let name = format!("{}+{}", tag(&used.letters), typeface.name);
     let [descendant, descriptor, letters, places, data] = [id(), id(), id(), id(), id()];
     chunk
@@ -269,12 +285,57 @@ fn embed(
         .cap_height(extent.capitals)
         .stem_v(if typeface.name.ends_with("Bold") { 140.0 } else { 88.0 })
         .font_file2(data);
-    let meanings = compress_to_vec_zlib(meanings.finish().as_slice(), LEVEL);
-    chunk.cmap(letters, &meanings).filter(Filter::FlateDecode);
+    let meanings = meanings.finish();
+    let (packed, filter) = packed(meanings.as_slice());
+    let mut map_of_letters = chunk.cmap(letters, &packed);
+    filter.into_iter().for_each(|filter| {
+        map_of_letters.filter(filter);
+    });
+    map_of_letters.finish();
     stream(chunk, places, &map);
-    let packed = compress_to_vec_zlib(&file, LEVEL);
-    chunk.stream(data, &packed).filter(Filter::FlateDecode).pair(Name(b"Length1"), file.len() as i32);
+    chunk.stream(data, &part.packed).filter(Filter::FlateDecode).pair(Name(b"Length1"), part.length as i32);
     Some(())
+}
+
+/// The part of a typeface that a document needs, as a file.
+struct Part {
+    /// Which glyph of the typeface is which of the part.
+    glyphs: GlyphRemapper,
+    packed: Vec<u8>,
+    /// Of the file before it was packed.
+    length: usize,
+}
+
+/// The letters of fingerprints: they are in every part, so that a figure that is refreshed needs the part that it had.
+const FINGERPRINTS: &str = "0123456789abcdef";
+
+/// How many parts are remembered.
+const REMEMBERED: usize = 64;
+
+impl Part {
+    /// Of those that were made before, or a new one: to make one takes a third of the time of a document.
+    fn of(typeface: &Typeface, letters: &[Letter]) -> Option<Arc<Self>> {
+        static MADE: Mutex<BTreeMap<(&str, Vec<u16>), Arc<Part>>> = Mutex::new(BTreeMap::new());
+        let always = typeface.letters(FINGERPRINTS);
+        let mut glyphs: Vec<u16> = letters.iter().chain(&always).map(|letter| letter.glyph).collect();
+        glyphs.sort_unstable();
+        glyphs.dedup();
+        let key = (typeface.name, glyphs);
+        let made = || MADE.lock().unwrap_or_else(PoisonError::into_inner);
+        if let Some(part) = made().get(&key) {
+            return Some(part.clone());
+        }
+        let glyphs = GlyphRemapper::new_from_glyphs_sorted(&key.1);
+        let file = subset(typeface.data, 0, &glyphs).ok()?;
+        let packed = compress_to_vec_zlib(&file, LEVEL);
+        let part = Arc::new(Self { glyphs, packed, length: file.len() });
+        let mut made = made();
+        if made.len() >= REMEMBERED {
+            made.clear();
+        }
+        made.insert(key, part.clone());
+        Some(part)
+    }
 }
 
 /// Six capital letters that tell this part of a typeface from other parts, as the format asks for.

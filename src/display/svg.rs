@@ -4,7 +4,7 @@
 //! stands in the page itself, `svg:root` is not it and the page's colour holds.
 
 use super::drawing::{Anchor, Colour, Paint, Shape, Stroke, TEXT_ON_WHITE, TEXT_SIZE, Words, drawing};
-use super::markup::{Element, Markup, number};
+use super::markup::{Element, Markup, number, push_number};
 use crate::value::Figure;
 
 /// The colour of words and axes on dark grounds.
@@ -111,10 +111,12 @@ fn stroked<'a>(element: Element<'a>, stroke: &Stroke) -> Element<'a> {
 }
 
 fn polyline(places: &[[f64; 2]]) -> String {
-    let mut path = String::new();
+    let mut path = String::with_capacity(places.len() * 14);
     for (index, [x, y]) in places.iter().enumerate() {
-        path += if index == 0 { "M" } else { "L" };
-        path += &format!("{} {}", number(*x), number(*y));
+        path.push(if index == 0 { 'M' } else { 'L' });
+        push_number(&mut path, *x);
+        path.push(' ');
+        push_number(&mut path, *y);
     }
     path
 }

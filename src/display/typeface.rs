@@ -41,10 +41,10 @@ impl Letter {
 /// The glyph of what a typeface has not.
 const BOX: u16 = 0;
 
-/// How large digits above and below the line are, and how far from it, where they are made of those on the line: about
-/// as the typeface's own.
-const SMALL: f64 = 0.6;
-const RAISED: f64 = 0.275;
+/// How large letters above and below the line are that are made of those on the line, and how far from it: about as the
+/// typeface's own.
+const SMALL: f64 = 0.62;
+const RAISED: f64 = 0.27;
 const LOWERED: f64 = -0.085;
 
 impl Typeface {
@@ -80,12 +80,15 @@ impl Typeface {
             let blank = matches!(character, '\t' | '\n' | '\r');
             return drawn(if blank { self.glyph(' ').unwrap_or(BOX) } else { BOX }, 1.0, 0.0);
         }
-        if let Some(glyph) = self.glyph(character) {
+        let raised = matches!(character, '¹' | '²' | '³' | '\u{2070}'..='\u{207f}');
+        // The typeface has some digits above the line, of two sizes, and no minus: all are made of those on the line.
+        if let Some(glyph) = self.glyph(character).filter(|_| !raised) {
             return drawn(glyph, 1.0, 0.0);
         }
         match (stand_in(character).and_then(|other| self.glyph(other)), character) {
             (None, _) => drawn(BOX, 1.0, 0.0),
-            (Some(glyph), '\u{1d2c}'..='\u{1d61}' | '\u{2070}'..='\u{207f}') => drawn(glyph, SMALL, RAISED),
+            (Some(glyph), _) if raised => drawn(glyph, SMALL, RAISED),
+            (Some(glyph), '\u{1d2c}'..='\u{1d61}') => drawn(glyph, SMALL, RAISED),
             (Some(glyph), '\u{1d62}'..='\u{1d6a}' | '\u{2080}'..='\u{209c}' | '\u{2c7c}') => {
                 drawn(glyph, SMALL, LOWERED)
             }
@@ -178,12 +181,14 @@ mod tests {
     }
 
     #[test]
-    fn a_minus_above_the_line_is_a_small_minus() {
-        let [minus, two, plain] = letters("⁻²−")[..] else { panic!("three letters") };
-        assert_eq!((minus.glyph, minus.character), (plain.glyph, '⁻'));
-        assert!(minus.width() < plain.width() && minus.rise > 0.2);
-        assert!(two.glyph != minus.glyph && two.rise.abs() < 1e-9, "the typeface has its own");
-        assert!(letters("ₙ")[0].rise < 0.0);
+    fn a_minus_above_the_line_is_a_small_minus_and_all_digits_there_are_alike() {
+        let (raised, plain) = (letters("⁻⁰¹²⁴⁹"), letters("−01249"));
+        for (raised, plain) in raised.iter().zip(&plain) {
+            assert_eq!(raised.glyph, plain.glyph);
+            assert!(raised.character != plain.character && raised.width() < plain.width());
+            assert!(raised.rise > 0.2);
+        }
+        assert!(letters("ₙ")[0].rise < 0.0 && letters("₂")[0].rise.abs() < 1e-9, "the typeface has its own");
     }
 
     #[test]

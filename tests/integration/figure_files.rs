@@ -78,8 +78,9 @@ impl Document {
                     let start = file.len() - rest.len() - "endobj".len() - head.len() + at + "stream\n".len();
                     let data = &file[start..start + length];
                     assert!(text(&file[start + length..]).starts_with("\nendstream"));
-                    assert!(dictionary.contains("/Filter/FlateDecode"), "{dictionary}");
-                    (dictionary.to_owned(), decompress_to_vec_zlib(data).unwrap())
+                    let packed = dictionary.contains("/Filter/FlateDecode");
+                    let data = if packed { decompress_to_vec_zlib(data).unwrap() } else { data.to_vec() };
+                    (dictionary.to_owned(), data)
                 }
             };
             objects.insert(number, object);
