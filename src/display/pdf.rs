@@ -306,6 +306,9 @@ struct Part {
     length: usize,
 }
 
+/// Parts by the name of their typeface and their glyphs in order.
+type Parts = BTreeMap<(&'static str, Vec<u16>), Arc<Part>>;
+
 /// The letters of fingerprints: they are in every part, so that a figure that is refreshed needs the part that it had.
 const FINGERPRINTS: &str = "0123456789abcdef";
 
@@ -315,7 +318,7 @@ const REMEMBERED: usize = 64;
 impl Part {
     /// Of those that were made before, or a new one: to make one takes a third of the time of a document.
     fn of(typeface: &Typeface, letters: &[Letter]) -> Option<Arc<Self>> {
-        static MADE: Mutex<BTreeMap<(&str, Vec<u16>), Arc<Part>>> = Mutex::new(BTreeMap::new());
+        static MADE: Mutex<Parts> = Mutex::new(Parts::new());
         let always = typeface.letters(FINGERPRINTS);
         let mut glyphs: Vec<u16> = letters.iter().chain(&always).map(|letter| letter.glyph).collect();
         glyphs.sort_unstable();
