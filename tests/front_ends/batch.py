@@ -9,6 +9,7 @@ import shutil
 import signal
 import subprocess
 import sys
+import time
 from pathlib import Path
 
 import nbformat
@@ -19,7 +20,7 @@ from nbclient import NotebookClient
 from nbconvert import HTMLExporter, LatexExporter, MarkdownExporter, PDFExporter
 from papermill.translators import Translator, papermill_translators
 
-from conversation import Checks, enrolled, program_from_arguments, without_colours
+from conversation import Checks, enrolled, gone, program_from_arguments, without_colours
 
 DEMO = Path(__file__).resolve().parent.parent.parent / "notebooks-demo"
 KERNEL = {"name": "rhythmite", "display_name": "Rhythmite", "language": "rhythmite"}
@@ -217,8 +218,10 @@ def in_the_console(checks, folder):
             checks.that("W/m2 and K measure different things" in words and "^" in words, "a mistake has its place", words)
             kernels = psutil.Process(console.pid).children(recursive=True)
             console.kill(signal.SIGKILL)
-            _, left = psutil.wait_procs(kernels, timeout=2)
-            checks.that(len(kernels) == 1 and not left, "a console that is killed leaves no kernel behind", [kernels, left])
+            end = time.monotonic() + 2
+            while not all(gone(kernel.pid) for kernel in kernels) and time.monotonic() < end:
+                time.sleep(0.05)
+            checks.that(len(kernels) == 1 and gone(kernels[0].pid), "a console that is killed leaves no kernel behind", kernels)
         finally:
             console.close(force=True)
 
