@@ -101,3 +101,26 @@ fn a_figure_never_takes_the_place_of_an_input() {
     assert_eq!(elsewhere.code, Some(0), "{elsewhere:?}");
     assert_eq!(names(&folder.join("figures")), ["01-x.svg"]);
 }
+
+#[test]
+fn figures_are_written_in_every_format_that_is_asked_for() {
+    let folder = prepared("formats", SERIES);
+    let run = run_in(&folder, &["run", "s.rhy", "--figures", "figures", "--figures-as", "svg,pdf,png"]);
+    assert_eq!(run.code, Some(0), "{run:?}");
+    assert_eq!(names(&folder.join("figures")), ["01-x.pdf", "01-x.png", "01-x.svg"]);
+    for (ending, beginning) in [("pdf", &b"%PDF-1.7"[..]), ("png", b"\x89PNG\r\n\x1a\n"), ("svg", b"<svg ")] {
+        let file = fs::read(folder.join("figures/01-x").with_extension(ending)).unwrap();
+        assert!(file.starts_with(beginning), "{ending}");
+    }
+    let alone = run_in(&folder, &["run", "s.rhy", "--figures", "more", "--figures-as", "pdf"]);
+    assert_eq!((alone.code, names(&folder.join("more"))), (Some(0), vec!["01-x.pdf".to_owned()]));
+}
+
+#[test]
+fn what_says_how_figures_are_written_needs_figures() {
+    let folder = prepared("no-figures", SERIES);
+    for arguments in [&["--figures-as", "pdf"][..], &["--png"], &["--figures", "f", "--figures-as", "gif"]] {
+        let run = run_in(&folder, &[&["run", "s.rhy"], arguments].concat());
+        assert_eq!((run.code, run.out.as_str()), (Some(2), ""), "{run:?}");
+    }
+}

@@ -234,3 +234,26 @@ fn the_checker_itself_refuses_what_is_wrong() {
         assert!(std::panic::catch_unwind(|| check(&book)).is_err(), "change {number}");
     }
 }
+
+#[test]
+fn a_figure_is_there_for_pages_and_for_papers_and_as_pixels_where_asked() {
+    let book = notebook(&["clock = 1850..1900 CE by 1 yr\nconstant(1 ± 0.2 W/m2)"]).to_string();
+    let mut formats = Vec::new();
+    for arguments in [&["--format", "ipynb"][..], &["--format", "ipynb", "--png"]] {
+        let ran = run("media", "b.ipynb", book.as_bytes(), arguments);
+        assert_eq!(ran.code, Some(0), "{ran:?}");
+        check(&ran.json());
+        let figure = outputs(&ran.json())[0][0].clone();
+        let data = figure["data"].as_object().unwrap().clone();
+        let encoded = |kind: &str| data[kind].as_array().unwrap()[0].as_str().unwrap().to_owned();
+        assert!(encoded("application/pdf").starts_with("JVBERi0xLjcK"), "%PDF-1.7 in base64");
+        if data.contains_key("image/png") {
+            assert!(encoded("image/png").starts_with("iVBORw0KGgo"));
+            assert_eq!(figure["metadata"]["image/png"]["width"], json!(720.0));
+        }
+        assert!(figure["metadata"]["rhythmite"]["fingerprint"].is_string());
+        formats.push(data.keys().cloned().collect::<Vec<_>>());
+    }
+    let always = ["text/plain", "image/svg+xml", "application/pdf"];
+    assert_eq!(formats, [&always[..], &[&always[..], &["image/png"]].concat()]);
+}
