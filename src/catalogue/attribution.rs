@@ -222,6 +222,8 @@ fn attribute(call: &Call<'_>) -> Result<Value, Stop> {
     for (label, series) in &regressors {
         columns.push(bring(call.context, series, label, &axis)?.member(0).to_vec());
     }
+    let cancellation = call.context.cancellation();
+    cancellation.check()?;
     let complete: Vec<usize> = (0..axis.len())
         .filter(|row| value_at(observed.member(0), *row).is_finite())
         .filter(|row| columns.iter().all(|column| value_at(column, *row).is_finite()))
@@ -235,7 +237,9 @@ fn attribute(call: &Call<'_>) -> Result<Value, Stop> {
 
     let slices: Vec<&[f64]> = columns.iter().map(Vec::as_slice).collect();
     let blamed = |error| regression_fault(&error, &labels);
+    cancellation.check()?;
     let design = regression::Design::new(&slices).map_err(blamed)?;
+    cancellation.check()?;
     let (fit, noise, rho) = fit(call, &fitted_axis, &response, &design, &labels)?;
 
     let intervals = fit.intervals(0.9).map_err(|error| regression_fault(&error, &labels))?;

@@ -6,7 +6,7 @@ use super::call::{Call, Path, Stop, wrong_kind};
 use super::entry::{Body, Entry, Fails, Room, Shows};
 use super::onto::counted;
 use super::time::clock_argument;
-use crate::base::Fault;
+use crate::base::{Cancelled, Fault};
 use crate::files::{self, AxisForm, FileFault, ReadEra, SeriesOptions};
 use crate::language::{Choice, Parameter, Signature};
 use crate::science::reduce;
@@ -79,6 +79,7 @@ fn load(call: &Call<'_>) -> Result<Value, Stop> {
             .map(|(word, _)| if word == "steps" { AxisForm::Steps } else { AxisForm::Instants }),
         missing: call.text("missing")?.into_iter().map(|text| text.to_string()).collect(),
         decimal_comma: call.choice("decimals").is_some_and(|(word, _)| word == "comma"),
+        cancellation: call.context.cancellation().clone(),
     };
     let pattern = call.text("members")?;
     let read = match &pattern {
@@ -172,6 +173,9 @@ fn ensemble_rows(mut members: Vec<Vec<f64>>, path: Path) -> Block {
 }
 
 pub(super) fn placed_in_file(path: &str, fault: FileFault) -> Fault {
+    if fault.is_interruption() {
+        return Cancelled.into();
+    }
     let place = fault.place.as_ref().map(|place| format!(", {place}")).unwrap_or_default();
     let mut placed = Fault::new(fault.code, format!("{path}{place}: {}", fault.message)).blame("file");
     placed.help = fault.help;

@@ -57,8 +57,8 @@ fn load_table(call: &Call<'_>) -> Result<Value, Stop> {
         missing: call.text("missing")?.into_iter().map(|text| text.to_string()).collect(),
         decimal_comma: call.choice("decimals").is_some_and(|(word, _)| word == "comma"),
     };
-    let read =
-        files::read_whole_table(&file.bytes, &options).map_err(|fault| placed_in_file(&path, fault))?;
+    let read = files::read_whole_table(&file.bytes, &options, call.context.cancellation())
+        .map_err(|fault| placed_in_file(&path, fault))?;
     for note in read.notes {
         call.context.note(format!("{path}: {note}"));
     }

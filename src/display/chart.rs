@@ -1,5 +1,7 @@
 //! Which figure a result is drawn as, if any.
 
+use std::ops::Range;
+
 use super::text;
 use super::ticks::{time_ticks, value_ticks};
 use crate::value::{
@@ -23,6 +25,9 @@ const STAIRS: usize = 80;
 
 /// Up to so many instants have a dot each.
 const DOTS: usize = 60;
+
+/// So many values beside each other can be told apart in any drawing; of more, the outermost of their neighbours count.
+const DISTINCT: usize = 10_000;
 
 /// How many components of a bundle have a style and a label of their own.
 const NUMBERED: usize = 12;
@@ -230,24 +235,55 @@ fn bounded(value: f64) -> f64 {
 
 /// The numbers of the values in each stretch without a gap. A gap is a value that is missing, steps that are missing,
 /// or more time between instants than is bridged by rule: three median distances.
-fn stretches(axis: &Axis, known: &dyn Fn(usize) -> bool) -> Vec<Vec<usize>> {
+fn stretches(axis: &Axis, known: &dyn Fn(usize) -> bool) -> Vec<Range<usize>> {
     let allowed_years = match axis.kind {
         AxisKind::Steps => 0.01 * axis.median_step(),
         AxisKind::Instants => 3.0 * axis.median_step(),
     };
-    let mut runs: Vec<Vec<usize>> = Vec::new();
+    let mut runs: Vec<Range<usize>> = Vec::new();
     for (index, start) in axis.starts().iter().enumerate() {
         if !known(index) {
             continue;
         }
-        let before = index.checked_sub(1).filter(|before| known(*before));
-        let distance = before.and_then(|before| axis.ends().get(before)).map(|end| start - end);
-        match (distance, runs.last_mut()) {
-            (Some(distance), Some(run)) if distance <= allowed_years * (1.0 + 1e-9) => run.push(index),
-            _ => runs.push(vec![index]),
+        let before = index.checked_sub(1).and_then(|before| axis.ends().get(before));
+        match (before, runs.last_mut()) {
+            (Some(end), Some(run)) if run.end == index && start - end <= allowed_years * (1.0 + 1e-9) => {
+                run.end = index + 1;
+            }
+            _ => runs.push(index..index + 1),
         }
     }
     runs
+}
+
+/// The numbers of a stretch that are drawn: of very many only the first, the lowest, the highest and the last of as many
+/// as nobody can tell apart.
+fn drawn(run: Range<usize>, axis: &Axis, range: &dyn Fn(usize) -> (f64, f64)) -> Vec<usize> {
+    let together = axis.len() / DISTINCT;
+    if together < 2 {
+        return run.collect();
+    }
+    let mut kept = Vec::new();
+    for first in run.clone().step_by(together) {
+        let last = (first + together - 1).min(run.end - 1);
+        let (mut lowest, mut highest) = (first, first);
+        for index in first..=last {
+            if range(index).0 < range(lowest).0 {
+                lowest = index;
+            }
+            if range(index).1 > range(highest).1 {
+                highest = index;
+            }
+        }
+        let mut wanted = [first, lowest, highest, last];
+        wanted.sort_unstable();
+        for index in wanted {
+            if kept.last() != Some(&index) {
+                kept.push(index);
+            }
+        }
+    }
+    kept
 }
 
 /// Where value number `index` is drawn: at its instant or the middle of its step, or from end to end of a short row of
@@ -268,7 +304,8 @@ fn line(series: &ShownSeries, factor: f64, ink: Ink, label: Option<String>) -> M
     let runs = stretches(&series.axis, &|index| value(index).is_finite())
         .into_iter()
         .map(|run| {
-            run.into_iter()
+            drawn(run, &series.axis, &|index| (value(index), value(index)))
+                .into_iter()
                 .flat_map(|index| places(&series.axis, index).map(move |place| [place, value(index)]))
                 .collect()
         })
@@ -288,7 +325,8 @@ fn band(series: &ShownSeries, factor: f64, ink: Ink) -> Mark {
     let runs = stretches(&series.axis, &|index| range(index).is_some())
         .into_iter()
         .map(|run| {
-            run.into_iter()
+            drawn(run, &series.axis, &|index| range(index).unwrap_or((f64::NAN, f64::NAN)))
+                .into_iter()
                 .filter_map(|index| Some((index, range(index)?)))
                 .flat_map(|(index, (low, high))| {
                     places(&series.axis, index).map(move |place| [place, low, high])

@@ -3,13 +3,19 @@
 use super::rows::{Cells, RowReader};
 use super::text_layout::{decode, find_delimiter, header_comments};
 use super::{FileFault, counted, quoted_names};
+use crate::base::Cancellation;
 use rayon::prelude::*;
 
+/// After so many rows it is asked whether to go on.
+pub(super) const BETWEEN_LOOKS: usize = 4096;
+
 /// What the reader of a table is told beforehand.
-#[derive(Debug, Clone, Default, PartialEq, Eq)]
+#[derive(Debug, Clone, Default)]
 pub struct DelimitedOptions {
     /// Numbers are written `3,14`. Here it only decides between delimiters.
     pub decimal_comma: bool,
+    /// Raised to stop the reading of a long file.
+    pub cancellation: Cancellation,
 }
 
 /// A table as text, its cells trimmed of white space.
@@ -23,6 +29,8 @@ pub struct DelimitedTable<'t> {
     pub has_header: bool,
     /// What was decided while reading.
     pub notes: Vec<String>,
+    /// Raised to stop the reading of a long file.
+    pub(super) cancellation: Cancellation,
     cells: Cells<'t>,
     row_width: usize,
     /// The text is not longer than 2 GiB, and so are its lines.
@@ -171,8 +179,10 @@ pub fn read_table<'t>(bytes: &'t [u8], options: &DelimitedOptions) -> Result<Del
         ));
         body.lines.push(first_line as u32);
     }
-    let parts: Vec<_> =
-        parts.into_par_iter().map(|rows| Body::read(rows, &columns, has_header, delimiter)).collect();
+    let parts: Vec<_> = parts
+        .into_par_iter()
+        .map(|rows| Body::read(rows, &columns, has_header, delimiter, &options.cancellation))
+        .collect();
     for part in parts {
         body.append(part?);
     }
@@ -186,7 +196,9 @@ pub fn read_table<'t>(bytes: &'t [u8], options: &DelimitedOptions) -> Result<Del
     comments.extend(rows.comments.drain(..).map(|comment| comment.1));
     let (row_width, found) = (first.len(), rows.found());
     let cells = Cells::found(text, found);
-    let mut table = DelimitedTable { comments, columns, has_header, notes, cells, row_width, row_lines };
+    let cancellation = options.cancellation.clone();
+    let mut table =
+        DelimitedTable { comments, columns, has_header, notes, cancellation, cells, row_width, row_lines };
     if table.row_count() == 0 {
         let names = quoted_names(first.iter().map(String::as_str));
         return Err(FileFault::new(
@@ -224,9 +236,13 @@ impl<'t> Body<'t> {
         columns: &[TextColumn],
         has_header: bool,
         delimiter: u8,
+        cancellation: &Cancellation,
     ) -> Result<Self, FileFault> {
         let mut body = Self { rows, lines: Vec::new(), empty_rows: 0 };
         while let Some(line) = body.rows.next_row()? {
+            if body.lines.len().is_multiple_of(BETWEEN_LOOKS) {
+                cancellation.check()?;
+            }
             if body.rows.row_is_empty() {
                 body.rows.drop_row();
                 body.empty_rows += 1;

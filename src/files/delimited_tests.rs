@@ -71,7 +71,10 @@ fn the_delimiter_is_found_and_noted_when_it_is_no_comma() {
     assert_eq!(semicolons.columns[1].unit_text.as_deref(), Some("degC, anomaly"));
     let commas = table(b"year,co2; dry (ppm)\n1850,1\n");
     assert_eq!((names(&commas), commas.notes.len()), (vec!["year", "co2; dry"], 0));
-    let told = read_table(b"1850,5;0,3\n1851,5;0,4\n", &DelimitedOptions { decimal_comma: true });
+    let told = read_table(
+        b"1850,5;0,3\n1851,5;0,4\n",
+        &DelimitedOptions { decimal_comma: true, ..DelimitedOptions::default() },
+    );
     assert!(told.is_ok_and(|told| cells(&told)[0] == ["1850,5", "0,3"]));
 }
 

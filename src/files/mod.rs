@@ -41,6 +41,8 @@ pub use whole_table::{ReadCells, ReadColumn, ReadTable, read_whole_table};
 
 use std::fmt;
 
+use crate::base::{Cancelled, INTERRUPTED};
+
 /// Where in a file something was found.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct Place {
@@ -79,6 +81,11 @@ impl FileFault {
         FileFault { code, message: message.into(), help: None, place: None }
     }
 
+    /// Whether it is no fault of the file: someone asked to stop.
+    pub fn is_interruption(&self) -> bool {
+        self.code == INTERRUPTED
+    }
+
     fn help(mut self, help: impl Into<String>) -> Self {
         self.help = Some(help.into());
         self
@@ -109,6 +116,12 @@ impl fmt::Display for FileFault {
 }
 
 impl std::error::Error for FileFault {}
+
+impl From<Cancelled> for FileFault {
+    fn from(_: Cancelled) -> Self {
+        FileFault::new(INTERRUPTED, "interrupted before it was read")
+    }
+}
 
 /// "1 value", "2 values": a count with its noun.
 fn counted(count: usize, noun: &str) -> String {

@@ -1,10 +1,11 @@
 //! Cells to numbers and gaps.
 
+use super::delimited::BETWEEN_LOOKS;
 use super::{DelimitedTable, FileFault, counted};
 use std::borrow::Cow;
 
 /// How the cells of a column of numbers are written.
-#[derive(Debug, Clone, Default, PartialEq, Eq)]
+#[derive(Debug, Clone, Default)]
 pub struct NumberOptions {
     /// What marks a missing value beside an empty cell, `NA`, `NaN`, `nan`, `null`, `-` and `--`. A
     /// marker that is a number (`-999`) is compared as a number, so that it meets `-999.00` too.
@@ -136,6 +137,9 @@ impl DelimitedTable<'_> {
         let mut gaps: Vec<GapKind> = Vec::new();
         let mut values = Vec::with_capacity(cells.len());
         for (row, column) in cells {
+            if values.len().is_multiple_of(BETWEEN_LOOKS) {
+                self.cancellation.check()?;
+            }
             let cell = self.cell(row, column);
             let said_missing = || options.missing.iter().any(|marker| marker.trim() == cell);
             let value = match parse_number(cell, options.decimal_comma) {
@@ -308,7 +312,8 @@ mod tests {
     use crate::files::{DelimitedOptions, read_table};
 
     fn numbers(text: &str, missing: &[&str], decimal_comma: bool) -> Result<NumberColumn, FileFault> {
-        let table = read_table(text.as_bytes(), &DelimitedOptions { decimal_comma })?;
+        let table =
+            read_table(text.as_bytes(), &DelimitedOptions { decimal_comma, ..DelimitedOptions::default() })?;
         let column = table.column_named("value")?;
         let missing = missing.iter().map(|&marker| marker.to_owned()).collect();
         table.numbers(column, &NumberOptions { missing, decimal_comma })

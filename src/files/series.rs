@@ -7,10 +7,11 @@ use super::time_axis::{AxisForm, axis_from};
 use super::time_column::{ReadEra, TimeChoice, TimeColumns, choose_time};
 use super::time_stamps::read_stamps;
 use super::{FileFault, quoted_names};
+use crate::base::Cancellation;
 use rayon::prelude::*;
 
 /// What the reader of a series is told beforehand. The default finds everything out.
-#[derive(Debug, Clone, Default, PartialEq, Eq)]
+#[derive(Debug, Clone, Default)]
 pub struct SeriesOptions {
     /// The time column, by name or whole header.
     pub time: Option<String>,
@@ -22,6 +23,8 @@ pub struct SeriesOptions {
     pub missing: Vec<String>,
     /// Numbers are written `3,14`.
     pub decimal_comma: bool,
+    /// Raised to stop the reading of a long file.
+    pub cancellation: Cancellation,
 }
 
 /// A series as read. Starts and values are of one length, at least 1.
@@ -143,7 +146,11 @@ struct Opened<'t> {
 
 impl<'t> Opened<'t> {
     fn new(bytes: &'t [u8], options: &SeriesOptions) -> Result<Self, FileFault> {
-        let table = read_table(bytes, &DelimitedOptions { decimal_comma: options.decimal_comma })?;
+        let delimited = DelimitedOptions {
+            decimal_comma: options.decimal_comma,
+            cancellation: options.cancellation.clone(),
+        };
+        let table = read_table(bytes, &delimited)?;
         let time = choose_time(&table, options.time.as_deref())?;
         let notes = table.notes.iter().chain(&time.notes).cloned().collect();
         Ok(Self { table, time, notes })

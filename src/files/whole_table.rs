@@ -3,6 +3,7 @@
 use super::delimited::{DelimitedOptions, DelimitedTable, read_table};
 use super::numbers::{NumberOptions, is_missing_marker, parse_number};
 use super::{FileFault, counted};
+use crate::base::Cancellation;
 
 /// A table as read.
 #[derive(Debug, Clone)]
@@ -39,8 +40,15 @@ pub enum ReadCells {
 ///
 /// # Errors
 /// Whatever is wrong with the file, at its line; two columns of one name.
-pub fn read_whole_table(bytes: &[u8], options: &NumberOptions) -> Result<ReadTable, FileFault> {
-    let table = read_table(bytes, &DelimitedOptions { decimal_comma: options.decimal_comma })?;
+pub fn read_whole_table(
+    bytes: &[u8],
+    options: &NumberOptions,
+    cancellation: &Cancellation,
+) -> Result<ReadTable, FileFault> {
+    let table = read_table(
+        bytes,
+        &DelimitedOptions { decimal_comma: options.decimal_comma, cancellation: cancellation.clone() },
+    )?;
     let mut notes = table.notes.clone();
     let mut columns = Vec::with_capacity(table.columns.len());
     for (column, head) in table.columns.iter().enumerate() {

@@ -40,6 +40,9 @@ fn abort(kernel: &Kernel, request: &Request, count: u64) {
     kernel.reply(Channel::Shell, request, "execute_reply", &content);
 }
 
+/// So many mistakes of one cell are told; nobody reads more.
+const TOLD: usize = 20;
+
 /// One mistake, as a front end shows it.
 struct Failure {
     name: &'static str,
@@ -79,6 +82,8 @@ struct Execution<'k> {
     /// How many expressions the cell shows.
     several: bool,
     failure: Option<Failure>,
+    /// How many mistakes there were, told or not.
+    mistakes: usize,
     interrupted: bool,
     replied: bool,
     /// What is kept in the history beside the input.
@@ -105,6 +110,7 @@ impl<'k> Execution<'k> {
             silent,
             several: false,
             failure: None,
+            mistakes: 0,
             interrupted: false,
             replied: false,
             text: String::new(),
@@ -119,18 +125,28 @@ impl<'k> Execution<'k> {
             let content = json!({"code": code, "execution_count": self.number});
             self.kernel.publish(self.request, "execute_input", &json!({}), &content);
         }
-        let run = std::panic::AssertUnwindSafe(|| self.run_cell(&code));
-        if std::panic::catch_unwind(run).is_err() && !self.replied {
-            self.failure = Some(Failure {
-                name: "internal",
-                value: "this cell ended in a mistake of the program".to_owned(),
-                traceback: Vec::new(),
-            });
-            self.answer(None);
+        if self.request.unreadable {
+            self.refuse(
+                "unreadable",
+                "what the front end sent of this cell is no text: it is not valid Unicode",
+            );
+        } else {
+            let run = std::panic::AssertUnwindSafe(|| self.run_cell(&code));
+            if std::panic::catch_unwind(run).is_err() && !self.replied {
+                self.refuse("internal", "this cell ended in a mistake of the program");
+            }
         }
         if !self.silent && self.request.flag("store_history", true) {
             lock(&self.kernel.history).add(self.number, &code, std::mem::take(&mut self.text));
         }
+    }
+
+    /// Reply that the cell could not be run at all.
+    fn refuse(&mut self, name: &'static str, why: &str) {
+        let failure = Failure { name, value: why.to_owned(), traceback: vec![why.to_owned()] };
+        self.publish("error", &json!({}), &Json::Object(failure.content()));
+        self.failure = Some(failure);
+        self.answer(None);
     }
 
     fn run_cell(&mut self, code: &str) {
@@ -199,6 +215,10 @@ impl<'k> Execution<'k> {
     }
 
     fn fail(&mut self, session: &Session, problem: &Diagnostic, display: Option<u64>) {
+        self.mistakes += 1;
+        if self.mistakes > TOLD {
+            return lock(&self.kernel.board).fail(&self.cell, display);
+        }
         let failure = Failure::of(session, problem);
         self.publish("error", &json!({}), &Json::Object(failure.content()));
         self.failure.get_or_insert(failure);
@@ -311,7 +331,7 @@ impl<'k> Execution<'k> {
                 lines.push(format!("{results} drawn before this change: run {cells}{there}"));
             }
         }
-        if !healed.is_empty() {
+        if self.named && !healed.is_empty() {
             let cells = board.call(healed.iter().map(String::as_str));
             lines.push(format!("what was wrong there is put right: run {cells} again"));
             healed.iter().for_each(|cell| board.forgive(cell));
@@ -416,6 +436,9 @@ impl Audience for Execution<'_> {
     }
 
     fn answered(&mut self, session: &Session, _: &CellReply) -> bool {
+        if self.mistakes > TOLD {
+            self.say(&format!("and {} mistakes more", self.mistakes - TOLD));
+        }
         self.answer(Some(session));
         !self.silent && !self.kernel.queue.is_waited_for()
     }

@@ -7,6 +7,9 @@ use super::message::Request;
 /// So many inputs are remembered.
 const REMEMBERED: usize = 1_000;
 
+/// Inputs and outputs of more bytes are not.
+const LONGEST: usize = 100_000;
+
 /// The inputs of this session.
 #[derive(Default)]
 pub(super) struct History {
@@ -22,6 +25,10 @@ struct Input {
 
 impl History {
     pub(super) fn add(&mut self, number: u64, text: &str, output: String) {
+        if text.len() > LONGEST {
+            return;
+        }
+        let output = if output.len() > LONGEST { String::new() } else { output };
         self.inputs.push_back(Input { number, text: text.to_owned(), output });
         if self.inputs.len() > REMEMBERED {
             self.inputs.pop_front();

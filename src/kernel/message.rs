@@ -28,6 +28,8 @@ pub(super) struct Request {
     header: Map<String, Json>,
     pub(super) metadata: Json,
     pub(super) content: Json,
+    /// Whether the content could not be read, such as half of a pair of surrogates; it is nothing then.
+    pub(super) unreadable: bool,
 }
 
 impl Request {
@@ -127,12 +129,16 @@ impl Seal {
         let [header, _, metadata, content] = parts else { return Err("it has fewer than four parts") };
         let read = |part: &Bytes| serde_json::from_slice::<Json>(part).map_err(|_| "a part of it is no JSON");
         let Json::Object(fields) = read(header)? else { return Err("its header is no object") };
+        // Whoever sent it waits for a reply.
+        let content = read(content);
+        let unreadable = content.is_err();
         let request = Request {
             identities: identities.to_vec(),
             raw_header: header.clone(),
             header: fields,
             metadata: read(metadata)?,
-            content: read(content)?,
+            content: content.unwrap_or_default(),
+            unreadable,
         };
         if request.kind().is_empty() || request.id().is_empty() {
             return Err("its header has no type or no id");

@@ -60,8 +60,12 @@ pub fn pieces(session: &Session, output: &Output, expression: bool, media: Media
         bundle([("text/plain", display::page(shown, &page)), ("text/html", display::html(shown, &page))]);
     let mut figure_metadata = Map::new();
     let figure = figure.map(|figure| {
+        let mut plain = figure.description.clone();
+        if !output.refreshed_by.is_empty() {
+            plain += &format!("\n{}", figure.footer);
+        }
         let mut bundle = bundle([
-            ("text/plain", figure.description.clone()),
+            ("text/plain", plain),
             ("image/svg+xml", display::svg(&figure)),
             ("application/pdf", BASE64.encode(display::pdf(&figure))),
         ]);

@@ -24,7 +24,7 @@ const GAUSSIAN_REACH: f64 = 4.0;
 /// middle of each cell, so that a cell counts by the part of it inside.
 ///
 /// Of the part of the window inside the record, two thirds must have values. Time grows with the number of cells, not
-/// with the width: the sum slides, and starts afresh with every [`BLOCK`] so that rounding does not build up. Blocks
+/// with the width: the sum slides, and starts afresh with every few thousand cells so that rounding does not build up. Blocks
 /// know nothing of each other, and give the same bits for any number of threads.
 pub fn running_mean(
     starts: &[f64],

@@ -33,6 +33,8 @@ pub(super) struct Display {
     fingerprint: Fingerprint,
     /// The names and files that changed since then, whether it follows from them or not.
     changes: Vec<String>,
+    /// Of what it follows from, what was said to be defined in deleted cells.
+    deleted: Vec<String>,
 }
 
 /// One shown result.
@@ -54,6 +56,8 @@ pub struct Output {
     pub refreshed_by: Vec<String>,
     /// Whether it follows from nothing but its own text, so that it never moves.
     pub fixed: bool,
+    /// Of what it follows from, what is defined in deleted cells.
+    pub deleted: Vec<String>,
 }
 
 impl Output {
@@ -113,7 +117,7 @@ impl Display {
         cost: usize,
     ) -> Self {
         let fingerprint = Parts::new("not evaluated").finish();
-        Self { id, cell, text, expression, node, cost, fingerprint, changes: Vec::new() }
+        Self { id, cell, text, expression, node, cost, fingerprint, changes: Vec::new(), deleted: Vec::new() }
     }
 
     /// Note names and files that changed.
@@ -132,6 +136,7 @@ impl Display {
     /// Note what was told.
     pub(super) fn settle(&mut self, output: &Output) {
         self.fingerprint = output.fingerprint;
+        self.deleted.clone_from(&output.deleted);
         self.changes.clear();
     }
 }
@@ -148,7 +153,11 @@ impl Session {
             audience.begun(&display.pending());
             let output = evaluator.output(display, &environment, Vec::new());
             audience.shown(self, reply, &output);
+            let interrupted = output.is_interrupted();
             reply.outputs.push(output);
+            if interrupted {
+                break;
+            }
         }
         let mut go_on = audience.answered(self, reply);
         let files = self.inputs.changed();
@@ -248,12 +257,23 @@ impl Evaluator<'_> {
     fn moved<'d>(&self, displays: &'d [Display], cell: &str, environment: &Environment) -> Vec<&'d Display> {
         let others = displays.iter().filter(|display| &*display.cell != cell);
         let mut moved: Vec<&Display> =
-            others.filter(|display| self.print_of(display, environment) != display.fingerprint).collect();
+            others.filter(|display| self.has_moved(display, environment)).collect();
         if moved.len() > 1 {
             let levels = self.levels();
             moved.sort_by_cached_key(|display| (level(display.node.as_ref().ok(), &levels), display.id));
         }
         moved
+    }
+
+    /// Whether a display's result is another, or what is said of it.
+    fn has_moved(&self, display: &Display, environment: &Environment) -> bool {
+        self.print_of(display, environment) != display.fingerprint
+            || self.deleted_behind(&self.words_behind(display, environment)) != display.deleted
+    }
+
+    /// Of some words, those that are defined in deleted cells.
+    fn deleted_behind(&self, words: &BTreeSet<String>) -> Vec<String> {
+        words.iter().filter_map(|word| self.deleted(word)).collect()
     }
 
     /// How many definitions stand one upon the other below each name, itself included.
@@ -321,18 +341,16 @@ impl Evaluator<'_> {
         };
         let fixed = result.is_ok() && self.is_fixed(display, environment);
         let words = self.words_behind(display, environment);
-        notes.extend(
-            words
-                .iter()
-                .filter_map(|word| self.deleted(word))
-                .map(|word| Arc::from(format!("`{word}` is defined in a cell that was deleted"))),
-        );
+        let deleted = self.deleted_behind(&words);
+        let told = |word: &String| Arc::from(format!("`{word}` is defined in a cell that was deleted"));
+        notes.extend(deleted.iter().map(told));
         Output {
             display: display.id,
             cell: display.cell.clone(),
             expression: display.text.clone(),
             fingerprint: self.print_of(display, environment),
             fixed,
+            deleted,
             result,
             notes,
             refreshed_by,

@@ -58,6 +58,7 @@ impl Evaluator<'_> {
         add_notes(&mut context.notes.borrow_mut(), &notes);
         let ready = ready(&context, &nominal)?;
         let members = self.members(node, environment, &ready)?;
+        self.cancellation.check()?;
         let members: Vec<&Value> = members.iter().map(AsRef::as_ref).collect();
         let shown = shown(&ready, &members, &self.item_names(node, environment))?;
         Ok((shown, Arc::new(context.notes.into_inner())))
