@@ -205,6 +205,9 @@ impl<'k> Execution<'k> {
     /// Put a bundle where a display stands, or make it stand there.
     fn put(&self, drawn: bool, id: &str, bundle: &Bundle, metadata: &Json) {
         let kind = if drawn { "update_display_data" } else { "display_data" };
+        // Whatever stands there: a page that was loaded again finds the output by it.
+        let mut metadata = metadata.clone();
+        metadata["rhythmite"]["display"] = json!(id);
         let content = json!({"data": bundle, "metadata": metadata, "transient": {"display_id": id}});
         self.publish(kind, &json!({}), &content);
     }

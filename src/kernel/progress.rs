@@ -63,7 +63,7 @@ pub(super) async fn watch(kernel: Arc<Kernel>) {
         let kind = if activity.drawn { "update_display_data" } else { "display_data" };
         let content = json!({
             "data": {"text/plain": words, "text/html": display::progress_html(&words, fraction)},
-            "metadata": {},
+            "metadata": {"rhythmite": {"display": activity.display}},
             "transient": {"display_id": activity.display},
         });
         kernel.publish(&activity.request, kind, &json!({}), &content);

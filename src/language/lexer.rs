@@ -311,6 +311,12 @@ fn is_name_letter(letter: char) -> bool {
         || unicode_normalization::char::is_combining_mark(letter)
 }
 
+/// Some combining marks count as letters by themselves; they stand on a letter all the same.
+fn is_first_name_letter(letter: char) -> bool {
+    let combining = unicode_normalization::char::is_combining_mark(letter);
+    letter == '_' || (letter.is_alphabetic() && !combining)
+}
+
 fn is_superscript(letter: char) -> bool {
     matches!(letter, '²' | '³' | '¹' | '⁰' | '⁴'..='⁹' | '⁻')
 }
@@ -321,9 +327,7 @@ fn normal(text: &str) -> String {
 }
 
 fn name(input: &str) -> IResult<&str, String> {
-    let (rest, text) =
-        recognize((satisfy(|letter| letter.is_alphabetic() || letter == '_'), take_while(is_name_letter)))
-            .parse(input)?;
+    let (rest, text) = recognize((satisfy(is_first_name_letter), take_while(is_name_letter))).parse(input)?;
     Ok((rest, normal(text)))
 }
 

@@ -58,6 +58,11 @@ class Server:
         # The toast that asks about news would lie over what is clicked.
         (folder / "notification.jupyterlab-settings").write_text('{"fetchNews": "false", "checkForUpdates": false}')
 
+        # Cells outside the window would be hidden, and could not be clicked.
+        folder = self.chosen / "@jupyterlab" / "notebook-extension"
+        folder.mkdir(parents=True, exist_ok=True)
+        (folder / "tracker.jupyterlab-settings").write_text('{"windowingMode": "none"}')
+
     def environment(self):
         places = {
             "JUPYTER_DATA_DIR": "data", "JUPYTER_CONFIG_DIR": "config", "JUPYTER_RUNTIME_DIR": "runtime",

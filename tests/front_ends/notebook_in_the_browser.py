@@ -263,6 +263,19 @@ def test_with_the_extension_outputs_are_refreshed_after_a_reload(scene):
     assert page.own_complaints() == []
 
 
+def test_with_the_extension_what_a_cell_waits_for_is_told_after_a_reload(scene):
+    page = scene.page()
+    page.open(scene.notebook("waiting", [SETTINGS, "later = first * 2", "first = 3"]))
+    page.run(0)
+    page.run(1)
+    assert "`first`" in page.output(1), page.output(1)
+    page.save()
+    page.reload()
+    page.page.wait_for_timeout(300)
+    page.run(2)
+    until(lambda: "all names are defined now" in page.output(1), "the cell that waited says so")
+
+
 def test_with_the_extension_a_cell_that_was_moved_is_refreshed(scene):
     page = scene.page()
     page.open(scene.notebook("moved"))

@@ -370,8 +370,9 @@ def transports(checks, program):
                 checks.that(code == 2 and words in said and "panicked" not in said and len(said.splitlines()) <= 3,
                             f"{fields}: {said.strip()}", code)
                 checks.that(not list(kernel.temporary.iterdir()), "nothing is left in the folder for temporary files")
-        with Kernel(program) as first, Kernel(program, connection=first.connection) as second:
-            with FrontEnd(first) as front:
+        with Kernel(program) as first, FrontEnd(first) as front:
+            checks.that(front.answers(), "a kernel has its ports")
+            with Kernel(program, connection=first.connection) as second:
                 code = second.wait()
                 checks.that(code == 2 and "in use" in second.words(), f"ports that are taken: {second.words().strip()}", code)
                 checks.that(front.answers(), "and the kernel that has them goes on")

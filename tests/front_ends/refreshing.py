@@ -178,7 +178,7 @@ def deleted_cells(checks, program):
         book.run("other", "x * 3", gone=["driver"])
         checks.that("3 K" in book.shows("other"), "their definitions stay", book.shows("other"))
         checks.that("deleted" in book.shows("other"), "and what depends on them says so", book.shows("other"))
-        checks.open("deleted" in book.shows("shown"), "also where it stood before")
+        checks.that("deleted" in book.shows("shown"), "also where it stood before", book.shows("shown"))
         book.page.delete("shown")
         update = book.run("anew", "x = 2 K", gone=["driver", "shown"])
         checks.that("6 K" in book.shows("other") and "deleted" not in book.shows("other"), "a new home heals that", book.shows("other"))

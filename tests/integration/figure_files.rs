@@ -45,8 +45,9 @@ fn bundle(labels: &[&str]) -> Shown {
     }
 }
 
+/// Bytes as text in which every byte keeps its place: those of compressed streams are no letters.
 fn text(bytes: &[u8]) -> String {
-    bytes.iter().map(|byte| char::from(*byte)).collect()
+    bytes.iter().map(|byte| if byte.is_ascii() { char::from(*byte) } else { '?' }).collect()
 }
 
 /// A PDF document taken apart: the text of each object, and its stream where it has one.

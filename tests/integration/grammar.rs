@@ -328,6 +328,14 @@ const SOUP: [&str; 44] = [
     "e in",
 ];
 
+#[test]
+fn a_name_begins_with_a_letter_and_not_with_a_mark_on_one() {
+    for mark in ["\u{10376}\u{a3c}", "\u{301}", "\u{903}x = 1"] {
+        assert!(parse(mark).is_err(), "{mark:?}");
+    }
+    assert!(parse("e\u{301}t\u{e9} = 1").is_ok());
+}
+
 proptest! {
     #![proptest_config(ProptestConfig { cases: 2000, failure_persistence: None, ..ProptestConfig::default() })]
 
