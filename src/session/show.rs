@@ -10,7 +10,7 @@ use super::environment::Environment;
 use super::evaluate::{Evaluator, add_notes, internal};
 use super::memo::Notes;
 use super::node::Node;
-use crate::base::Fault;
+use crate::base::{Cancellation, Cancelled, Fault};
 use crate::catalogue::{Context, Path, Stop, onto_clock, total};
 use crate::science::reduce;
 use crate::value::{Block, Bundle, Component, Content, Series, Shown, ShownSeries, Spread, Value};
@@ -60,7 +60,7 @@ impl Evaluator<'_> {
         let members = self.members(node, environment, &ready)?;
         self.cancellation.check()?;
         let members: Vec<&Value> = members.iter().map(AsRef::as_ref).collect();
-        let shown = shown(&ready, &members, &self.item_names(node, environment))?;
+        let shown = shown(&ready, &members, &self.item_names(node, environment), self.cancellation)?;
         Ok((shown, Arc::new(context.notes.into_inner())))
     }
 
@@ -154,7 +154,12 @@ fn ready(context: &dyn Context, value: &Value) -> Result<Value, Stop> {
     }
 }
 
-fn shown(nominal: &Value, members: &[&Value], names: &[Arc<str>]) -> Result<Shown, Stop> {
+fn shown(
+    nominal: &Value,
+    members: &[&Value],
+    names: &[Arc<str>],
+    cancellation: &Cancellation,
+) -> Result<Shown, Stop> {
     Ok(match nominal {
         Value::Quantity(quantity) => {
             let blocks = blocks(members, &|value| match value {
@@ -164,7 +169,7 @@ fn shown(nominal: &Value, members: &[&Value], names: &[Arc<str>]) -> Result<Show
             Shown::Quantity {
                 measure: quantity.measure.clone(),
                 nominal: quantity.first(),
-                spread: spread(&blocks),
+                spread: spread(&blocks, cancellation)?,
             }
         }
         Value::Instant(instant) => {
@@ -175,14 +180,14 @@ fn shown(nominal: &Value, members: &[&Value], names: &[Arc<str>]) -> Result<Show
                 era: instant.era,
                 is_date: instant.is_date,
                 nominal: instant.year(),
-                spread: spread(&blocks),
+                spread: spread(&blocks, cancellation)?,
             }
         }
         Value::Series(series) => {
             let blocks = blocks(members, &|value| {
                 if let Value::Series(series) = value { Some(&series.values) } else { None }
             });
-            Shown::Series(shown_series(series, &blocks))
+            Shown::Series(shown_series(series, &blocks, cancellation)?)
         }
         Value::Bundle(bundle) => {
             let mut components = Vec::with_capacity(bundle.components.len());
@@ -195,7 +200,7 @@ fn shown(nominal: &Value, members: &[&Value], names: &[Arc<str>]) -> Result<Show
                         _ => None,
                     }
                 });
-                components.push((part.label.clone(), shown_series(series, &blocks)));
+                components.push((part.label.clone(), shown_series(series, &blocks, cancellation)?));
             }
             let Some((_, total)) = components.pop() else {
                 return Err(internal("a bundle without sum").into());
@@ -210,9 +215,9 @@ fn shown(nominal: &Value, members: &[&Value], names: &[Arc<str>]) -> Result<Show
                         Value::Model(model) => model.parameters().get(index).map(|(_, _, block)| *block),
                         _ => None,
                     });
-                    spread(&blocks)
+                    spread(&blocks, cancellation)
                 })
-                .collect();
+                .collect::<Result<_, Cancelled>>()?;
             Shown::Model(model.clone(), spreads)
         }
         Value::List(items) => {
@@ -226,7 +231,7 @@ fn shown(nominal: &Value, members: &[&Value], names: &[Arc<str>]) -> Result<Show
                     })
                     .collect();
                 let name = names.get(index).cloned().unwrap_or_else(|| Arc::from(""));
-                shown_items.push((name, shown(item, &inner, &[])?));
+                shown_items.push((name, shown(item, &inner, &[], cancellation)?));
             }
             Shown::List(shown_items)
         }
@@ -246,19 +251,23 @@ fn blocks<'a>(members: &[&'a Value], pick: &dyn Fn(&'a Value) -> Option<&'a Bloc
     if picked.iter().all(|block| block.rows() <= 1) && picked.len() <= 1 { Vec::new() } else { picked }
 }
 
-fn shown_series(series: &Series, blocks: &[&Block]) -> ShownSeries {
-    ShownSeries {
+fn shown_series(
+    series: &Series,
+    blocks: &[&Block],
+    cancellation: &Cancellation,
+) -> Result<ShownSeries, Cancelled> {
+    Ok(ShownSeries {
         axis: series.axis.clone(),
         measure: series.measure.clone(),
         nominal: series.values.member(0).to_vec(),
-        spread: spread(blocks),
-    }
+        spread: spread(blocks, cancellation)?,
+    })
 }
 
 /// Medians and 5–95 % ranges, column by column, of the members in order.
-fn spread(blocks: &[&Block]) -> Option<Arc<Spread>> {
+fn spread(blocks: &[&Block], cancellation: &Cancellation) -> Result<Option<Arc<Spread>>, Cancelled> {
     if blocks.is_empty() || blocks.iter().all(|block| block.rows() <= 1) {
-        return None;
+        return Ok(None);
     }
     let columns = blocks.iter().map(|block| block.columns()).max().unwrap_or(0);
     let members: usize = blocks.iter().map(|block| block.rows()).sum();
@@ -267,6 +276,7 @@ fn spread(blocks: &[&Block]) -> Option<Arc<Spread>> {
         .map_init(
             || (Vec::with_capacity(members), Vec::new()),
             |(values, workspace), column| {
+                cancellation.check()?;
                 values.clear();
                 for block in blocks {
                     values.extend(
@@ -276,11 +286,11 @@ fn spread(blocks: &[&Block]) -> Option<Arc<Spread>> {
                 }
                 let mut out = [f64::NAN; 3];
                 reduce::quantiles(values, &PROBABILITIES, workspace, &mut out);
-                out
+                Ok(out)
             },
         )
-        .collect();
+        .collect::<Result<_, Cancelled>>()?;
     let pick =
         |index: usize| quantiles.iter().map(|out| out.get(index).copied().unwrap_or(f64::NAN)).collect();
-    Some(Arc::new(Spread { low: pick(0), median: pick(1), high: pick(2), members: members as u64 }))
+    Ok(Some(Arc::new(Spread { low: pick(0), median: pick(1), high: pick(2), members: members as u64 })))
 }

@@ -181,7 +181,9 @@ class Page:
 
     def cell(self, number):
         """A cell, counted from 0."""
-        return self.page.locator(f".jp-Notebook .jp-Cell[data-windowed-list-index='{number}']")
+        # Notebooks of earlier tests may be open in tabs behind.
+        front = ".jp-NotebookPanel:not(.lm-mod-hidden) .jp-Notebook"
+        return self.page.locator(f"{front} .jp-Cell[data-windowed-list-index='{number}']")
 
     def output(self, number):
         """What the output of a cell shows as text."""

@@ -126,7 +126,8 @@ impl Document {
                 let letter = String::from_utf16(&units).ok()?.chars().next()?;
                 Some((u16::from_str_radix(code, 16).ok()?, letter))
             });
-            meanings.insert(name.to_owned(), lines.filter(|(code, _)| *code != u16::MAX).collect());
+            // The range of all codes is written like a letter.
+            meanings.insert(name.to_owned(), lines.filter(|(code, _)| *code != 0).collect());
         }
         meanings
     }
