@@ -292,6 +292,8 @@ def chromium():
 @contextlib.contextmanager
 def laboratory(pictures: Path, prepare):
     """A server whose folders `prepare(server)` has filled, and a browser; both end with the block."""
+    # Whoever ends the tests ends the server, too.
+    signal.signal(signal.SIGTERM, lambda *_: sys.exit("ended by a signal"))
     pictures.mkdir(parents=True, exist_ok=True)
     work = Path(tempfile.mkdtemp(prefix="front-end-"))
     try:
